@@ -12,7 +12,7 @@ SAMPLE := samples/reformer-outlet.thalweg
 WORKERS := 2
 # Tests render into memory, never on the screen.
 OFFSCREEN := QT_QPA_PLATFORM=offscreen
-INSTALL := $(BIN)/python -m pip install --quiet --disable-pip-version-check
+INSTALL := $(BIN)/python -m pip install -qq --disable-pip-version-check
 
 help: ## this list
 	@awk -F ':.*## ' '/^[a-z]+:.*## / { printf "  make %-9s %s\n", $$1, $$2 }' Makefile

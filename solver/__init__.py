@@ -1,0 +1,22 @@
+"""Where a reacting mixture ends up: the minimiser, its proof and what is built upon them."""
+
+from solver.endstate import EndState
+from solver.errors import InputError, NoEndState, NotProven, SettleError
+from solver.fed import Fed, as_fed
+from solver.fixed import PAIRS, Fixed
+from solver.proof import Proof
+from solver.settle import settle
+
+__all__ = [
+    "PAIRS",
+    "EndState",
+    "Fed",
+    "Fixed",
+    "InputError",
+    "NoEndState",
+    "NotProven",
+    "Proof",
+    "SettleError",
+    "as_fed",
+    "settle",
+]

@@ -1,0 +1,106 @@
+"""A candidate list made ready for the minimiser, and one minimisation problem over it."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+from solver.core.basis import Basis, balance_rows, formula_vector, make_basis
+from solver.core.thermo import ThermoTable
+
+if TYPE_CHECKING:
+    from species_db import Species
+
+Array = NDArray[np.float64]
+
+R = 8.314462618
+P0 = 1.0e5  # Pa, standard pressure
+
+
+@dataclass(frozen=True, eq=False)
+class Mixture:
+    """Arrays of a candidate list; made once, used for every case.
+
+    Attributes
+    ----------
+    A : ndarray, shape (species, rows)
+        Formula matrix: element counts, and charge where there are ions.
+    atoms : ndarray, shape (rows,)
+        Weights w with a_i . w > 0 for every candidate: moving the element potentials along
+        -w relaxes every condition of optimality at once (used by the proof).
+    """
+
+    species: tuple[Species, ...]
+    rows: Mapping[str, int]
+    A: Array
+    is_gas: NDArray[np.bool_]
+    thermo: ThermoTable
+    volume: Array
+    atoms: Array
+    _bases: dict[tuple[int, ...], Basis] = field(default_factory=dict)
+
+    def basis(self, members: Sequence[int]) -> Basis:
+        """The balances over the given components, kept for the next case that asks."""
+        key = tuple(sorted(int(i) for i in members))
+        if key not in self._bases:
+            if len(self._bases) > 500:
+                self._bases.clear()
+            self._bases[key] = make_basis(self.A, key)
+        return self._bases[key]
+
+
+def make_mixture(species: Sequence[Species], rows: Mapping[str, int]) -> Mixture:
+    """Gather the arrays of candidates whose elements all have a row."""
+    A = np.array([formula_vector(sp, rows) for sp in species]).reshape(-1, len(rows))
+    atoms = np.array([0.0 if name == "charge" else 1.0 for name in rows])
+    if "charge" in rows:
+        # an electron has no atom: let the charge row carry a small negative weight
+        most = max((sp.charge for sp in species), default=1)
+        atoms[rows["charge"]] = -1.0 / (2.0 * max(most, 1))
+    return Mixture(
+        species=tuple(species),
+        rows=dict(rows),
+        A=A,
+        is_gas=np.array([sp.phase == "gas" for sp in species], dtype=bool),
+        thermo=ThermoTable(species),
+        volume=np.zeros(len(species)),
+        atoms=atoms,
+    )
+
+
+_KEPT: dict[tuple[int, ...], tuple[tuple[Species, ...], Mixture]] = {}
+
+
+def mixture_of(species: Sequence[Species], fed: Sequence[Species]) -> Mixture:
+    """The mixture of the candidates that can hold nothing but what is fed.
+
+    Candidates with an element that the feed lacks are left out: their amount is zero.
+    """
+    key = (*map(id, species), 0, *map(id, fed))
+    if key in _KEPT:
+        return _KEPT[key][1]
+    rows = balance_rows(fed)
+    if any(sp.charge for sp in species) and "charge" not in rows:
+        rows["charge"] = len(rows)
+    held = [sp for sp in species if all(element in rows for element in sp.elements)]
+    mixture = make_mixture(held, rows)
+    if len(_KEPT) > 64:
+        _KEPT.clear()
+    _KEPT[key] = ((*species, *fed), mixture)  # the species stay alive, so do their ids
+    return mixture
+
+
+@dataclass(frozen=True)
+class Held:
+    """What the minimiser holds at one temperature: a pressure or a volume.
+
+    Exactly one of `p` (Pa) and `V` (m3) is given.
+    """
+
+    T: float
+    p: float | None = None
+    V: float | None = None

@@ -1,0 +1,102 @@
+"""Dimensionless g, h, cp of many species at many temperatures, in one matrix product."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+if TYPE_CHECKING:
+    from species_db import Species
+
+Array = NDArray[np.float64]
+
+
+class ThermoTable:
+    """Seven-coefficient records of a species list, cut at the union of all segment joins.
+
+    Between two neighbouring joins every species follows one polynomial, so that all species
+    at all temperatures of that interval come from one product of powers of T with a
+    coefficient matrix. Below and above a record's range its cp is held constant.
+    """
+
+    def __init__(self, species: Sequence[Species]) -> None:
+        pieces = [_extended(sp) for sp in species]
+        joins = sorted({low for piece in pieces for low, _ in piece[1:]})
+        self._joins = np.array(joins, dtype=float)
+        self._pieces = pieces
+        self._tables: dict[int, tuple[Array, Array, Array]] = {}
+        self.T_min = np.array([sp.T_min for sp in species])
+        self.T_max = np.array([sp.T_max for sp in species])
+        self.transitions = np.array(sorted({tr.T for sp in species for tr in sp.transitions}))
+
+    def _table(self, interval: int) -> tuple[Array, Array, Array]:
+        """Coefficient matrices (species, powers) of g, h and cp on one interval."""
+        if interval not in self._tables:
+            T = self._joins[interval - 1] if interval else 0.0
+            rows = np.array(
+                [
+                    next(a for low, a in reversed(piece) if low <= T or low == -np.inf)
+                    for piece in self._pieces
+                ]
+            ).reshape(-1, 7)
+            a1, a2, a3, a4, a5, a6, a7 = rows.T
+            zero = np.zeros_like(a1)
+            h = np.stack([a1, a2 / 2, a3 / 3, a4 / 4, a5 / 5, a6, zero])
+            cp = np.stack([a1, a2, a3, a4, a5, zero, zero])
+            # g = h - s with s = a1 ln T + a2 T + a3 T^2/2 + a4 T^3/3 + a5 T^4/4 + a7
+            g = np.stack([a1 - a7, -a2 / 2, -a3 / 6, -a4 / 12, -a5 / 20, a6, -a1])
+            self._tables[interval] = (g, h, cp)
+        return self._tables[interval]
+
+    def at(self, T: float) -> tuple[Array, Array, Array]:
+        """g/RT, h/RT and cp/R at 1 bar of every species at one temperature, each (species,)."""
+        g, h, cp = self._table(int(np.searchsorted(self._joins, T, side="right")))
+        powers = _powers(np.float64(T))
+        return powers @ g, powers @ h, powers @ cp
+
+    def below(self, T: float) -> tuple[Array, Array, Array]:
+        """As `at`, but a join exactly at T is read from its lower side."""
+        g, h, cp = self._table(int(np.searchsorted(self._joins, T, side="left")))
+        powers = _powers(np.float64(T))
+        return powers @ g, powers @ h, powers @ cp
+
+    def over(self, T: Array) -> tuple[Array, Array, Array]:
+        """g/RT, h/RT and cp/R at 1 bar at temperatures T (cases,), each (cases, species)."""
+        intervals = np.searchsorted(self._joins, T, side="right")
+        powers = _powers(T).T
+        first = int(intervals[0]) if T.size else 0
+        if np.all(intervals == first):
+            g, h, cp = self._table(first)
+            return powers @ g, powers @ h, powers @ cp
+        shape = (T.size, len(self._pieces))
+        out = (np.empty(shape), np.empty(shape), np.empty(shape))
+        for interval in np.unique(intervals):
+            rows = intervals == interval
+            for part, table in zip(out, self._table(int(interval)), strict=True):
+                part[rows] = powers[rows] @ table
+        return out
+
+
+def _powers(T: Array | np.float64) -> Array:
+    return np.array([np.ones_like(T), T, T**2, T**3, T**4, 1.0 / T, np.log(T)])
+
+
+def _extended(sp: Species) -> list[tuple[float, tuple[float, ...]]]:
+    """Segments as (lower end, coefficients), with constant-cp pieces outside the range."""
+    first, last = sp.segments[0], sp.segments[-1]
+    out = [(-np.inf, _constant_cp(first.a, first.T_low))]
+    out += [(seg.T_low, tuple(seg.a)) for seg in sp.segments]
+    out.append((np.nextafter(last.T_high, np.inf), _constant_cp(last.a, last.T_high)))
+    return out
+
+
+def _constant_cp(a: Sequence[float], T: float) -> tuple[float, ...]:
+    """Coefficients that continue a record beyond T with the cp it has there."""
+    a1, a2, a3, a4, a5, a6, a7 = a
+    cp = a1 + T * (a2 + T * (a3 + T * (a4 + T * a5)))
+    h = a1 + T * (a2 / 2 + T * (a3 / 3 + T * (a4 / 4 + T * a5 / 5))) + a6 / T
+    s = a1 * np.log(T) + T * (a2 + T * (a3 / 2 + T * (a4 / 3 + T * a5 / 4))) + a7
+    return (cp, 0.0, 0.0, 0.0, 0.0, (h - cp) * T, float(s - cp * np.log(T)))

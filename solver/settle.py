@@ -1,0 +1,250 @@
+"""The public door: compute the end state of one case."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from types import MappingProxyType
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+from solver.core.basis import CHARGE, formula_vector
+from solver.core.minimise import Case, NotHeld, Unsettled
+from solver.core.mixture import P0, Held, Mixture, mixture_of
+from solver.core.temperature import OutOfReach, Point, Search, find_temperature, point_at
+from solver.core.totals import Totals
+from solver.endstate import PRESENT, EndState
+from solver.errors import InputError, NoEndState, NotProven
+from solver.fed import check_gas, checked_amount
+from solver.fixed import PAIRS, T_HIGHEST, T_LOWEST, Fixed
+from solver.proof import Proof, element_residuals, optimality_gap
+
+if TYPE_CHECKING:
+    from species_db import Species
+
+Array = NDArray[np.float64]
+
+_WORDS = {"H": "enthalpy", "U": "internal energy", "S": "entropy"}
+
+
+def settle(
+    species: Sequence[Species],
+    feed: Mapping[Species | str, float],
+    fixed: Fixed,
+    *,
+    gas: str = "ideal",
+) -> EndState:
+    """Compute where the feed ends up among the candidates.
+
+    Parameters
+    ----------
+    species : sequence of Species
+        The candidates: what may be present at the end.
+    feed : mapping of Species or str to float
+        mol; a string is the key of a candidate.
+    fixed : Fixed
+        The pair of state variables held.
+    gas : str
+        Gas model.
+
+    Returns
+    -------
+    EndState
+        Its proof is within the limits in `solver.proof`.
+
+    Raises
+    ------
+    InputError
+        A field is wrong; `field`, `value` and `allowed` say which and how.
+    NoEndState
+        No temperature in the allowed range has the energy or entropy held.
+    NotProven
+        A state was found whose proof fails; it is not returned.
+    """
+    check_gas(gas)
+    fed, amounts = _checked_feed(species, feed)
+    mixture = mixture_of(species, fed)
+    _check_elements(mixture, fed)
+    vectors = np.array([formula_vector(sp, mixture.rows) for sp in fed])
+    # the minimiser works on totals near one; a power of two changes no digit
+    scale = 2.0 ** -round(float(np.log2(np.abs(amounts @ vectors).max())))
+    case = Case(amounts * scale, vectors)
+    try:
+        point = _find(mixture, case, fixed, scale)
+    except NotHeld as error:
+        raise _not_held(mixture, error) from None
+    except OutOfReach as error:
+        raise _out_of_reach(fixed, error) from None
+    except (Unsettled, np.linalg.LinAlgError) as error:
+        raise NotProven(
+            f"No end state could be proven for this case ({error}); "
+            "leave out candidates that do not matter, or change the fixed values slightly.",
+            "fixed",
+            fixed,
+        ) from None
+    return _end_state(mixture, species, case, point, fixed, gas, scale)
+
+
+def _checked_feed(
+    species: Sequence[Species], feed: Mapping[Species | str, float]
+) -> tuple[list[Species], Array]:
+    if not species:
+        raise InputError(
+            "There are no candidates; choose at least one species that may be present.",
+            "species",
+            (),
+            "one or more species",
+        )
+    by_key = {sp.key: sp for sp in species}
+    if len(by_key) < len(species):
+        keys = [sp.key for sp in species]
+        twice = next(key for key in keys if keys.count(key) > 1)
+        raise InputError(
+            f"The candidate {twice} is listed twice; remove one.", "species", twice, "each once"
+        )
+    gathered: dict[Species, float] = {}
+    for item, amount in feed.items():
+        if isinstance(item, str):
+            if item not in by_key:
+                raise InputError(
+                    f"The feed holds {item}, which is not the key of a candidate; "
+                    "add it to the candidates or give the Species itself.",
+                    f"feed[{item}]",
+                    item,
+                    "a candidate's key or a Species",
+                )
+            item = by_key[item]
+        number = checked_amount(item.key, amount)
+        if number > 0.0:
+            gathered[item] = gathered.get(item, 0.0) + number
+    if not gathered:
+        raise InputError(
+            "The feed is empty; give at least one amount above zero.", "feed", 0.0, "above 0 mol"
+        )
+    return list(gathered), np.array(list(gathered.values()))
+
+
+def _check_elements(mixture: Mixture, fed: Sequence[Species]) -> None:
+    """Every element fed must occur in a candidate that holds nothing else than is fed."""
+    for name, row in mixture.rows.items():
+        if name == CHARGE or np.any(mixture.A[:, row] > 0.0):
+            continue
+        source = next(sp.key for sp in fed if name in sp.elements)
+        raise InputError(
+            f"No candidate holds {name}, which the feed brings in as {source}; "
+            f"add a species with {name} to the candidates, made of elements that are fed.",
+            "species",
+            name,
+            f"a candidate with {name}",
+        )
+
+
+def _not_held(mixture: Mixture, error: NotHeld) -> InputError:
+    names = list(mixture.rows)
+    open_rows = ", ".join(names[k] for k in error.rows)
+    return InputError(
+        "No mixture of the candidates has the elements of the feed in their proportion "
+        f"(the balance of {open_rows} stays open); add a candidate that can take up the rest.",
+        "species",
+        open_rows,
+        "candidates that can hold the feed",
+    )
+
+
+def _out_of_reach(fixed: Fixed, error: OutOfReach) -> NoEndState:
+    variable = PAIRS[fixed.pair].variables[0]
+    word = _WORDS[variable]
+    value = fixed.values[0]
+    if error.side == "below":
+        text = (
+            f"No end state above {T_LOWEST:g} K has so little {word} ({value:.6g}); "
+            f"raise {variable} or take away less heat."
+        )
+        allowed = f"{variable} of the mixture at {T_LOWEST:g} K or more"
+    else:
+        text = (
+            f"No end state below {T_HIGHEST:g} K has so much {word} ({value:.6g}); "
+            f"lower {variable} or add less heat."
+        )
+        allowed = f"{variable} of the mixture at {T_HIGHEST:g} K or less"
+    return NoEndState(text, f"fixed.{variable}", value, allowed)
+
+
+def _find(mixture: Mixture, case: Case, fixed: Fixed, scale: float) -> Point:
+    pair = PAIRS[fixed.pair]
+    second = fixed.values[1]
+    p = None if pair.holds_volume else second
+    V = second * scale if pair.holds_volume else None
+    if pair.searched is None:
+        return point_at(mixture, case, Held(fixed.values[0], p=p, V=V), None, None)
+    search = Search(pair.searched, fixed.values[0] * scale, p, V, T_LOWEST, T_HIGHEST)
+    return find_temperature(mixture, case, search)
+
+
+def _end_state(
+    mixture: Mixture,
+    species: Sequence[Species],
+    case: Case,
+    point: Point,
+    fixed: Fixed,
+    gas: str,
+    scale: float,
+) -> EndState:
+    T, p, n = point.T, point.p, point.n
+    g, _, _ = mixture.thermo.at(T)
+    c = g + np.where(mixture.is_gas, np.log(p / P0), 0.0)
+    closure, trace = element_residuals(mixture, n, case.feed, case.vectors)
+    gap, force = optimality_gap(mixture, n, case.totals, point.potentials, c)
+    absent = {sp.key: 0.0 for sp in species if sp.phase != "gas"}
+    for sp, amount, f in zip(mixture.species, n, force, strict=True):
+        if sp.phase != "gas":
+            if amount > 0.0:
+                del absent[sp.key]
+            else:
+                absent[sp.key] = float(np.exp(min(f, 0.0)))
+    proof = Proof(
+        element_residual=closure,
+        trace_residual=trace,
+        energy_residual=_energy_residual(fixed, point.totals, T, n, scale),
+        gap=gap,
+        absent=MappingProxyType(absent),
+    )
+    if not proof.holds or n.min() < 0.0:
+        raise NotProven(
+            "An end state was found but its proof is not within the limits "
+            f"(elements {closure:.1e}, trace elements {trace:.1e}, "
+            f"energy {proof.energy_residual:.1e}, gap {gap:.1e}); it is not shown.",
+            "fixed",
+            fixed,
+        )
+    amounts = {sp.key: 0.0 for sp in species}
+    for sp, amount in zip(mixture.species, n, strict=True):
+        amounts[sp.key] = float(amount / scale)
+    named = n > PRESENT * n.sum()
+    thermo = mixture.thermo
+    outside = named & ((thermo.T_min > T) | (thermo.T_max < T))
+    state = point.totals
+    return EndState(
+        T=T,
+        p=p,
+        V=state.V / scale,
+        H=state.H / scale,
+        U=state.U / scale,
+        S=state.S / scale,
+        G=state.G / scale,
+        amounts=MappingProxyType(amounts),
+        species=tuple(species),
+        fixed=fixed,
+        gas=gas,
+        proof=proof,
+        outside_range=tuple(mixture.species[i].key for i in np.flatnonzero(outside)),
+    )
+
+
+def _energy_residual(fixed: Fixed, state: Totals, T: float, n: Array, scale: float) -> float:
+    variable = PAIRS[fixed.pair].searched
+    if variable is None:
+        return 0.0
+    unit = 8.314462618 * float(n.sum()) * (1.0 if variable == "S" else T)
+    return abs(float(getattr(state, variable)) - fixed.values[0] * scale) / unit

@@ -7,18 +7,25 @@ read the same `CaseAnswer`.
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+import math
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Literal
+from types import MappingProxyType
+from typing import TYPE_CHECKING, cast
 
-from solver.errors import InputError
-from solver.project.model import Case
+import species_db
+from solver.endstate import EndState
+from solver.errors import InputError, NoEndState
+from solver.fed import as_fed
+from solver.fixed import PAIRS, Fixed
+from solver.project import units
+from solver.project.candidates import choose
+from solver.project.model import Case, Quantity, Variable
+from solver.project.streams import Basis, ReadStream, read_state, read_stream
+from solver.settle import settle
 
 if TYPE_CHECKING:
-    from solver import EndState, Fixed
     from species_db import Library, Species
-
-Basis = Literal["batch", "flow"]
 
 
 class CaseFaults(InputError):
@@ -30,22 +37,21 @@ class CaseFaults(InputError):
         Each with the path of its field, such as ``streams[0].amounts[2].species``.
     """
 
-    def __init__(self, faults: tuple[InputError, ...]) -> None:
+    def __init__(self, faults: Sequence[InputError]) -> None:
         first = faults[0]
-        more = f" (and {len(faults) - 1} more)" if len(faults) > 1 else ""
-        super().__init__(f"{first}{more}", first.field, first.value, first.allowed)
-        self.faults = faults
+        super().__init__(str(first), first.field, first.value, first.allowed)
+        self.faults = tuple(faults)
 
     def __reduce__(self) -> tuple[type, tuple[object, ...]]:
         return type(self), (self.faults,)
 
 
 @dataclass(frozen=True, slots=True)
-class Fed:
+class FedTotals:
     """What goes in, before anything has reacted; extensive values are a batch's or per second.
 
     T in K and p in Pa where all streams agree, else None; V in m3, H and U in J, S in J/K,
-    mass in kg, amount in mol (per second on a flow basis).
+    mass in kg, amount in mol (on a flow basis m3/s, W, W/K, kg/s, mol/s).
     """
 
     T: float | None
@@ -62,15 +68,17 @@ class Fed:
 class Prepared:
     """A case in the solver's words.
 
-    `feed` maps species to mol (mol/s on a flow basis), summed over the streams. `messages` are
-    remarks that do not stop the answer.
+    `feed` maps species to mol (mol/s on a flow basis), summed over the streams. `heat` is what
+    is added, J or W. `messages` are remarks that do not stop the answer.
     """
 
     feed: Mapping[Species, float]
     candidates: tuple[Species, ...]
     fixed: Fixed
-    fed: Fed
+    fed: FedTotals
     basis: Basis
+    gas: str
+    heat: float = 0.0
     messages: tuple[str, ...] = ()
 
 
@@ -78,12 +86,13 @@ class Prepared:
 class CaseAnswer:
     """An end state with what the engineer wants beside it.
 
-    `heat` is what crosses the wall: H_end - H_fed at fixed p, U_end - U_fed at fixed V;
-    J on a batch basis, W on a flow basis, positive when taken up.
+    `heat` is H_end - H_fed at fixed p and U_end - U_fed at fixed V: what crosses the wall, in J
+    on a batch basis and in W on a flow basis, positive when taken up. Where S is held and no heat
+    flows, it is the work put in.
     """
 
     end: EndState
-    fed: Fed
+    fed: FedTotals
     heat: float
     basis: Basis
     prepared: Prepared
@@ -91,10 +100,288 @@ class CaseAnswer:
 
 
 def prepare(case: Case, library: Library | None = None) -> Prepared:
-    """Read a case; raises `CaseFaults` with every fault found."""
-    raise NotImplementedError
+    """Read a case.
+
+    Parameters
+    ----------
+    case
+        As typed.
+    library
+        The built-in one if not given.
+
+    Raises
+    ------
+    CaseFaults
+        With every fault found.
+    """
+    library = species_db.load() if library is None else library
+    faults: list[InputError] = []
+    streams = _streams(case, library, faults)
+    feed: dict[Species, float] = {}
+    for stream in streams:
+        for sp, n in stream.feed.items():
+            feed[sp] = feed.get(sp, 0.0) + n
+    if not faults and not feed:
+        faults.append(
+            InputError(
+                "Nothing is fed: all amounts are zero; give at least one above zero.",
+                "streams[0].amounts",
+                0.0,
+                "an amount above zero",
+            )
+        )
+    # Candidates are looked at even beside other faults: their own texts may be wrong too.
+    candidates, more = choose(case.candidates, tuple(feed), library)
+    if faults:
+        more = [fault for fault in more if "[" in fault.field]
+    faults += more
+    if case.gas != "ideal":
+        faults.append(InputError(f"The gas model {case.gas!r} is not known.", "gas", case.gas))
+    if faults:
+        _fixed_alone(case, faults)
+        raise CaseFaults(faults)
+    basis = streams[0].basis
+    live = [stream for stream in streams if stream.feed]
+    fed = _totals(live, case.gas)
+    fixed, heat, notes = _fixed(case, fed, basis, faults)
+    if faults or fixed is None:
+        raise CaseFaults(faults)
+    messages = [m for stream in streams for m in stream.messages]
+    messages += [m for stream in live for m in _feed_out_of_range(stream)]
+    return Prepared(
+        MappingProxyType(feed),
+        candidates,
+        fixed,
+        fed,
+        basis,
+        case.gas,
+        heat,
+        (*messages, *notes),
+    )
 
 
 def settle_case(case: Case, library: Library | None = None) -> CaseAnswer:
-    """Settle a case."""
-    raise NotImplementedError
+    """Settle a case.
+
+    Raises
+    ------
+    CaseFaults
+        The case as typed cannot be read.
+    SettleError
+        Whatever the solver has to say: no end state, or none that could be proven.
+    """
+    return settle_prepared(prepare(case, library))
+
+
+def settle_prepared(prepared: Prepared) -> CaseAnswer:
+    """Settle what `prepare` made; the slow half, free of texts."""
+    fixed = prepared.fixed
+    try:
+        end = settle(prepared.candidates, {**prepared.feed}, fixed, gas=prepared.gas)
+    except NoEndState as error:
+        if prepared.heat == 0:
+            raise
+        unit = "kW" if prepared.basis == "flow" else "kJ"
+        share = units.quantity_text(prepared.heat / 1e3, unit)
+        raise NoEndState(
+            f"{error} The heat added is {share}.", "fixed.heat", prepared.heat, error.allowed
+        ) from None
+    fed = prepared.fed
+    at_volume = PAIRS[fixed.pair].holds_volume
+    heat = end.U - fed.U if at_volume else end.H - fed.H
+    messages = prepared.messages + tuple(_end_out_of_range(end))
+    return CaseAnswer(end, fed, heat, prepared.basis, prepared, messages)
+
+
+def _streams(case: Case, library: Library, faults: list[InputError]) -> list[ReadStream]:
+    if not case.streams:
+        faults.append(
+            InputError(
+                "No stream goes in; add one with at least one species.",
+                "streams",
+                (),
+                "one or more streams",
+            )
+        )
+    read = [
+        read_stream(stream, library, f"streams[{i}]", faults)
+        for i, stream in enumerate(case.streams)
+    ]
+    streams = [stream for stream in read if stream is not None]
+    for i, stream in enumerate(read):
+        if stream is not None and stream.basis != streams[0].basis:
+            words = {"batch": "an amount", "flow": "a flow"}
+            faults.append(
+                InputError(
+                    f"The stream {stream.name!r} is {words[stream.basis]}, the stream "
+                    f"{streams[0].name!r} {words[streams[0].basis]}; "
+                    "write all of them per time, or none.",
+                    f"streams[{i}].amounts",
+                    stream.basis,
+                    streams[0].basis,
+                )
+            )
+    return streams
+
+
+def _totals(streams: Sequence[ReadStream], gas: str) -> FedTotals:
+    """Sums over the streams, each at its own temperature and pressure."""
+    states = [as_fed(stream.feed, stream.T, stream.p, gas=gas) for stream in streams]
+    return FedTotals(
+        T=_common([stream.T for stream in streams]),
+        p=_common([stream.p for stream in streams]),
+        V=sum(state.V for state in states),
+        H=sum(state.H for state in states),
+        U=sum(state.U for state in states),
+        S=sum(state.S for state in states),
+        mass=sum(n * sp.molar_mass for stream in streams for sp, n in stream.feed.items()),
+        amount=sum(n for stream in streams for n in stream.feed.values()),
+    )
+
+
+def _common(values: Sequence[float]) -> float | None:
+    """The value on which all agree but for the rounding of a change of unit."""
+    same = all(math.isclose(value, values[0], rel_tol=1e-12) for value in values)
+    return values[0] if same else None
+
+
+_KIND = {
+    "T": "temperature",
+    "p": "pressure",
+    "V": "vessel",
+    "H": "heat",
+    "U": "heat",
+    "S": "disorder",
+}
+
+
+def _fixed(
+    case: Case, fed: FedTotals, basis: Basis, faults: list[InputError]
+) -> tuple[Fixed | None, float, list[str]]:
+    """The pair with its values in SI, the heat, and remarks."""
+    pair = PAIRS[case.fixed.pair]
+    notes: list[str] = []
+    if pair.holds_volume and basis == "flow":
+        faults.append(
+            InputError(
+                f"The pair {pair.name} holds a volume, so the feed must be a batch; write the "
+                "amounts in mol or kg instead of a flow, or choose a pair with p.",
+                "fixed.pair",
+                pair.name,
+                ", ".join(name for name, other in PAIRS.items() if not other.holds_volume),
+            )
+        )
+        return None, 0.0, notes
+    heat = 0.0
+    if case.fixed.heat is not None and _written(case.fixed.heat):
+        if {"H", "U"} & set(pair.variables):
+            heat = _extensive(case.fixed.heat, "heat", "fixed.heat", basis, faults) or 0.0
+        elif case.fixed.heat.value != 0:
+            notes.append(
+                f"Heat is not used: with {pair.name} held, the heat is part of the answer."
+            )
+    values: dict[str, float] = {}
+    for name in _variables(case):
+        field = f"fixed.{name}"
+        typed = case.fixed.values.get(name)
+        if typed is None:
+            value = getattr(fed, name)
+            if value is None:
+                faults.append(_no_common(name, field))
+        elif name in ("T", "p"):
+            value = read_state(typed, _KIND[name], field, faults)
+        else:
+            value = _extensive(typed, _KIND[name], field, basis, faults)
+        if value is not None:
+            values[name] = value + (heat if name in ("H", "U") else 0.0)
+    if faults:
+        return None, heat, notes
+    try:
+        return Fixed(pair.name, **values), heat, notes
+    except InputError as fault:
+        faults.append(fault)
+        return None, heat, notes
+
+
+def _fixed_alone(case: Case, faults: list[InputError]) -> None:
+    """Faults of the fixed values that can be seen without knowing the feed."""
+    for name in _variables(case):
+        typed = case.fixed.values.get(name)
+        if typed is not None and name in ("T", "p"):
+            read_state(typed, _KIND[name], f"fixed.{name}", faults)
+        elif typed is not None:
+            _extensive(typed, _KIND[name], f"fixed.{name}", None, faults)
+
+
+def _written(quantity: Quantity) -> bool:
+    return not isinstance(quantity.value, str) or bool(quantity.value.strip())
+
+
+def _no_common(name: str, field: str) -> InputError:
+    word = {"T": "temperature", "p": "pressure"}[name]
+    return InputError(
+        f"The streams differ in {word}, so the {word} held cannot be taken from them; write it.",
+        field,
+        None,
+        f"a {word}",
+    )
+
+
+def _variables(case: Case) -> tuple[Variable, Variable]:
+    first, second = PAIRS[case.fixed.pair].variables
+    return cast(Variable, first), cast(Variable, second)
+
+
+def _extensive(
+    quantity: Quantity, kind: str, field: str, basis: Basis | None, faults: list[InputError]
+) -> float | None:
+    """A batch's energy, volume or entropy, or that of a flow per second."""
+    try:
+        si = units.to_si(quantity, kind, field)
+        found = units.unit_kind(quantity.unit, kind, field)
+    except InputError as fault:
+        faults.append(fault)
+        return None
+    per_time = found in ("power", "entropy_flow", "volume_flow")
+    if basis is not None and per_time != (basis == "flow"):
+        example = {
+            ("heat", "flow"): "kW",
+            ("heat", "batch"): "kJ",
+            ("disorder", "flow"): "kW/K",
+            ("disorder", "batch"): "kJ/K",
+            ("vessel", "flow"): "m3/h",
+            ("vessel", "batch"): "m3",
+        }[kind, basis]
+        feed = "a flow" if basis == "flow" else "a batch"
+        faults.append(
+            InputError(
+                f"The feed is {feed}, but {units.typed_number(quantity.value)} {quantity.unit} "
+                f"is not per {'time' if basis == 'flow' else 'batch'}; write it in {example}.",
+                field,
+                quantity.unit,
+                example,
+            )
+        )
+        return None
+    return si
+
+
+def _feed_out_of_range(stream: ReadStream) -> list[str]:
+    return [
+        f"Stream {stream.name!r}: {_beyond(sp, stream.T)}"
+        for sp in stream.feed
+        if not sp.T_min <= stream.T <= sp.T_max
+    ]
+
+
+def _end_out_of_range(end: EndState) -> list[str]:
+    by_key = {sp.key: sp for sp in end.species}
+    return [f"End state: {_beyond(by_key[key], end.T)}" for key in end.outside_range]
+
+
+def _beyond(species: Species, T: float) -> str:
+    return (
+        f"{units.number_text(T)} K lies outside the data of {species.key} "
+        f"({units.number_text(species.T_min)} to {units.number_text(species.T_max)} K); "
+        "its values are extended with a constant heat capacity."
+    )

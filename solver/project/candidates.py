@@ -17,8 +17,8 @@ if TYPE_CHECKING:
 SHORT_RULE: Final = (
     "Gases without carbon; gases with one or two carbon atoms and at most three atoms besides "
     "hydrogen and halogens; graphite and every other liquid or solid that is no organic compound. "
-    "Of isomers and of solid forms the most stable only; no ions, no explosives. Species fed are "
-    "always allowed."
+    "Of isomers and of solid forms the most stable only; wustite as Fe0.947O, not as FeO; no ions, "
+    "no explosives. Species fed are always allowed."
 )
 """The short list in words an engineer can check."""
 
@@ -34,6 +34,12 @@ _EXPLOSIVE: Final = (
     {"N": 1, "H": 4, "Cl": 1, "O": 4},  # ammonium perchlorate
     {"N": 2, "H": 8, "Cr": 2, "O": 7},  # ammonium dichromate
 )
+_SUPERSEDED: Final = {
+    # Stoichiometric FeO does not exist at these pressures. Its tabulated Gibbs energy gives
+    # p(H2O)/p(H2) over iron at half of what Emmett and Shultz measured (J. Am. Chem. Soc. 52
+    # (1930) 4268), Fe0.947O agrees with them.
+    "FeO(s)": "Fe0.947O(s)",
+}
 _EXPLOSIVE_WORDS: Final = ("azide", "fulminate", "acetylide", "picrate")
 
 
@@ -181,6 +187,8 @@ def short_list(species: Iterable[Species]) -> list[Species]:
     for sp in kept:
         forms.setdefault((sp.phase, *sorted(sp.elements.items())), []).append(sp)
     metastable = {sp.key for same in forms.values() if len(same) > 1 for sp in _metastable(same)}
+    keys = {sp.key for sp in kept}
+    metastable |= {key for key, better in _SUPERSEDED.items() if better in keys}
     return [sp for sp in kept if sp.key not in metastable]
 
 

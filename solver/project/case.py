@@ -177,7 +177,7 @@ def settle_prepared(prepared: Prepared) -> CaseAnswer:
     """Settle what `prepare` made; the slow half, free of texts."""
     fixed = prepared.fixed
     try:
-        end = settle(prepared.candidates, {**prepared.feed}, fixed, gas=prepared.gas)
+        end = settle(prepared.candidates, dict(prepared.feed.items()), fixed, gas=prepared.gas)
     except NoEndState as error:
         if prepared.heat == 0:
             raise
@@ -367,21 +367,24 @@ def _extensive(
 
 
 def _feed_out_of_range(stream: ReadStream) -> list[str]:
-    return [
-        f"Stream {stream.name!r}: {_beyond(sp, stream.T)}"
-        for sp in stream.feed
-        if not sp.T_min <= stream.T <= sp.T_max
-    ]
+    beyond = [sp for sp in stream.feed if not sp.T_min <= stream.T <= sp.T_max]
+    return [_beyond(f"Stream {stream.name!r}", beyond, stream.T)] if beyond else []
 
 
 def _end_out_of_range(end: EndState) -> list[str]:
     by_key = {sp.key: sp for sp in end.species}
-    return [f"End state: {_beyond(by_key[key], end.T)}" for key in end.outside_range]
+    beyond = [by_key[key] for key in end.outside_range]
+    return [_beyond("End state", beyond, end.T)] if beyond else []
 
 
-def _beyond(species: Species, T: float) -> str:
+def _beyond(where: str, species: Sequence[Species], T: float) -> str:
+    """One line for all species of a stream or end state whose data do not reach so far."""
+
+    def kelvin(value: float) -> str:
+        return units.typed_number(round(value, 2))
+
+    ranges = ", ".join(f"{sp.key} ({kelvin(sp.T_min)} to {kelvin(sp.T_max)} K)" for sp in species)
     return (
-        f"{units.number_text(T)} K lies outside the data of {species.key} "
-        f"({units.number_text(species.T_min)} to {units.number_text(species.T_max)} K); "
-        "its values are extended with a constant heat capacity."
+        f"{where}: {kelvin(T)} K lies outside the data of {ranges}; heat capacity is held constant "
+        "beyond them."
     )

@@ -1,0 +1,72 @@
+"""`make bench`: run the benchmarks and write the table of ratios to notes.md beside this file."""
+
+from __future__ import annotations
+
+import json
+import platform
+import sys
+import tempfile
+from datetime import UTC, datetime
+from importlib.metadata import version
+from pathlib import Path
+
+import pytest
+
+HERE = Path(__file__).parent
+
+
+def main() -> int:
+    """Run, then write; the exit code is pytest's."""
+    with tempfile.TemporaryDirectory() as folder:
+        out = Path(folder) / "bench.json"
+        code = pytest.main(
+            [str(HERE), "-q", "--benchmark-only", "--benchmark-sort=mean",
+             "--benchmark-columns=min,median,mean,rounds", f"--benchmark-json={out}"]
+        )  # fmt: skip
+        if code == 0:
+            (HERE / "notes.md").write_text(notes(json.loads(out.read_text())), "utf-8")
+            print(f"wrote {HERE / 'notes.md'}")
+    return int(code)
+
+
+def notes(found: dict) -> str:
+    """The table: medians in one run, each beside Thalweg's on the same problem."""
+    runs = {one["name"]: one for one in found["benchmarks"]}
+    lines = [
+        "# Speed",
+        "",
+        "Written by `make bench`; all figures are medians of one run on one machine. The problem "
+        "is a reforming gas of 68 C-H-O-N species at 1150 K and 2 bar, cold start. The general "
+        "solvers get exact derivatives and ready-made matrices, and only their solving is timed; "
+        "Thalweg's time is that of the whole call, species data and proof included.",
+        "",
+        f"{datetime.now(UTC):%Y-%m-%d}, Python {platform.python_version()}, "
+        + ", ".join(f"{p} {version(p)}" for p in ("numpy", "scipy", "clarabel", "casadi")),
+        "",
+        "| problem | solver | median, ms | times Thalweg | above minimum, G/nRT | balance off |",
+        "| --- | --- | ---: | ---: | ---: | ---: |",
+    ]
+    for problem in ("gas", "gas and graphite"):
+        base = None
+        for solver in ("Thalweg", "Clarabel", "IPOPT", "SLSQP"):
+            one = next(
+                run for run in runs.values()
+                if run["params"] and run["params"].get("name") == solver
+                and run["params"].get("with_graphite") is (problem != "gas")
+            )  # fmt: skip
+            median = one["stats"]["median"] * 1e3
+            base = base or median
+            extra = one["extra_info"]
+            lines.append(
+                f"| {problem} | {solver} | {median:.3g} | {median / base:.3g} "
+                f"| {extra['missed']:.0e} | {extra['balance']:.0e} |"
+            )
+    lines += ["", "| same gas with graphite, fed at 700 K | median, ms |", "| --- | ---: |"]
+    for pair in ("H,p", "U,V"):
+        median = runs[f"test_settle_energy[{pair}]"]["stats"]["median"] * 1e3
+        lines.append(f"| {pair} | {median:.3g} |")
+    return "\n".join(lines) + "\n"
+
+
+if __name__ == "__main__":
+    sys.exit(main())

@@ -14,7 +14,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from solver.core.mixture import Mixture
+from solver.core.mixture import P0, Mixture, R
 
 Array = NDArray[np.float64]
 
@@ -80,7 +80,14 @@ def element_residuals(
 
 
 def optimality_gap(
-    mixture: Mixture, n: Array, b: Array, potentials: Array, c: Array
+    mixture: Mixture,
+    n: Array,
+    b: Array,
+    potentials: Array,
+    g: Array,
+    T: float,
+    p: float,
+    V: float | None,
 ) -> tuple[float, Array]:
     """Rigorous gap over n R T, and ln activity of every candidate.
 
@@ -93,26 +100,39 @@ def optimality_gap(
         Element totals.
     potentials : ndarray, shape (rows,)
         Element potentials over RT.
-    c : ndarray, shape (species,)
-        g/RT at the pressure of the case (gas: + ln p/p0).
+    g : ndarray, shape (species,)
+        g/RT at 1 bar.
+    T, p : float
+        K, Pa; p may be zero in a held volume in which nothing evaporates.
+    V : float or None
+        The volume held, m3, or None where p is held. The bound on the Helmholtz energy is
+        then b.lambda - pi V/RT for any pressure pi that the gas does not exceed.
     """
     is_gas = mixture.is_gas
-    force = mixture.A @ potentials - c
+    force = mixture.A @ potentials - g
     atoms = mixture.A @ mixture.atoms
     # move the potentials down until every condition holds: the bound is then rigorous
-    shift = 0.0
+    shift, vessel = 0.0, 0.0
     if is_gas.any():
         top = float(force[is_gas].max())
         log_sum = top + float(np.log(np.exp(force[is_gas] - top).sum()))
-        shift = max(shift, log_sum / min(float(atoms[is_gas].min()), 1.0))
+        if p > 0.0:
+            log_p = float(np.log(p / P0))
+        else:
+            assert V is not None
+            log_p = max(log_sum, -690.0)
+            vessel = P0 * float(np.exp(log_p)) * V / (R * T)
+        force[is_gas] -= log_p
+        shift = max(shift, (log_sum - log_p) / min(float(atoms[is_gas].min()), 1.0))
     if not is_gas.all():
         shift = max(shift, float((force[~is_gas] / atoms[~is_gas]).max()))
     gas = n[is_gas]
     N = float(gas.sum())
-    with np.errstate(divide="ignore", invalid="ignore"):
-        mixing = np.where(gas > 0.0, np.log(gas / N), 0.0) if N > 0.0 else np.zeros(gas.size)
+    some = gas > 0.0
+    mixing = np.zeros(gas.size)
+    mixing[some] = np.log(gas[some] / N)
     excess = -force
     excess[is_gas] += mixing
     gap = float(n @ excess) + float((n @ mixture.A - b) @ potentials)
-    gap += shift * float(b @ mixture.atoms)
+    gap += shift * float(b @ mixture.atoms) + vessel
     return gap / float(n.sum()), force

@@ -10,8 +10,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from solver.core.basis import CHARGE, formula_vector
-from solver.core.minimise import Case, NotHeld, Unsettled
-from solver.core.mixture import P0, Held, Mixture, mixture_of
+from solver.core.minimise import NotHeld, Unsettled
+from solver.core.mixture import Held, Mixture, mixture_of
+from solver.core.phaseset import Case
 from solver.core.temperature import OutOfReach, Point, Search, find_temperature, point_at
 from solver.core.totals import Totals
 from solver.endstate import PRESENT, EndState
@@ -193,9 +194,9 @@ def _end_state(
 ) -> EndState:
     T, p, n = point.T, point.p, point.n
     g, _, _ = mixture.thermo.at(T)
-    c = g + np.where(mixture.is_gas, np.log(p / P0), 0.0)
     closure, trace = element_residuals(mixture, n, case.feed, case.vectors)
-    gap, force = optimality_gap(mixture, n, case.totals, point.potentials, c)
+    held_volume = point.totals.V if PAIRS[fixed.pair].holds_volume else None
+    gap, force = optimality_gap(mixture, n, case.totals, point.potentials, g, T, p, held_volume)
     absent = {sp.key: 0.0 for sp in species if sp.phase != "gas"}
     for sp, amount, f in zip(mixture.species, n, force, strict=True):
         if sp.phase != "gas":

@@ -20,10 +20,12 @@ from numpy.typing import NDArray
 
 Array = NDArray[np.float64]
 
-_MAX_ITERATIONS = 60
-_MAX_STEP = 60.0  # largest change of any ln n in one step
+_MAX_ITERATIONS = 80
+_MAX_STEP = 300.0  # largest change of a component's ln activity in one step
 _CLOSED = 2e-14
 _EXP_LIMIT = 690.0
+_FAINT = 1e-250
+_PATIENCE = 6  # iterations that a gas may be larger than its feed
 
 
 @dataclass(frozen=True)
@@ -91,10 +93,14 @@ def solve_balances(
     unknowns = m + 1 if system.holds_pressure else m
     b_up, b_down = np.maximum(-b, 0.0), np.maximum(b, 0.0)
     log_a, nu = log_a.copy(), nu.copy()
-    n = np.exp(np.clip(log_a @ reactions.T - kappa + nu[:, None], -_EXP_LIMIT, _EXP_LIMIT))
+    log_n = log_a @ reactions.T - kappa + nu[:, None]
+    n = np.exp(np.clip(log_n, -_EXP_LIMIT, _EXP_LIMIT))
     closed = np.zeros(len(b), dtype=bool)
     failed = np.zeros(len(b), dtype=bool)
     last = np.full(len(b), np.inf)
+    merit_last = np.full(len(b), np.inf)
+    too_large = np.zeros(len(b), dtype=int)
+    step = np.zeros((len(b), unknowns))
     cut1, cut2 = 2 * m, 2 * m + m * unknowns
     cut3, cut4 = cut2 + m * unknowns, cut2 + m * unknowns + unknowns
     ridge = 1e-14 * np.eye(unknowns)
@@ -115,34 +121,89 @@ def solve_balances(
             F[:, m] = np.log(total[:, 0]) - nu
             J[:, m] = sums[:, cut3:cut4] / total
             J[:, m, m] -= 1.0
+            too_large = np.where(nu > nu_limit, too_large + 1, 0)
+        beyond = (np.maximum(P, M) < _FAINT) | (log_n.max(axis=1) > _EXP_LIMIT)[:, None]
+        if beyond.any():
+            _rescale(system, log_n, b, nu, beyond, J, F)
         worst = np.abs(F).max(axis=1)
         closed = (worst <= _CLOSED) | ((worst <= 1e-11) & (worst >= 0.5 * last))
-        failed |= ~np.isfinite(worst) | (nu > nu_limit)
+        failed |= ~np.isfinite(worst) | (too_large > _PATIENCE)
         active = ~(closed | failed)
         if not active.any():
             break
-        last = worst
+        merit = (F**2).sum(axis=1)
+        back = active & (merit > merit_last) & (worst > 1e-8)
         J[~np.isfinite(J)] = 0.0
         F[~np.isfinite(F)] = 0.0
-        step = -np.linalg.solve(J + ridge, F[:, :, None])[:, :, 0]
-        step[~active] = 0.0
-        change = step[:, :m] @ reactions.T
-        if system.holds_pressure:
-            change += step[:, m:]
-        size = np.abs(change).max(axis=1)
-        damp = np.minimum(1.0, _MAX_STEP / np.maximum(size, 1e-300))
-        if (damp < 1.0).any():
-            step *= damp[:, None]
-            change *= damp[:, None]
-        log_a += step[:, :m]
-        if system.holds_pressure:
-            nu += step[:, m]
-        small = size < 1.0
-        if small.all():
-            n = n * np.exp(change)
+        if back.all():
+            newton = step
         else:
-            fresh = np.exp(
-                np.clip(log_a @ reactions.T - kappa + nu[:, None], -_EXP_LIMIT, _EXP_LIMIT)
-            )
-            n = np.where(small[:, None], n * np.exp(change), fresh)
+            newton = -np.linalg.solve(J + ridge, F[:, :, None])[:, :, 0]
+        if back.any():
+            # worse than before: return three quarters of the way, and try the rest again
+            move = np.where(back[:, None], -0.75 * step, newton)
+            step = np.where(back[:, None], 0.25 * step, newton)
+        else:
+            move = step = newton
+        merit_last = np.where(back, merit_last, merit)
+        last = np.where(back, last, worst)
+        move[~active] = 0.0
+        size = np.abs(move).max(axis=1)
+        damp = np.where(back, 1.0, np.minimum(1.0, _MAX_STEP / np.maximum(size, 1e-300)))
+        if (damp < 1.0).any():
+            move = move * damp[:, None]
+            step = np.where(back[:, None], step, step * damp[:, None])
+        change = move[:, :m] @ reactions.T
+        if system.holds_pressure:
+            change += move[:, m:]
+        log_a += move[:, :m]
+        if system.holds_pressure:
+            nu += move[:, m]
+        log_n += change
+        n = np.exp(np.clip(log_n, -_EXP_LIMIT, _EXP_LIMIT))
     return GasSolution(n, log_a, nu, closed & ~failed, iteration)
+
+
+def _rescale(
+    system: GasSystem,
+    log_n: Array,
+    b: Array,
+    nu: Array,
+    rows: NDArray[np.bool_],
+    J: Array,
+    F: Array,
+) -> None:
+    """Rewrite balances whose amounts underflow or overflow, each by its own largest term.
+
+    A potential that only amounts below 1e-250 decide still decides which condensed phases
+    may form, so that these balances are solved like all others.
+    """
+    species, m = system.reactions.shape
+    effect = np.ones((species, J.shape[1]))
+    effect[:, :m] = system.reactions
+    for case, row in zip(*np.nonzero(rows), strict=True):
+        column = system.reactions[:, row]
+        up = _log_sum(log_n[case], column, effect, -b[case, row])
+        down = _log_sum(log_n[case], -column, effect, b[case, row])
+        F[case, row] = up[0] - down[0]
+        J[case, row] = up[1] - down[1]
+    if system.holds_pressure:
+        for case in np.flatnonzero(rows.any(axis=1)):
+            value, slope = _log_sum(log_n[case], np.ones(species), effect, 0.0)
+            F[case, m] = value - nu[case]
+            J[case, m] = slope
+            J[case, m, m] -= 1.0
+
+
+def _log_sum(
+    log_n: Array, coefficients: Array, effect: Array, constant: float
+) -> tuple[float, Array]:
+    """ln of the positive terms of a balance and its slopes, free of overflow."""
+    side = coefficients > 0.0
+    logs = log_n[side] + np.log(coefficients[side])
+    top = float(logs.max(initial=-np.inf))
+    if constant > 0.0:
+        top = max(top, float(np.log(constant)))
+    weights = np.exp(logs - top)
+    total = float(weights.sum()) + (np.exp(np.log(constant) - top) if constant > 0.0 else 0.0)
+    return top + float(np.log(total)), (weights / total) @ effect[side]

@@ -41,6 +41,10 @@ class Mixture:
     thermo: ThermoTable
     volume: Array
     atoms: Array
+    gas: NDArray[np.intp]
+    condensed: NDArray[np.intp]
+    rank: int
+    """Number of independent balances among the candidates."""
     _bases: dict[tuple[int, ...], Basis] = field(default_factory=dict)
 
     def basis(self, members: Sequence[int]) -> Basis:
@@ -61,11 +65,15 @@ def make_mixture(species: Sequence[Species], rows: Mapping[str, int]) -> Mixture
         # an electron has no atom: let the charge row carry a small negative weight
         most = max((sp.charge for sp in species), default=1)
         atoms[rows["charge"]] = -1.0 / (2.0 * max(most, 1))
+    is_gas = np.array([sp.phase == "gas" for sp in species], dtype=bool)
     return Mixture(
         species=tuple(species),
         rows=dict(rows),
         A=A,
-        is_gas=np.array([sp.phase == "gas" for sp in species], dtype=bool),
+        is_gas=is_gas,
+        gas=np.flatnonzero(is_gas),
+        condensed=np.flatnonzero(~is_gas),
+        rank=int(np.linalg.matrix_rank(A)) if len(species) else 0,
         thermo=ThermoTable(species),
         volume=np.zeros(len(species)),
         atoms=atoms,

@@ -19,6 +19,10 @@ _EPS = float(np.finfo(float).eps)
 _MAX_PIVOTS = 2000
 
 
+class Endless(ArithmeticError):
+    """More pivots than any program of this size needs."""
+
+
 class Simplex:
     """min c.x under A^T x = b, x >= 0, by a dense tableau with artificial start columns.
 
@@ -62,7 +66,7 @@ class Simplex:
         return np.asarray(cost @ self._inverse)
 
     def run(self) -> None:
-        """Pivot to the optimum. Raises ArithmeticError if it does not end."""
+        """Pivot to the optimum. Raises Endless if there is none."""
         self._leave_artificials()
         c = self._c
         cost = np.array([c[j] if j >= 0 else 0.0 for j in self.basis])
@@ -121,7 +125,7 @@ class Simplex:
     def _pivot(self, k: int, j: int) -> None:
         self._pivots += 1
         if self._pivots > _MAX_PIVOTS:
-            raise ArithmeticError("the linear program does not end")
+            raise Endless("the linear program does not end")
         column = self._T[:, j].copy()
         pivot = column[k]
         column[k] = 0.0

@@ -14,8 +14,9 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from solver.core.minimise import Case, Minimum, Present, minimise
+from solver.core.minimise import Minimum, Present, minimise
 from solver.core.mixture import Held, Mixture, R
+from solver.core.phaseset import Case
 from solver.core.response import amounts_by_log_T
 from solver.core.totals import Totals, totals
 
@@ -70,7 +71,7 @@ def point_at(
     """Minimise at one temperature and evaluate the state."""
     minimum = minimise(mixture, case, held, start)
     g, h, cp = mixture.thermo.at(held.T)
-    state = totals(minimum.n, mixture.is_gas, mixture.volume, g, h, held.T, minimum.p)
+    state = totals(minimum.n, mixture.is_gas, mixture.volume, g, h, held.T, minimum.p, held.V)
     slope = _slope(mixture, minimum, held, h, cp) if variable else None
     if slope is not None and variable == "S":
         slope /= held.T

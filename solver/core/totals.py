@@ -33,7 +33,14 @@ class Totals:
 
 
 def totals(
-    n: Array, is_gas: NDArray[np.bool_], volume: Array, g: Array, h: Array, T: float, p: float
+    n: Array,
+    is_gas: NDArray[np.bool_],
+    volume: Array,
+    g: Array,
+    h: Array,
+    T: float,
+    p: float,
+    V: float | None,
 ) -> Totals:
     """Ideal gas with pure condensed phases beside it.
 
@@ -43,6 +50,8 @@ def totals(
         Amounts (mol), molar volumes of condensed species (m3/mol), g/RT and h/RT at 1 bar.
     T, p : float
         K, Pa.
+    V : float or None
+        The volume held, m3; None where the mixture takes what it needs.
     """
     RT = R * T
     gas = n[is_gas]
@@ -52,5 +61,6 @@ def totals(
     V_condensed = float(n @ volume)
     H = RT * float(n @ h) + V_condensed * (p - P0)
     S = R * (float(n @ (h - g)) - mixing)
-    V = N * RT / p + V_condensed
+    if V is None:
+        V = N * RT / p + V_condensed
     return Totals(V=V, H=H, U=H - p * V, S=S, G=H - T * S)

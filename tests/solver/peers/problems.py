@@ -105,8 +105,10 @@ def lower_bound(problem: Arrays, potentials: npt.NDArray[np.float64]) -> float:
     """
     reach = problem.A.T @ potentials - problem.g
     gas = reach[problem.gas]
-    top = gas.max()
-    excess = max(0.0, float(top + np.log(np.exp(gas - top).sum())))
+    excess = 0.0
+    if gas.size:
+        top = float(gas.max())
+        excess = max(excess, top + float(np.log(np.exp(gas - top).sum())))
     if not problem.gas.all():
         excess = max(excess, float(reach[~problem.gas].max()))
     least = problem.A.sum(axis=0).min()

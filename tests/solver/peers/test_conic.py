@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
+import contextlib
 import warnings
 
 import numpy as np
 import pytest
 
 import solver
-from tests.solver.peers.conic import Answer, minimise
+from species_db import R
+from tests.solver.peers.conic import Answer, NoAnswer, minimise
 from tests.solver.peers.problems import FUZZ, Arrays, arrays, gibbs, random_problem
 
 CASES = range(60 * FUZZ)
@@ -18,7 +20,10 @@ def conic(problem: Arrays) -> Answer:
     """The peer warns when it stops short of 1e-10; its own gap then widens the comparison."""
     with warnings.catch_warnings():
         warnings.filterwarnings("ignore", message="Solution may be inaccurate")
-        return minimise(problem)
+        try:
+            return minimise(problem)
+        except NoAnswer as error:
+            pytest.skip(f"the conic solver gave up: {error}")
 
 
 @pytest.mark.parametrize("seed", CASES)
@@ -32,15 +37,28 @@ def test_same_minimum_as_a_conic_solver(seed: int):
     n = np.array([end.amounts[s.key] for s in problem.species])
     total = n.sum()
     own = gibbs(data, n)
-    gap = abs(peer.gibbs - peer.bound) / total
-    assert gap < 1e-6, "the peer has no answer to compare with"
+    # how far the peer is from its own bound, and its balance from the feed
+    accuracy = abs(peer.gibbs - peer.bound) / total + peer.residual
+    assert accuracy < 1e-5, "the peer has no answer to compare with"
 
     # never below the bound of the peer's dual, never above its minimum
     assert own >= peer.bound - 1e-9 * total, str(problem)
-    assert abs(own - peer.gibbs) <= (1e-8 + gap) * total, str(problem)
-    assert own == pytest.approx(end.G / (8.314462618 * problem.T), rel=1e-10, abs=1e-10 * total)
+    assert abs(own - peer.gibbs) <= (1e-8 + accuracy) * total, str(problem)
+    assert own == pytest.approx(end.G / (R * problem.T), rel=1e-10, abs=1e-10 * total)
     # A gap d allows fractions to differ by sqrt(2 d): Pinsker's inequality on the mixing entropy.
-    assert np.abs(n - peer.n).max() <= (1e-6 + np.sqrt(2 * gap)) * total, str(problem)
+    assert np.abs(n - peer.n).max() <= (1e-6 + np.sqrt(2 * accuracy)) * total, str(problem)
+
+
+def test_most_problems_are_compared():
+    """The peer answers at least 55 of the first 60, to 1e-6 or better."""
+    found = 0
+    for seed in range(60):
+        data = arrays(random_problem(seed))
+        with warnings.catch_warnings(), contextlib.suppress(NoAnswer):
+            warnings.filterwarnings("ignore", message="Solution may be inaccurate")
+            peer = minimise(data)
+            found += abs(peer.gibbs - peer.bound) / peer.n.sum() + peer.residual < 1e-6
+    assert found >= 55
 
 
 def test_problems_are_varied():

@@ -385,6 +385,6 @@ def _beyond(where: str, species: Sequence[Species], T: float) -> str:
 
     ranges = ", ".join(f"{sp.key} ({kelvin(sp.T_min)} to {kelvin(sp.T_max)} K)" for sp in species)
     return (
-        f"{where}: {kelvin(T)} K lies outside the data of {ranges}; heat capacity is held constant "
-        "beyond them."
+        f"{where}: {kelvin(T)} K lies outside the data of {ranges}; beyond its data a heat "
+        "capacity is held constant."
     )

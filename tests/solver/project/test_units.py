@@ -126,7 +126,7 @@ def test_molar_volume_of_the_normal_cubic_metre():
     """22.413 969 54 L/mol at 273.15 K and 101325 Pa: CODATA 2018 (constants exact)."""
     litres = 1e3 / NORMAL_MOLES
     assert litres == pytest.approx(22.41396954, rel=1e-9)
-    assert 1e3 / STANDARD_MOLES == pytest.approx(litres * 288.15 / 273.15, rel=1e-12)
+    assert NORMAL_MOLES / STANDARD_MOLES == pytest.approx(288.15 / 273.15, rel=1e-12)
 
 
 @pytest.mark.parametrize(

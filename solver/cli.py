@@ -1,0 +1,169 @@
+"""Headless commands: ``settle`` and ``species``. Never imports Qt.
+
+Exit code 0 when all is well, 2 for bad input, 3 where no end state exists or none could be
+proven. Errors are single lines on standard error.
+"""
+
+from __future__ import annotations
+
+import contextlib
+import json
+import os
+import sys
+from collections.abc import Sequence
+from pathlib import Path
+from typing import TYPE_CHECKING, Annotated
+
+import typer
+
+from solver.errors import InputError, SettleError
+
+if TYPE_CHECKING:
+    from solver.project.case import CaseAnswer
+    from solver.project.model import Case, Project
+
+OK, BAD_INPUT, NO_END_STATE = 0, 2, 3
+
+app = typer.Typer(
+    name="thalweg",
+    help="Where a reacting mixture ends up: chemical equilibrium with its proof.\n\n"
+    "Without a command, `thalweg` or `thalweg FILE` opens the window.",
+    no_args_is_help=True,
+    add_completion=False,
+    rich_markup_mode=None,
+    context_settings={"help_option_names": ["-h", "--help"]},
+)
+
+
+@app.command()
+def settle(
+    file: Annotated[Path, typer.Argument(help="A project, NAME.thalweg.", show_default=False)],
+    as_json: Annotated[
+        bool, typer.Option("--json", help="Write JSON in SI units with every digit.")
+    ] = False,
+) -> None:
+    """Settle every case of a project and print where each ends up.
+
+    The table gives T, p, V and heat, what is present, what did not form and the proof.
+    Exit code 0: all settled. 2: the file or a field is wrong. 3: no such end state exists, or none
+    could be proven.
+
+    \b
+    Examples:
+      thalweg settle samples/reformer-outlet.thalweg
+      thalweg settle samples/lime-kiln.thalweg --json
+      thalweg settle plant.thalweg --json > answer.json
+    """
+    from solver.project import file as project_file
+    from solver.project.case import settle_case
+
+    try:
+        project = project_file.read(file)
+    except InputError as error:
+        _complain(str(error))
+        raise typer.Exit(BAD_INPUT) from None
+    code = OK
+    results: list[tuple[Case, CaseAnswer | SettleError]] = []
+    for case in project.cases:
+        try:
+            results.append((case, settle_case(case)))
+        except SettleError as error:
+            code = max(code, _tell(file, project, case, error), key=_rank)
+            results.append((case, error))
+    if as_json:
+        from solver.project.answer_json import answers
+
+        sys.stdout.write(json.dumps(answers(project, results), indent=2, ensure_ascii=False) + "\n")
+    else:
+        from solver.project.answer_table import print_answers
+
+        print_answers(project, results)
+    raise typer.Exit(code)
+
+
+@app.command()
+def species(
+    text: Annotated[
+        str, typer.Argument(help="A key, a formula, a name or part of one.", show_default=False)
+    ],
+) -> None:
+    """Look a species up: its data, range, uncertainty and sources.
+
+    \b
+    Examples:
+      thalweg species CO2
+      thalweg species "carbon dioxide"
+      thalweg species "Fe2O3(s)"
+      thalweg species sulf
+    """
+    from solver.project.species_table import print_species
+    from species_db import UnknownSpecies, load
+
+    try:
+        print_species(load(), text)
+    except UnknownSpecies as error:
+        from solver.project.candidates import unknown_species
+
+        _complain(str(unknown_species(error, "text")))
+        raise typer.Exit(BAD_INPUT) from None
+
+
+def _tell(file: Path, project: Project, case: Case, error: SettleError) -> int:
+    """Say what is wrong with a case, one line a fault; gives the exit code."""
+    where = file.name if len(project.cases) == 1 else f"{file.name}, {case.name}"
+    for fault in getattr(error, "faults", (error,)):
+        place = f"{where}, {fault.field}" if fault.field else where
+        _complain(f"{place}: {fault}")
+    return BAD_INPUT if isinstance(error, InputError) else NO_END_STATE
+
+
+def _rank(code: int) -> int:
+    """Bad input outweighs a case without end state."""
+    return (OK, NO_END_STATE, BAD_INPUT).index(code)
+
+
+def _complain(text: str) -> None:
+    sys.stderr.write(" ".join(f"thalweg: {text}".split()) + "\n")
+
+
+def main(argv: Sequence[str] | None = None) -> int:
+    """Run one headless command.
+
+    Parameters
+    ----------
+    argv
+        The words after the program's name; those of the process if not given.
+
+    Returns
+    -------
+    int
+        The exit code.
+    """
+    words = list(sys.argv[1:] if argv is None else argv)
+    for stream in (sys.stdout, sys.stderr):
+        # A terminal without these letters shows a question mark instead of failing.
+        with contextlib.suppress(AttributeError, ValueError):
+            stream.reconfigure(errors="replace")  # type: ignore[union-attr]
+    try:
+        code = typer.main.get_command(app).main(
+            args=words or ["--help"], prog_name="thalweg", standalone_mode=False
+        )
+        sys.stdout.flush()
+    except (typer.Abort, KeyboardInterrupt):
+        return 130
+    except BrokenPipeError:
+        # The reader (head, less) has left; nothing more to say, and nothing to flush at exit.
+        with contextlib.suppress(OSError):
+            os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        return OK
+    except Exception as error:
+        # A wrong word or option: which class says so depends on typer's version.
+        if not hasattr(error, "format_message"):
+            raise
+        _complain(f"{error.format_message().rstrip('.')}. See thalweg --help.")
+        return BAD_INPUT
+    return int(code) if isinstance(code, int) else OK
+
+
+if __name__ == "__main__":
+    sys.exit(main())

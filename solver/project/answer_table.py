@@ -1,0 +1,133 @@
+"""Answers as a table in the terminal."""
+
+from __future__ import annotations
+
+import sys
+from collections.abc import Sequence
+from typing import Final
+
+from rich import box
+from rich.console import Console
+from rich.table import Table
+
+from solver.errors import SettleError
+from solver.project import units
+from solver.project.case import CaseAnswer
+from solver.project.cautions import cautions
+from solver.project.model import Case, Project
+
+SHOWN: Final = 1e-6
+"""Share of its phase from which a gas is printed; the rest is counted in one line."""
+NEAR: Final = 1e-3
+"""Activity from which a condensed species that did not form is printed."""
+
+
+def console() -> Console:
+    """A console on standard output that never breaks or colours what is piped elsewhere."""
+    out = Console(file=sys.stdout, highlight=False, markup=False, soft_wrap=True)
+    if not out.is_terminal:
+        out.width = 160
+    return out
+
+
+def print_answers(
+    project: Project, results: Sequence[tuple[Case, CaseAnswer | SettleError]]
+) -> None:
+    """Print every case that settled; the faults of the others are on standard error."""
+    out = console()
+    if any(isinstance(found, CaseAnswer) for _, found in results) and project.title:
+        out.print(project.title, style="bold")
+    pairs = []
+    for case, found in results:
+        if isinstance(found, CaseAnswer):
+            _print(out, case, found)
+            pairs.append(case.fixed.pair)
+    sentences = dict.fromkeys(sentence for pair in pairs for sentence in cautions(pair))
+    for sentence in sorted(sentences, key=lambda s: s == cautions("T,p")[-1]):
+        out.print(sentence, style="dim")
+
+
+def _print(out: Console, case: Case, answer: CaseAnswer) -> None:
+    end = answer.end
+    flow = answer.basis == "flow"
+    amount_unit, amount_factor = ("kmol/h", 3.6) if flow else ("mol", 1.0)
+    out.print()
+    out.print(f"{case.name}  ({case.fixed.pair} held)", style="bold")
+    number = units.number_text
+    celsius = number(units.from_si(end.T, "degC", "temperature"))
+    out.print(f"  T     {number(end.T)} K = {celsius} °C")
+    out.print(f"  p     {number(end.p / 1e5)} bar")
+    out.print(f"  V     {number(end.V * (3600 if flow else 1))} {'m³/h' if flow else 'm³'}")
+    out.print(f"  heat  {_heat(answer)}")
+    out.print()
+    out.print(_composition(answer, amount_unit, amount_factor))
+    phases = end.phase_amounts
+    out.print(
+        "  phases  "
+        + ", ".join(f"{key} {number(n * amount_factor)} {amount_unit}" for key, n in phases.items())
+    )
+    _print_absent(out, answer)
+    proof = end.proof
+    out.print(
+        f"  proof   elements {_small(proof.element_residual)}, energy "
+        f"{_small(proof.energy_residual)}, gap {_small(proof.gap)} (relative)"
+    )
+    out.print(f"  model   {proof.model}")
+    for message in answer.messages:
+        out.print(f"  note    {message}")
+    out.print()
+
+
+def _heat(answer: CaseAnswer) -> str:
+    """The heat in kJ or kW; rounding of an adiabatic case is no heat."""
+    scale = abs(answer.fed.H) + abs(answer.end.H)
+    if abs(answer.heat) <= 1e-9 * scale:
+        return "0 (none crosses the wall)"
+    unit = "kW" if answer.basis == "flow" else "kJ"
+    way = "taken up" if answer.heat > 0 else "given off"
+    return f"{units.quantity_text(answer.heat / 1e3, unit)} ({way})"
+
+
+def _small(value: float) -> str:
+    return units.number_text(abs(value), 2)
+
+
+def _composition(answer: CaseAnswer, unit: str, factor: float) -> Table:
+    end = answer.end
+    table = Table(box=box.SIMPLE_HEAD, pad_edge=False, show_edge=False, padding=(0, 1))
+    table.add_column("  species")
+    table.add_column("name", style="dim", max_width=34, no_wrap=True)
+    table.add_column(unit, justify="right")
+    table.add_column("mol % of phase", justify="right")
+    table.add_column("phase")
+    traces = 0
+    rows = sorted(
+        ((sp, end.amounts[sp.key]) for sp in end.species),
+        key=lambda row: (row[0].phase != "gas", -row[1]),
+    )
+    for sp, n in rows:
+        share = end.fraction(sp.key)
+        if sp.phase == "gas" and share < SHOWN:
+            traces += 1
+        elif n > 0:
+            table.add_row(
+                f"  {sp.key}",
+                sp.name,
+                units.number_text(n * factor),
+                units.number_text(100 * share),
+                sp.phase,
+            )
+    if traces:
+        table.add_row(f"  {traces} more gases, each below 1 ppm")
+    return table
+
+
+def _print_absent(out: Console, answer: CaseAnswer) -> None:
+    absent = answer.end.proof.absent
+    near = sorted(((a, key) for key, a in absent.items() if a >= NEAR), reverse=True)
+    if near:
+        listed = ", ".join(f"{key} {units.number_text(a, 3)}" for a, key in near)
+        out.print(f"  absent  {listed} (activity; forms at 1)")
+    if len(near) < len(absent):
+        rest = len(absent) - len(near)
+        out.print(f"          {rest} {'more ' if near else ''}condensed below {NEAR:g}")

@@ -1,0 +1,119 @@
+"""The what-if line: end states over a range of temperatures, for the plot."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from time import perf_counter
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from gui.jobs import Stopped
+from solver.project.model import Case
+from solver.project.units import to_si
+
+if TYPE_CHECKING:
+    from solver.project.case import CaseAnswer
+
+POINTS = 61
+
+
+@dataclass(frozen=True, slots=True)
+class Line:
+    """Shares of all moles against temperature.
+
+    T, shape (points,), K; shares, shape (points, species); `stable` marks the points where a
+    condensed phase is present, by key; NaN where a point could not be settled.
+    """
+
+    T: NDArray[np.float64]
+    keys: tuple[str, ...]
+    shares: NDArray[np.float64]
+    condensed: tuple[str, ...]
+    failed: int
+    seconds: float
+    held: str
+    """What is held besides T, in words of the axis: 'p' or 'V' and its SI value."""
+    value: float
+
+
+def range_of(case: Case) -> tuple[float, float]:
+    """The plot's range in K; raises UnitError with the field's path."""
+    low = to_si(case.plot.T_from, "temperature", "plot.T_from")
+    high = to_si(case.plot.T_to, "temperature", "plot.T_to")
+    return low, high
+
+
+def composition_line(
+    answer: CaseAnswer,
+    low: float,
+    high: float,
+    progress: Callable[[float], None],
+    should_stop: Callable[[], bool],
+    points: int = POINTS,
+    settle: Any = None,
+) -> Line:
+    """Settle `answer`'s feed over temperatures from `low` to `high` (K).
+
+    Pressure is that of the end state; where the case holds the volume, the volume is held.
+    """
+    if settle is None:
+        from solver import settle
+    from solver import Fixed
+    from solver.errors import SettleError
+
+    began = perf_counter()
+    end = answer.end
+    sealed = end.fixed.pair.endswith("V")
+    species = answer.prepared.candidates
+    keys = tuple(sp.key for sp in species)
+    T = np.linspace(low, high, points)
+    shares = np.full((points, len(keys)), np.nan)
+    failed = 0
+    for i, t in enumerate(T):
+        if should_stop():
+            raise Stopped
+        held = Fixed("T,V", T=float(t), V=end.V) if sealed else Fixed("T,p", T=float(t), p=end.p)
+        try:
+            state = settle(species, answer.prepared.feed, held)
+        except SettleError:
+            failed += 1
+        else:
+            n = np.array([state.amounts[key] for key in keys])
+            shares[i] = n / n.sum()
+        progress((i + 1) / points)
+    condensed = tuple(sp.key for sp in species if sp.phase != "gas")
+    return Line(
+        T,
+        keys,
+        shares,
+        condensed,
+        failed,
+        perf_counter() - began,
+        "V" if sealed else "p",
+        end.V if sealed else end.p,
+    )
+
+
+def shown_keys(line: Line, logarithmic: bool, most: int = 14) -> list[str]:
+    """The species worth a curve, the most abundant first."""
+    if not line.keys:
+        return []
+    with np.errstate(all="ignore"):
+        top = np.nanmax(np.where(np.isnan(line.shares), 0.0, line.shares), axis=0)
+    least = 1e-6 if logarithmic else 4e-3
+    order = [i for i in np.argsort(-top) if top[i] >= least]
+    return [line.keys[i] for i in order[:most]]
+
+
+def phase_changes(line: Line) -> list[tuple[float, str]]:
+    """Temperatures (K) at which a condensed phase appears or goes, with its name in words."""
+    out = []
+    for key in line.condensed:
+        present = line.shares[:, line.keys.index(key)] > 0
+        for i in np.flatnonzero(present[1:] != present[:-1]):
+            word = "forms" if present[i + 1] else "gone"
+            out.append((float(line.T[i] + line.T[i + 1]) / 2, f"{key} {word}"))
+    return sorted(out)

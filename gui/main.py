@@ -1,0 +1,69 @@
+"""The entry point: headless commands go to the command line, anything else opens the window."""
+
+from __future__ import annotations
+
+import sys
+from collections.abc import Sequence
+
+COMMANDS = ("settle", "what-if", "sheet", "species")
+FLAGS = ("--help", "-h", "--version")
+
+
+def main(argv: Sequence[str] | None = None) -> int:
+    """Run `thalweg`.
+
+    Parameters
+    ----------
+    argv : sequence of str, optional
+        The arguments without the program's name; those of the process when left out.
+
+    Returns
+    -------
+    int
+        The exit code: 0 when all is well, 2 for bad input, 3 where there is no end state.
+    """
+    arguments = list(sys.argv[1:] if argv is None else argv)
+    first = arguments[0] if arguments else ""
+    if first in COMMANDS or first.startswith("-"):
+        from solver.cli import main as headless
+
+        return headless(arguments)
+    if len(arguments) > 1:
+        print(
+            f"thalweg opens one file at a time; {arguments[1]!r} is one too many. "
+            f"Commands are {', '.join(COMMANDS)}.",
+            file=sys.stderr,
+        )
+        return 2
+    from gui.screen import missing_libraries, there_is_a_screen
+
+    on_screen = there_is_a_screen()
+    missing = missing_libraries(on_screen)
+    if missing:
+        print(missing, file=sys.stderr)
+    if missing or not on_screen:
+        from gui.without_screen import tell
+
+        return tell(first, drawable=not missing_libraries(False), no_screen=not on_screen)
+    return show(first)
+
+
+def show(file: str) -> int:
+    """Open the window on `file` ("" for an empty project) and run until it is closed."""
+    from pathlib import Path
+
+    from gui.application import make
+
+    app, window = make([sys.argv[0]])
+    window.session.messages.catch_uncaught()
+    window.show()
+    if file:
+        window.files.read(Path(file))
+    try:
+        return app.exec()
+    finally:
+        window.session.messages.release()
+
+
+if __name__ == "__main__":
+    raise SystemExit(main())

@@ -1,0 +1,210 @@
+"""What is held fixed: the pair, its two values, and the heat that crosses the wall."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from itertools import pairwise
+
+from PySide6.QtCore import Qt
+from PySide6.QtWidgets import QComboBox, QGridLayout, QWidget
+
+from gui import edits, pairs, readings
+from gui.fields.quantity_field import QuantityField
+from gui.parts.card import Card, Label, Sentence, link
+from gui.session import Session
+from gui.theme import GRID
+from solver.project.model import Quantity
+from solver.project.units import UnitError, canonical, from_si, to_si
+from solver.project.wording import quantity_text
+
+
+class ValueRow:
+    """Label, field, echo and sentence of one variable; empty means as fed."""
+
+    def __init__(self, grid: QGridLayout, row: int, variable: pairs.Variable, empty: str) -> None:
+        self.variable = variable
+        self.label = Label(variable.words, "muted")
+        self.field = QuantityField(variable.kind, variable.batch_unit, optional=True)
+        self.field.setPlaceholderText(empty)
+        self.field.setAccessibleName(variable.words)
+        self.field.set_hint(f"For example {variable.hint}. Leave it empty for “{empty}”.")
+        self.as_fed = link(empty, f"Empty the field: {variable.words} {empty}")
+        self.echo = Label("", "muted", "small")
+        self.echo.setAlignment(Qt.AlignmentFlag.AlignRight | Qt.AlignmentFlag.AlignVCenter)
+        self.sentence = Sentence()
+        self.label.setBuddy(self.field)
+        self.field.setMinimumWidth(120)
+        grid.addWidget(self.label, row, 0)
+        grid.addWidget(self.field, row, 1)
+        grid.addWidget(self.as_fed, row, 2)
+        grid.addWidget(self.echo, row, 3)
+        grid.addWidget(self.sentence, row + 1, 1, 1, 3)
+
+    def set_visible(self, visible: bool) -> None:
+        """Show or hide the whole row."""
+        for widget in (self.label, self.field, self.as_fed, self.echo):
+            widget.setVisible(visible)
+        if not visible:
+            self.sentence.say("")
+
+    def show_fault(self, text: str) -> None:
+        """Mark the field and say why."""
+        self.field.set_fault(text)
+        self.sentence.say(text)
+
+
+class HeldFixed(Card):
+    """The pair menu and a row for each value it needs."""
+
+    def __init__(
+        self,
+        session: Session,
+        choices: Callable[[], list[pairs.PairChoice]] = pairs.choices,
+    ) -> None:
+        super().__init__("Held fixed")
+        self._session = session
+        self.choices = choices()
+        self.menu = QComboBox()
+        self.menu.setAccessibleName("pair of state variables that is held")
+        for pair in self.choices:
+            self.menu.addItem(f"{pair.words}  ({pair.name})", pair.name)
+        self.menu.activated.connect(self._pick)
+        self.body.addWidget(self.menu)
+        grid = QGridLayout()
+        grid.setContentsMargins(0, GRID // 2, 0, 0)
+        grid.setHorizontalSpacing(GRID)
+        grid.setVerticalSpacing(GRID // 2)
+        grid.setColumnStretch(3, 1)
+        self.rows: dict[str, ValueRow] = {}
+        for i, variable in enumerate(pairs.VARIABLES.values()):
+            row = ValueRow(grid, 2 * i, variable, "as fed")
+            self.rows[variable.symbol] = row
+            row.field.typed.connect(lambda q, v=variable: self._type(v, q))
+            row.as_fed.clicked.connect(lambda _=False, v=variable: self._type(v, None))
+        heat = pairs.Variable("heat", "heat added", "heat", "kJ", "kW", "50 kW; negative when lost")
+        self.heat = ValueRow(grid, 20, heat, "none")
+        self.heat.field.typed.connect(self._type_heat)
+        self.heat.as_fed.clicked.connect(lambda: self._type_heat(None))
+        self._gas = Label("gas", "muted")
+        grid.addWidget(self._gas, 30, 0)
+        self.gas = Label("ideal")
+        self.gas.setIndent(GRID)
+        grid.addWidget(self.gas, 30, 1)
+        self.body.addLayout(grid)
+        self.sentence = Sentence()
+        self.body.addWidget(self.sentence)
+        for row in (*self.rows.values(), self.heat):
+            row.field.left.connect(session.end_visit)
+        # Tab goes down the fields in the order they stand in.
+        order: list[QWidget] = [self.menu]
+        for row in (*self.rows.values(), self.heat):
+            order += [row.field, row.as_fed]
+        for a, b in pairwise(order):
+            QWidget.setTabOrder(a, b)
+        session.document_changed.connect(self.refresh)
+        session.answer_changed.connect(self.show_answer)
+        self.refresh()
+
+    def variables(self) -> tuple[str, ...]:
+        """The variables of the pair that is held."""
+        pair = self._session.case.fixed.pair
+        return next((c.variables for c in self.choices if c.name == pair), tuple(pair.split(",")))
+
+    def refresh(self) -> None:
+        """Show pair and values of the session's case."""
+        fixed = self._session.case.fixed
+        at = self.menu.findData(fixed.pair)
+        if at < 0:
+            self.menu.addItem(f"{fixed.pair}, not available yet", fixed.pair)
+            at = self.menu.count() - 1
+        self.menu.setCurrentIndex(at)
+        wanted = self.variables()
+        flow = self._flow()
+        for symbol, row in self.rows.items():
+            row.field.default_unit = row.variable.flow_unit if flow else row.variable.batch_unit
+            row.field.show_quantity(fixed.values.get(symbol))  # type: ignore[call-overload]
+            row.set_visible(symbol in wanted)
+            row.as_fed.setVisible(
+                symbol in wanted and symbol in fixed.values and symbol not in "Tp"
+            )
+        self.heat.field.default_unit = "kW" if flow else "kJ"
+        self.heat.field.show_quantity(fixed.heat)
+        energy = any(v in wanted for v in pairs.ENERGY)
+        self.heat.set_visible(energy)
+        self.heat.as_fed.setVisible(energy and fixed.heat is not None)
+        self.show_answer()
+
+    def show_answer(self) -> None:
+        """Faults at their fields, and each value in another unit or as fed."""
+        session, wanted = self._session, self.variables()
+        answer = session.answer
+        settled = answer.value if answer.state == "settled" else None
+        for symbol, row in self.rows.items():
+            if symbol not in wanted:
+                continue
+            found = session.faults_at(f"fixed.{symbol}") + session.faults_at(
+                f"fixed.values.{symbol}"
+            )
+            row.show_fault(found[0].text if found else "")
+            row.echo.setText("" if found else self._echo(symbol, settled))
+        found = session.faults_at("fixed.heat")
+        self.heat.show_fault(found[0].text if found else "")
+        own = [f for f in session.answer.faults if f.field in ("fixed", "fixed.pair")]
+        self.sentence.say("\n".join(f.text for f in own))
+        self.heat.echo.setText(
+            "" if session.case.fixed.heat is not None or settled is None else "adiabatic"
+        )
+
+    def _echo(self, symbol: str, answer) -> str:  # type: ignore[no-untyped-def]
+        typed = self._session.case.fixed.values.get(symbol)  # type: ignore[call-overload]
+        kind = pairs.VARIABLES[symbol].kind
+        if typed is None:
+            if answer is None:
+                return ""
+            value = getattr(answer.fed, symbol)
+            return "" if value is None else _fed_text(symbol, value, answer.basis == "flow")
+        if symbol == "T":
+            return _other(typed, kind, ("K", "degC"))
+        if symbol == "p":
+            return _other(typed, kind, ("bar", "barg"))
+        return ""
+
+    def _flow(self) -> bool:
+        units = [a.unit for s in self._session.case.streams for a in s.amounts]
+        units += [s.total.unit for s in self._session.case.streams if s.total]
+        return any("/" in unit for unit in units)
+
+    def _pick(self, at: int) -> None:
+        case = edits.set_fixed(self._session.case, pair=self.menu.itemData(at))
+        self._session.edit_case(case, f"hold {self.menu.itemData(at)}")
+
+    def _type(self, variable: pairs.Variable, quantity: Quantity | None) -> None:
+        case = edits.set_value(self._session.case, variable.symbol, quantity)
+        label = f"type {variable.words}" if quantity else f"{variable.words} as fed"
+        self._session.edit_case(case, label, f"fixed.{variable.symbol}")
+
+    def _type_heat(self, quantity: Quantity | None) -> None:
+        case = edits.set_fixed(self._session.case, heat=quantity)
+        self._session.edit_case(case, "type heat", "fixed.heat")
+
+
+def _other(quantity: Quantity, kind: str, units: tuple[str, str]) -> str:
+    """The quantity in the first of two units it was not typed in."""
+    try:
+        si = to_si(quantity, kind)
+        typed = canonical(quantity.unit, kind)
+    except UnitError:
+        return ""
+    unit = units[1] if typed == units[0] else units[0]
+    return quantity_text(from_si(si, unit, kind), unit)
+
+
+def _fed_text(symbol: str, value: float, flow: bool) -> str:
+    if symbol == "T":
+        return quantity_text(from_si(value, "degC", "temperature"), "degC")
+    if symbol == "p":
+        return quantity_text(from_si(value, "bar", "pressure"), "bar")
+    if symbol == "V":
+        return quantity_text(*readings.volume(value, flow))
+    scale = readings.entropy if symbol == "S" else readings.energy
+    return quantity_text(*scale(value, flow))

@@ -1,0 +1,117 @@
+"""The views "Phases" and "Energy": small tables read off the answer."""
+
+from __future__ import annotations
+
+from PySide6.QtWidgets import QHeaderView, QVBoxLayout, QWidget
+
+from gui import readings
+from gui.parts.card import Sentence
+from gui.parts.table_view import plain_table
+from gui.tables.delegates import CellDelegate, FigureDelegate
+from gui.tables.figures_model import Cell, FiguresModel
+from gui.theme import GRID, Theme
+from solver.project.units import from_si
+from solver.project.wording import formula_text, quantity_text, unit_text
+
+
+class FiguresTable(QWidget):
+    """A table of figures with a sentence beneath."""
+
+    def __init__(self, theme: Theme, name: str, first_width: int = 190) -> None:
+        super().__init__()
+        self.model = FiguresModel(self)
+        self.table = plain_table(self.model, name, self)
+        self._first = first_width
+        self._cells = CellDelegate(theme, self)
+        self._figures = FigureDelegate(theme, parent=self)
+        self.table.setItemDelegate(self._figures)
+        self.table.setItemDelegateForColumn(0, self._cells)
+        self.note = Sentence("muted")
+        layout = QVBoxLayout(self)
+        layout.setContentsMargins(0, 0, 0, 0)
+        layout.setSpacing(GRID // 2)
+        layout.addWidget(self.table, 1)
+        layout.addWidget(self.note)
+        self.model.modelReset.connect(self._widths)
+
+    def _widths(self) -> None:
+        header = self.table.horizontalHeader()
+        for column in range(self.model.columnCount()):
+            header.setSectionResizeMode(column, QHeaderView.ResizeMode.Fixed)
+            self.table.setColumnWidth(column, 118)
+        self.table.setColumnWidth(0, self._first)
+
+    def text_column(self, column: int) -> None:
+        """A column of words that takes the room that is left."""
+        self.table.setItemDelegateForColumn(column, self._cells)
+        self.table.horizontalHeader().setSectionResizeMode(column, QHeaderView.ResizeMode.Stretch)
+
+
+class PhasesView(FiguresTable):
+    """Each phase with its amount and mass."""
+
+    def __init__(self, theme: Theme) -> None:
+        super().__init__(theme, "phases at the end")
+
+    def show_answer(self, answer, units: readings.Units, stale: bool) -> None:  # type: ignore[no-untyped-def]
+        """Show the phases of an answer."""
+        names = {sp.key: sp.name for sp in answer.end.species}
+        rows: list[tuple[Cell, ...]] = []
+        for row in readings.phases(answer.end):
+            name = "gas"
+            if row.name != "gas":
+                name = f"{formula_text(row.name)}  {names[row.name]}"
+            rows.append(
+                (
+                    name,
+                    units.amount_of(row.amount),
+                    100 * row.share,
+                    units.mass_of(row.mass),
+                    100 * row.mass_share,
+                )
+            )
+        heads = ("phase", unit_text(units.amount), "mol %", unit_text(units.mass), "mass %")
+        self.model.show(heads, rows, stale)
+        count = len(answer.end.proof.absent)
+        absent = f"{count} condensed candidates did not form; Proof has their margins."
+        if count == 1:
+            absent = "1 condensed candidate did not form; Proof has its margin."
+        self.note.say(absent if count else "")
+
+
+class EnergyView(FiguresTable):
+    """The state as fed, at the end, and the difference."""
+
+    def __init__(self, theme: Theme) -> None:
+        super().__init__(theme, "energy balance")
+
+    def show_answer(self, answer, units: readings.Units, stale: bool) -> None:  # type: ignore[no-untyped-def]
+        """Show the balance of an answer."""
+        end, fed, flow = answer.end, answer.fed, answer.basis == "flow"
+        rows: list[tuple[Cell, ...]] = []
+
+        def add(words: str, a: float | None, b: float, unit: str, convert) -> None:  # type: ignore[no-untyped-def]
+            first = None if a is None else convert(a)
+            second = convert(b)
+            change = None if first is None else second - first
+            rows.append((f"{words}, {unit_text(unit)}", first, second, change))
+
+        add("temperature", fed.T, end.T, units.T, lambda x: from_si(x, units.T, "temperature"))
+        add("pressure", fed.p, end.p, units.p, lambda x: from_si(x, units.p, "pressure"))
+        for words, a, b, scale in (
+            ("volume", fed.V, end.V, readings.volume),
+            ("enthalpy H", fed.H, end.H, readings.energy),
+            ("internal energy U", fed.U, end.U, readings.energy),
+            ("entropy S", fed.S, end.S, readings.entropy),
+        ):
+            unit = scale(max(abs(a), abs(b)), flow)[1]
+            factor = scale(max(abs(a), abs(b), 1e-300), flow)[0] / max(abs(a), abs(b), 1e-300)
+            add(words, a, b, unit, lambda x, f=factor: x * f)
+        self.model.show(("", "as fed", "at the end", "change"), rows, stale)
+        Q, unit = readings.energy(answer.heat, flow)
+        pair = end.fixed.pair
+        law = "U at the end − U as fed" if pair.endswith("V") else "H at the end − H as fed"
+        self.note.say(
+            f"Heat added = {law} = {quantity_text(Q, unit)}. "
+            "Enthalpies of formation are included; the elements at 298.15 K are the datum."
+        )

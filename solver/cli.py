@@ -10,7 +10,7 @@ import contextlib
 import json
 import os
 import sys
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated
 
@@ -70,14 +70,16 @@ def settle(
         except SettleError as error:
             code = max(code, _tell(file, project, case, error), key=_rank)
             results.append((case, error))
-    if as_json:
-        from solver.project.answer_json import answers
+    with _reader_may_leave():
+        if as_json:
+            from solver.project.answer_json import answers
 
-        sys.stdout.write(json.dumps(answers(project, results), indent=2, ensure_ascii=False) + "\n")
-    else:
-        from solver.project.answer_table import print_answers
+            document = answers(project, results)
+            sys.stdout.write(json.dumps(document, indent=2, ensure_ascii=False) + "\n")
+        else:
+            from solver.project.answer_table import print_answers
 
-        print_answers(project, results)
+            print_answers(project, results)
     raise typer.Exit(code)
 
 
@@ -100,7 +102,8 @@ def species(
     from species_db import UnknownSpecies, load
 
     try:
-        print_species(load(), text)
+        with _reader_may_leave():
+            print_species(load(), text)
     except UnknownSpecies as error:
         from solver.project.candidates import unknown_species
 
@@ -120,6 +123,18 @@ def _tell(file: Path, project: Project, case: Case, error: SettleError) -> int:
 def _rank(code: int) -> int:
     """Bad input outweighs a case without end state."""
     return (OK, NO_END_STATE, BAD_INPUT).index(code)
+
+
+@contextlib.contextmanager
+def _reader_may_leave() -> Iterator[None]:
+    """Writing to a reader that stops early (head, less) is no fault."""
+    try:
+        yield
+        sys.stdout.flush()
+    except BrokenPipeError:
+        # What is left in the buffer must go somewhere when Python ends.
+        with contextlib.suppress(OSError):
+            os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
 
 
 def _complain(text: str) -> None:
@@ -148,14 +163,8 @@ def main(argv: Sequence[str] | None = None) -> int:
         code = typer.main.get_command(app).main(
             args=words or ["--help"], prog_name="thalweg", standalone_mode=False
         )
-        sys.stdout.flush()
     except (typer.Abort, KeyboardInterrupt):
         return 130
-    except BrokenPipeError:
-        # The reader (head, less) has left; nothing more to say, and nothing to flush at exit.
-        with contextlib.suppress(OSError):
-            os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
-        return OK
     except Exception as error:
         # A wrong word or option: which class says so depends on typer's version.
         if not hasattr(error, "format_message"):

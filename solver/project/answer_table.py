@@ -22,9 +22,15 @@ NEAR: Final = 1e-3
 """Activity from which a condensed species that did not form is printed."""
 
 
+class _Console(Console):
+    def on_broken_pipe(self) -> None:
+        """Leave it to the command whether a reader that stops early is a fault."""
+        raise
+
+
 def console() -> Console:
     """A console on standard output that never breaks or colours what is piped elsewhere."""
-    out = Console(file=sys.stdout, highlight=False, markup=False, soft_wrap=True)
+    out = _Console(file=sys.stdout, highlight=False, markup=False, soft_wrap=True)
     if not out.is_terminal:
         out.width = 160
     return out

@@ -38,7 +38,9 @@ _SUPERSEDED: Final = {
     # Stoichiometric FeO does not exist at these pressures. Its tabulated Gibbs energy gives
     # p(H2O)/p(H2) over iron at half of what Emmett and Shultz measured (J. Am. Chem. Soc. 52
     # (1930) 4268), Fe0.947O agrees with them.
+    # The liquid is tied to FeO(s) and would come out as stable 500 K below its melting point.
     "FeO(s)": "Fe0.947O(s)",
+    "FeO(l)": "Fe0.947O(s)",
 }
 _EXPLOSIVE_WORDS: Final = ("azide", "fulminate", "acetylide", "picrate")
 
@@ -53,8 +55,8 @@ def choose(
     wish
         Rule, elements, phases, additions and exclusions as typed.
     fed
-        The species of the streams; each is a candidate unless excluded, or unless the rule is
-        "listed".
+        The species of the streams; each is a candidate too, unless it is excluded, is not of the
+        elements and phases wished for, or the rule is "listed".
     field
         Path of `wish`, for the faults.
 
@@ -85,7 +87,7 @@ def choose(
     chosen: list[Species] = []
     if wish.rule != "listed":
         chosen += _by_rule(wish.rule, frozenset(elements), wish.phases, library)
-        chosen += fed
+        chosen += [sp for sp in fed if sp.phase in wish.phases and elements >= set(sp.elements)]
     # An element that is not fed cannot appear; its species would only lengthen the list.
     chosen += [
         sp for sp in added if sp is not None and not sp.charge and present >= set(sp.elements)

@@ -157,8 +157,8 @@ def _json(data: bytes, name: str) -> Any:
         return json.loads(text, object_pairs_hook=refuse_repeats, parse_constant=refuse_constant)
     except json.JSONDecodeError as error:
         place = f"line {error.lineno}, column {error.colno}"
-        at_end = error.pos >= len(text.rstrip())
-        fault = "the file breaks off here" if at_end else f"{error.msg.lower()}"
+        at_end = error.pos >= len(text.rstrip()) or error.msg.startswith("Unterminated")
+        fault = "the file breaks off" if at_end else f"{error.msg.lower()}"
         raise ProjectFileError(f"{name}, {place}: {fault}; the file is damaged.", place) from None
     except (RecursionError, ValueError):
         # Nested without end, or a whole number of thousands of digits.

@@ -215,7 +215,7 @@ def _moles(row: _Row, T: float, p: float) -> float:
     if what == "mass":
         return row.value / row.species.molar_mass
     if what == "normal_volume":
-        _need_gas(row.species, row.field, row.typed.unit)
+        _need_gas(row.species, f"{row.field}.unit", row.typed.unit)
         return row.value
     if row.species.phase == "gas":
         return row.value * p / (R * T)
@@ -235,7 +235,7 @@ def _need_gas(species: Species, field: str, unit: str) -> None:
         raise InputError(
             f"{units.unit_text(unit)} counts gases; {species.key} is a {species.phase}. "
             "Give it in kg or mol.",
-            f"{field}.unit",
+            field,
             unit,
             "an amount in kg or mol",
         )

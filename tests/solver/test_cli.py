@@ -1,0 +1,224 @@
+"""The headless commands as a user runs them."""
+
+import json
+import os
+import subprocess
+import sys
+from pathlib import Path
+
+import pytest
+
+from solver import cli
+from solver.project import file
+from solver.project.model import Amount, Case, FixedPair, Project, Quantity, Stream
+
+ROOT = Path(__file__).parents[2]
+SAMPLES = sorted((ROOT / "samples").glob("*.thalweg"))
+
+
+def q(value, unit):
+    return Quantity(value=value, unit=unit)
+
+
+def project(pair="T,p", heat=None, name="Case 1", amount=1.0, **values):
+    stream = Stream(
+        name="feed",
+        T=q(25, "degC"),
+        p=q(1, "bar"),
+        amounts=(Amount(species="N2", value=amount, unit="mol"),),
+    )
+    fixed = FixedPair(pair=pair, values=values, heat=heat)
+    return Case(name=name, streams=(stream,), fixed=fixed)
+
+
+@pytest.fixture
+def save(tmp_path):
+    def _save(*cases):
+        path = tmp_path / "plant.thalweg"
+        file.write(Project(title="Plant", cases=cases), path)
+        return str(path)
+
+    return _save
+
+
+def run(capsys, *words):
+    code = cli.main(list(words))
+    out, err = capsys.readouterr()
+    assert "Traceback" not in out + err
+    return code, out, err
+
+
+@pytest.mark.parametrize("path", SAMPLES, ids=lambda p: p.stem)
+def test_settle_prints_every_case(path, capsys):
+    code, out, err = run(capsys, "settle", str(path))
+    assert (code, err) == (0, "")
+    for case in file.read(path).cases:
+        assert case.name in out
+    for word in ("T  ", "p  ", "V  ", "heat", "mol % of phase", "phases", "proof", "limit and not"):
+        assert word in out
+    sealed = any(case.fixed.pair.endswith("V") for case in file.read(path).cases)
+    assert ("no design basis" in out) is sealed
+    assert out.rstrip().endswith("Local codes and a licensed engineer decide.")
+    assert "e-0" not in out
+    assert "e+0" not in out
+
+
+def test_json_has_the_keys_it_promises(capsys):
+    code, out, err = run(capsys, "settle", str(ROOT / "samples/reformer-outlet.thalweg"), "--json")
+    assert (code, err) == (0, "")
+    document = json.loads(out)
+    assert (document["format"], document["version"]) == ("thalweg-answer", 1)
+    case = document["cases"][0]
+    assert set(case) == {
+        "name", "pair", "basis", "T", "p", "V", "H", "U", "S", "G", "heat", "fed", "amounts",
+        "fractions", "phases", "proof", "outside_range", "messages", "cautions",
+    }  # fmt: skip
+    assert case["basis"] == "flow"
+    assert case["T"] == pytest.approx(1118.15)
+    assert case["p"] == pytest.approx(21.8e5 + 101325)
+    assert case["H"] - case["fed"]["H"] == pytest.approx(case["heat"])
+    assert sum(case["phases"].values()) == pytest.approx(sum(case["amounts"].values()))
+    assert set(case["proof"]) == {
+        "element_residual", "energy_residual", "gap", "absent", "model",
+    }  # fmt: skip
+    assert case["proof"]["absent"]["C(gr)"] < 1
+
+
+def test_a_wrong_field_is_named_on_one_line_each(save, capsys):
+    bad = project(name="Bad", amount=-3.0, T=q(0, "K"))
+    code, out, err = run(capsys, "settle", save(project(name="Good", T=q(900, "K")), bad))
+    assert code == 2
+    assert "Good" in out, "the other case is answered all the same"
+    lines = err.splitlines()
+    assert len(lines) == 2
+    assert lines[0].startswith("thalweg: plant.thalweg, Bad, streams[0].amounts[0].value: ")
+    assert "negative" in lines[0]
+    assert "fixed.T: " in lines[1]
+
+
+def test_no_end_state_is_code_3_and_bad_input_outweighs_it(save, capsys):
+    cold = project(pair="H,p", heat=q(-1, "MJ"), name="Cold")
+    code, _, err = run(capsys, "settle", save(cold))
+    assert code == 3
+    assert len(err.splitlines()) == 1
+    assert "fixed.heat" in err
+    code, _, err = run(capsys, "settle", save(project(amount=-1.0, name="Bad"), cold))
+    assert code == 2
+    assert len(err.splitlines()) == 2
+
+
+def test_errors_are_part_of_the_json(save, capsys):
+    path = save(project(amount="abc", name="Bad"), project(pair="H,p", heat=q(-1, "MJ")))
+    code, out, _ = run(capsys, "settle", path, "--json")
+    assert code == 2
+    first, second = json.loads(out)["cases"]
+    assert first["error"]["kind"] == "input"
+    assert first["error"]["faults"][0]["field"] == "streams[0].amounts[0].value"
+    assert first["error"]["faults"][0]["value"] == "abc"
+    assert second["error"]["kind"] == "no end state"
+
+
+@pytest.mark.parametrize(
+    ("name", "data", "text"),
+    [
+        ("empty.thalweg", b"", "empty"),
+        ("binary.thalweg", bytes(range(256)) * 20, "no Thalweg project"),
+        ("image.png", b"\x89PNG\r\n\x1a\n\x00\x00", "no Thalweg project"),
+        ("cut.thalweg", (ROOT / "samples/lime-kiln.thalweg").read_bytes()[:700], "breaks off"),
+        ("newer.thalweg", b'{"format": "thalweg-project", "version": 99}', "newer"),
+        ("other.thalweg", b'{"name": "something else"}', "no Thalweg project"),
+    ],
+)
+def test_files_that_are_no_project(tmp_path, capsys, name, data, text):
+    path = tmp_path / name
+    path.write_bytes(data)
+    code, out, err = run(capsys, "settle", str(path))
+    assert code == 2
+    assert out == ""
+    assert len(err.splitlines()) == 1
+    assert text in err
+    assert name in err
+    assert path.read_bytes() == data
+
+
+@pytest.mark.parametrize(
+    "words",
+    [
+        ["settle"],
+        ["settle", "/nowhere/at/all.thalweg"],
+        ["settle", "/"],
+        ["settle", "a", "b"],
+        ["settle", "--nonsense"],
+        ["nonsense"],
+        ["species"],
+        ["species", "zzzzzz"],
+        ["species", ""],
+    ],
+)
+def test_wrong_words_are_code_2_and_one_line(words, capsys):
+    code, out, err = run(capsys, *words)
+    assert code == 2
+    assert out == ""
+    assert len(err.splitlines()) == 1
+    assert err.startswith("thalweg: ")
+
+
+@pytest.mark.parametrize("words", [["--help"], ["settle", "--help"], ["species", "-h"], []])
+def test_help_is_on_standard_output(words, capsys):
+    code, out, err = run(capsys, *words)
+    assert (code, err) == (0, "")
+    assert "Usage: thalweg" in out
+
+
+def test_help_has_examples_that_work(capsys):
+    _, out, _ = run(capsys, "settle", "--help")
+    named = {word for word in out.split() if word.startswith("samples/")}
+    assert named
+    for word in named:
+        assert (ROOT / word).is_file()
+
+
+def test_species_says_what_is_known_and_whence(capsys):
+    code, out, _ = run(capsys, "species", "carbon dioxide")
+    assert code == 0
+    assert out.startswith("CO2 ")
+    for word in ("CO₂", "gas", "6000 K", "−393.47", "uncertainty", "source", "second source"):
+        assert word in out
+
+
+def test_species_lists_what_a_text_may_mean(capsys):
+    code, out, _ = run(capsys, "species", "C5H12O")
+    assert code == 0
+    assert out.count("C5H12O") > 2
+
+
+def test_an_unknown_species_names_near_ones(capsys):
+    code, out, err = run(capsys, "species", "methanl")
+    assert (code, out) == (2, "")
+    assert "CH3OH" in err
+
+
+def test_runs_as_a_module_without_qt_and_into_a_closed_pipe():
+    command = f"{sys.executable} -m solver.cli settle samples/sealed-deflagration.thalweg | head -1"
+    done = subprocess.run(
+        ["bash", "-o", "pipefail", "-c", command], capture_output=True, text=True, cwd=ROOT,
+        check=False, env={**os.environ, "PYTHONWARNINGS": "error"},
+    )  # fmt: skip
+    assert done.returncode == 0, done.stderr
+    assert done.stderr == ""
+    code = (
+        "import sys; import solver.cli; solver.cli.main(['species', 'CO2']);"
+        "sys.exit(any(m.startswith(('PySide6', 'pyqtgraph')) for m in sys.modules))"
+    )
+    assert (
+        subprocess.run([sys.executable, "-c", code], cwd=ROOT, capture_output=True).returncode == 0
+    )
+
+
+def test_a_terminal_without_greek_gets_question_marks_and_no_failure():
+    done = subprocess.run(
+        [sys.executable, "-m", "solver.cli", "species", "CO2"], capture_output=True, cwd=ROOT,
+        env={**os.environ, "PYTHONIOENCODING": "ascii"}, check=False,
+    )  # fmt: skip
+    assert done.returncode == 0
+    assert done.stdout.startswith(b"CO2")

@@ -25,7 +25,7 @@ test: check tests ## all checks and all tests
 check: $(VENV)/for-check ## format, lint, types and the import contract
 	@echo "== format and lint"
 	@$(BIN)/ruff format --check --quiet . || { $(BIN)/ruff format --check .; exit 1; }
-	@$(BIN)/ruff check --quiet .
+	@$(BIN)/ruff check --quiet --output-format concise .
 	@echo "== types"
 	@$(BIN)/mypy
 	@echo "== imports"

@@ -25,6 +25,7 @@ _MAX_STEP = 300.0  # largest change of a component's ln activity in one step
 _CLOSED = 2e-14
 _EXP_LIMIT = 690.0
 _FAINT = 1e-250
+_WILD = 1e4
 _PATIENCE = 6  # iterations that a gas may be larger than its feed
 
 
@@ -103,7 +104,6 @@ def solve_balances(
     step = np.zeros((len(b), unknowns))
     cut1, cut2 = 2 * m, 2 * m + m * unknowns
     cut3, cut4 = cut2 + m * unknowns, cut2 + m * unknowns + unknowns
-    ridge = 1e-14 * np.eye(unknowns)
     iteration = 0
     if unknowns == 0:
         return GasSolution(n, log_a, nu, ~closed, 0)
@@ -122,7 +122,8 @@ def solve_balances(
             J[:, m] = sums[:, cut3:cut4] / total
             J[:, m, m] -= 1.0
             too_large = np.where(nu > nu_limit, too_large + 1, 0)
-        beyond = (np.maximum(P, M) < _FAINT) | (log_n.max(axis=1) > _EXP_LIMIT)[:, None]
+        beyond = (np.maximum(P, M) < _FAINT) | (log_n.max(axis=1) > 300.0)[:, None]
+        beyond |= ~np.isfinite(F[:, :m])
         if beyond.any():
             _rescale(system, log_n, b, nu, beyond, J, F)
         worst = np.abs(F).max(axis=1)
@@ -135,10 +136,7 @@ def solve_balances(
         back = active & (merit > merit_last) & (worst > 1e-8)
         J[~np.isfinite(J)] = 0.0
         F[~np.isfinite(F)] = 0.0
-        if back.all():
-            newton = step
-        else:
-            newton = -np.linalg.solve(J + ridge, F[:, :, None])[:, :, 0]
+        newton = step if back.all() else _newton_steps(J, F)
         if back.any():
             # worse than before: return three quarters of the way, and try the rest again
             move = np.where(back[:, None], -0.75 * step, newton)
@@ -162,6 +160,15 @@ def solve_balances(
         log_n += change
         n = np.exp(np.clip(log_n, -_EXP_LIMIT, _EXP_LIMIT))
     return GasSolution(n, log_a, nu, closed & ~failed, iteration)
+
+
+def _newton_steps(J: Array, F: Array) -> Array:
+    """Newton steps, the shortest where the slopes do not determine one."""
+    ridge = 1e-14 * np.eye(J.shape[1])
+    step = np.asarray(-np.linalg.solve(J + ridge, F[:, :, None])[:, :, 0])
+    for case in np.flatnonzero(~(np.abs(step).max(axis=1) < _WILD)):
+        step[case] = -np.linalg.lstsq(J[case], F[case], rcond=1e-7)[0]
+    return step
 
 
 def _rescale(

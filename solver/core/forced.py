@@ -66,12 +66,13 @@ def combined(reactions: Array, b: Array, live: NDArray[np.bool_], rows: list[int
 
     sinks: list[Sink] = []
     while True:
+        sinks += one_sided(reactions, b, live, rows)
         zero = [k for k in rows if b[k] == 0.0]
         if len(zero) < 2 or not live.any():
             return sinks
         part = reactions[np.ix_(live, np.array(zero, dtype=np.intp))]
         found = linprog(-part.sum(axis=0), A_ub=-part, b_ub=np.zeros(len(part)), bounds=(-1.0, 1.0))
-        if found.status != 0 or -found.fun < 1e-7:
+        if found.x is None or found.fun is None or found.fun > -1e-7:
             return sinks
         y = np.where(np.abs(found.x) < 1e-9, 0.0, found.x)
         direction = np.zeros(reactions.shape[1])

@@ -8,8 +8,9 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from solver.core.balance import GasSystem, solve_balances
+from solver.core.balance import GasSolution, GasSystem, solve_balances
 from solver.core.basis import Basis, choose_members, component_amounts
+from solver.core.descent import descend
 from solver.core.forced import Sink, combined, infeasible, one_sided
 from solver.core.mixture import P0, Held, Mixture, R
 
@@ -216,14 +217,22 @@ def _solve_gas(
     grows = problem.holds_pressure and not homogeneous
     nu_start = nu if grows else (0.0 if homogeneous else problem.nu_fixed)
     limit = float(np.log(4.0 * problem.atoms)) + 2.0 if grows else np.inf
-    solution = solve_balances(
-        GasSystem.of(part, grows),
-        kappa[live][None, :],
-        b_rows[None, :],
-        start[rows][None, :],
-        np.array([nu_start]),
-        np.array([limit]),
-    )
+    system = GasSystem.of(part, grows)
+
+    def solve(log_a: Array, nu: float) -> GasSolution:
+        return solve_balances(
+            system,
+            kappa[live][None, :],
+            b_rows[None, :],
+            log_a[None, :],
+            np.array([nu]),
+            np.array([limit]),
+        )
+
+    solution = solve(start[rows], nu_start)
+    if not solution.closed[0]:
+        near = descend(part, kappa[live], b_rows, start[rows], nu_start, grows, limit)
+        solution = solve(*near)
     n, closed = solution.n[0], bool(solution.closed[0])
     log_a[rows] = solution.log_a[0]
     y = n / n.sum()
@@ -245,7 +254,8 @@ def _sink(
     members = list(basis.members)
     others[[m for k, m in enumerate(members) if not any(s.direction[k] for s in sinks)]] = False
     dead = np.flatnonzero(others)
-    for sink in sinks:
+    # the last one found may raise what an earlier one forces out: the earlier come after it
+    for sink in reversed(sinks):
         use = basis.reactions[dead] @ sink.direction
         own, use = dead[use > 1e-9], use[use > 1e-9]
         if own.size:

@@ -111,21 +111,23 @@ def optimality_gap(
     is_gas = mixture.is_gas
     force = mixture.A @ potentials - g
     atoms = mixture.A @ mixture.atoms
-    # move the potentials down until every condition holds: the bound is then rigorous
-    shift, vessel = 0.0, 0.0
+    log_p = float(np.log(p / P0)) if p > 0.0 else -np.inf
+    log_sum = -np.inf
     if is_gas.any():
         top = float(force[is_gas].max())
         log_sum = top + float(np.log(np.exp(force[is_gas] - top).sum()))
-        if p > 0.0:
-            log_p = float(np.log(p / P0))
-        else:
-            assert V is not None
-            log_p = max(log_sum, -690.0)
-            vessel = P0 * float(np.exp(log_p)) * V / (R * T)
-        force[is_gas] -= log_p
-        shift = max(shift, (log_sum - log_p) / min(float(atoms[is_gas].min()), 1.0))
+    # move the potentials down until every condition holds: the bound is then rigorous
+    shift = 0.0
     if not is_gas.all():
         shift = max(shift, float((force[~is_gas] / atoms[~is_gas]).max()))
+    vessel = 0.0
+    if V is not None:
+        # pi may be as large as the gas asks for, at a cost of (pi - p) V
+        vessel = P0 * float(np.exp(log_sum)) * V / (R * T) - float(n[is_gas].sum())
+    elif is_gas.any():
+        shift = max(shift, (log_sum - log_p) / min(float(atoms[is_gas].min()), 1.0))
+    if log_p > -np.inf:
+        force[is_gas] -= log_p
     gas = n[is_gas]
     N = float(gas.sum())
     some = gas > 0.0

@@ -247,3 +247,26 @@ def test_make_explains_itself():
     named = set(re.findall(r"(?:`|^)make ([a-z]+)\b", text, re.MULTILINE))
     assert {"run", "test"} <= named
     assert named <= set(re.findall(r"^  make (\w+)", listed, re.MULTILINE))
+
+
+REFERENCES = """
+import sys
+from PySide6.QtCore import QCoreApplication, QObject, Signal
+class Source(QObject):
+    signal = Signal()
+app, source = QCoreApplication([]), Source()
+source.signal.connect(lambda: None)
+before = sys.getrefcount(None), sys.getrefcount(True)
+for _ in range(200):
+    app.processEvents()
+    source.signal.emit()
+after = sys.getrefcount(None), sys.getrefcount(True)
+print(max(abs(a - b) for a, b in zip(after, before, strict=True)))
+"""
+
+
+def test_qt_binding_keeps_count_of_references():
+    """A binding that loses references to None aborts the window after some minutes of use."""
+    done = python(REFERENCES)
+    assert done.returncode == 0, done.stderr
+    assert int(done.stdout) < 20

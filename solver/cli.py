@@ -138,7 +138,9 @@ def _reader_may_leave() -> Iterator[None]:
 
 
 def _complain(text: str) -> None:
-    sys.stderr.write(" ".join(f"thalweg: {text}".split()) + "\n")
+    from solver.project.wording import one_line
+
+    sys.stderr.write(one_line(f"thalweg: {text}") + "\n")
 
 
 def main(argv: Sequence[str] | None = None) -> int:

@@ -6,6 +6,7 @@ Top level: ``format`` ("thalweg-answer"), ``version``, ``title``, ``cases``. Eac
 - ``basis``: "batch", or "flow": then every extensive value is per second (J/s, mol/s, m3/s);
 - ``T`` K, ``p`` Pa, ``V`` m3, ``H`` ``U`` ``G`` J, ``S`` J/K;
 - ``heat`` J: taken up from outside, H_end - H_fed at fixed p and U_end - U_fed at fixed V;
+  ``heat_is`` says "heat", "work" (S held as fed) or "heat and work" (S held at another value);
 - ``fed``: ``T`` ``p`` (null where the streams differ), ``V H U S``, ``mass`` kg, ``amount`` mol,
   ``amounts`` mol by species;
 - ``amounts``: mol of every candidate by key; ``fractions``: mole fraction in its phase;
@@ -92,6 +93,7 @@ def _answer(answer: CaseAnswer) -> dict[str, Any]:
         "S": end.S,
         "G": end.G,
         "heat": answer.heat,
+        "heat_is": answer.heat_is,
         "fed": {
             "T": fed.T,
             "p": fed.p,

@@ -15,6 +15,7 @@ from solver.project import units
 from solver.project.case import CaseAnswer
 from solver.project.cautions import cautions
 from solver.project.model import Case, Project
+from solver.project.wording import one_line
 
 SHOWN: Final = 1e-6
 """Share of its phase from which a gas is printed; the rest is counted in one line."""
@@ -42,7 +43,7 @@ def print_answers(
     """Print every case that settled; the faults of the others are on standard error."""
     out = console()
     if any(isinstance(found, CaseAnswer) for _, found in results) and project.title:
-        out.print(project.title, style="bold")
+        out.print(one_line(project.title), style="bold")
     pairs = []
     for case, found in results:
         if isinstance(found, CaseAnswer):
@@ -58,13 +59,13 @@ def _print(out: Console, case: Case, answer: CaseAnswer) -> None:
     flow = answer.basis == "flow"
     amount_unit, amount_factor = ("kmol/h", 3.6) if flow else ("mol", 1.0)
     out.print()
-    out.print(f"{case.name}  ({case.fixed.pair} held)", style="bold")
+    out.print(f"{one_line(case.name)}  ({case.fixed.pair} held)", style="bold")
     number = units.number_text
     celsius = number(units.from_si(end.T, "degC", "temperature"))
     out.print(f"  T     {number(end.T)} K = {celsius} °C")
     out.print(f"  p     {number(end.p / 1e5)} bar")
     out.print(f"  V     {number(end.V * (3600 if flow else 1))} {'m³/h' if flow else 'm³'}")
-    out.print(f"  heat  {_heat(answer)}")
+    out.print(f"  {answer.heat_is:<4}  {_heat(answer)}")
     out.print()
     out.print(_composition(answer, amount_unit, amount_factor))
     phases = end.phase_amounts
@@ -80,17 +81,19 @@ def _print(out: Console, case: Case, answer: CaseAnswer) -> None:
     )
     out.print(f"  model   {proof.model}")
     for message in answer.messages:
-        out.print(f"  note    {message}")
+        out.print(f"  note    {one_line(message)}")
     out.print()
 
 
 def _heat(answer: CaseAnswer) -> str:
-    """The heat in kJ or kW; rounding of an adiabatic case is no heat."""
+    """The heat or work in kJ or kW; rounding of an adiabatic case is no heat."""
     scale = abs(answer.fed.H) + abs(answer.end.H)
     if abs(answer.heat) <= 1e-9 * scale:
         return "0 (none crosses the wall)"
     unit = "kW" if answer.basis == "flow" else "kJ"
     way = "taken up" if answer.heat > 0 else "given off"
+    if answer.heat_is == "work":
+        way = "put in, reversible" if answer.heat > 0 else "gained, reversible"
     return f"{units.quantity_text(answer.heat / 1e3, unit)} ({way})"
 
 

@@ -128,29 +128,31 @@ def _list(
 def _unheld(
     wish: Candidates, fed: Sequence[Species], species: Sequence[Species], field: str
 ) -> list[InputError]:
-    """A fault for each fed element that no candidate holds."""
+    """A fault when fed elements occur in no candidate; one for all that have the same way out."""
     held = {e for sp in species for e in sp.elements}
-    faults = []
-    for element in sorted({e for sp in fed for e in sp.elements} - held):
-        holders = ", ".join(dict.fromkeys(sp.key for sp in fed if element in sp.elements))
-        if wish.rule == "listed":
-            way_out = f"add a species with {element}"
-            where = f"{field}.added"
-        elif wish.elements is not None and element not in wish.elements:
-            way_out = f"add {element} to the elements"
-            where = f"{field}.elements"
-        else:
-            way_out = f"take back an exclusion, allow more phases, or add a species with {element}"
-            where = f"{field}.excluded" if wish.excluded else f"{field}.phases"
-        faults.append(
-            InputError(
-                f"No candidate holds {element}, which the feed holds (in {holders}); {way_out}.",
-                where,
-                element,
-                f"a candidate with {element}",
-            )
+    missing = sorted({e for sp in fed for e in sp.elements} - held)
+    if not missing:
+        return []
+    symbols = ", ".join(missing)
+    outside = wish.elements is not None and not set(missing) <= set(wish.elements)
+    if wish.rule == "listed":
+        where, way_out = "added", f"add a species with {missing[0]}"
+    elif outside:
+        where, way_out = "elements", f"add {symbols} to the elements"
+    else:
+        way_out = f"take back an exclusion, allow more phases, or add a species with {missing[0]}"
+        where = "excluded" if wish.excluded else "phases"
+    holders = ", ".join(
+        dict.fromkeys(sp.key for sp in fed if any(e in sp.elements for e in missing))
+    )
+    return [
+        InputError(
+            f"No candidate holds {symbols}, which the feed holds (in {holders}); {way_out}.",
+            f"{field}.{where}",
+            symbols,
+            f"candidates with {symbols}",
         )
-    return faults
+    ]
 
 
 def _resolve(

@@ -11,13 +11,13 @@ import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from types import MappingProxyType
-from typing import TYPE_CHECKING, cast
+from typing import TYPE_CHECKING, Literal, cast
 
 import species_db
 from solver.endstate import EndState
 from solver.errors import InputError, NoEndState
 from solver.fed import as_fed
-from solver.fixed import PAIRS, Fixed
+from solver.fixed import PAIRS, T_HIGHEST, T_LOWEST, Fixed
 from solver.project import units
 from solver.project.candidates import choose
 from solver.project.model import Case, Quantity, Variable
@@ -87,8 +87,8 @@ class CaseAnswer:
     """An end state with what the engineer wants beside it.
 
     `heat` is H_end - H_fed at fixed p and U_end - U_fed at fixed V: what crosses the wall, in J
-    on a batch basis and in W on a flow basis, positive when taken up. Where S is held and no heat
-    flows, it is the work put in.
+    on a batch basis and in W on a flow basis, positive when taken up. `heat_is` says whether that
+    is heat: with S held as fed no heat flows, and the figure is the reversible work put in.
     """
 
     end: EndState
@@ -97,6 +97,15 @@ class CaseAnswer:
     basis: Basis
     prepared: Prepared
     messages: tuple[str, ...] = ()
+
+    @property
+    def heat_is(self) -> Literal["heat", "work", "heat and work"]:
+        """What `heat` is: heat, or with S held the work, or both where S is not that of the feed."""
+        fixed = self.end.fixed
+        if PAIRS[fixed.pair].variables[0] != "S":
+            return "heat"
+        as_fed = math.isclose(fixed.S, self.fed.S, rel_tol=1e-9)
+        return "work" if as_fed else "heat and work"
 
 
 def prepare(case: Case, library: Library | None = None) -> Prepared:
@@ -128,6 +137,18 @@ def prepare(case: Case, library: Library | None = None) -> Prepared:
                 "streams[0].amounts",
                 0.0,
                 "an amount above zero",
+            )
+        )
+    charge = sum(sp.charge * n for sp, n in feed.items())
+    if abs(charge) > 1e-9 * sum(feed.values()):
+        ions = ", ".join(sp.key for sp in feed if sp.charge)
+        faults.append(
+            InputError(
+                f"The feed carries a net electric charge ({ions}); feed ions only together with "
+                "those of the other sign.",
+                "streams",
+                charge,
+                "no net charge",
             )
         )
     # Candidates are looked at even beside other faults: their own texts may be wrong too.
@@ -181,16 +202,35 @@ def settle_prepared(prepared: Prepared) -> CaseAnswer:
     except NoEndState as error:
         if prepared.heat == 0:
             raise
-        unit = "kW" if prepared.basis == "flow" else "kJ"
-        share = units.quantity_text(prepared.heat / 1e3, unit)
-        raise NoEndState(
-            f"{error} The heat added is {share}.", "fixed.heat", prepared.heat, error.allowed
-        ) from None
+        raise _too_much_heat(prepared, error) from None
+    except InputError as error:
+        # The solver speaks of its own arguments; here they are parts of a case.
+        place = {"species": "candidates", "feed": "streams"}.get(error.field.partition("[")[0])
+        raise InputError(str(error), place or error.field, error.value, error.allowed) from None
     fed = prepared.fed
     at_volume = PAIRS[fixed.pair].holds_volume
     heat = end.U - fed.U if at_volume else end.H - fed.H
     messages = prepared.messages + tuple(_end_out_of_range(end))
     return CaseAnswer(end, fed, heat, prepared.basis, prepared, messages)
+
+
+def _too_much_heat(prepared: Prepared, error: NoEndState) -> NoEndState:
+    """No temperature has the energy left by the heat: say so in terms of the heat."""
+    unit = "kW" if prepared.basis == "flow" else "kJ"
+    size = units.quantity_text(abs(prepared.heat) / 1e3, unit)
+    words = {"H": "enthalpy", "U": "internal energy"}
+    energy = words[PAIRS[prepared.fixed.pair].variables[0]]
+    if prepared.heat < 0:
+        text = (
+            f"Taking away {size} leaves less {energy} than any end state above {T_LOWEST:g} K "
+            "has; take away less heat."
+        )
+    else:
+        text = (
+            f"Adding {size} gives more {energy} than any end state below {T_HIGHEST:g} K has; "
+            "add less heat."
+        )
+    return NoEndState(text, "fixed.heat", prepared.heat, error.allowed)
 
 
 def _streams(case: Case, library: Library, faults: list[InputError]) -> list[ReadStream]:

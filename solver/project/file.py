@@ -224,7 +224,9 @@ _FAULTS: Final = {
 
 def _invalid(error: ValidationError, name: str) -> ProjectFileError:
     """One line for the first fault of a document, with its path."""
-    faults = error.errors(include_url=False, include_context=True)
+    every = error.errors(include_url=False, include_context=True)
+    # A list whose only member is wrong is reported as too short besides.
+    faults = [f for f in every if f["type"] != "too_short"] or every
     first = faults[0]
     loc = first["loc"]
     fault = _FAULTS.get(first["type"], "is not allowed")
@@ -237,7 +239,8 @@ def _invalid(error: ValidationError, name: str) -> ProjectFileError:
     if first["type"] == "literal_error":
         fault = f"must be {allowed}, not {first['input']!r}"
     places = {f["loc"][:-1] if f["loc"][-1] in ("float", "str") else f["loc"] for f in faults}
-    more = f" (and {len(places) - 1} more faults)" if len(places) > 1 else ""
+    others = len(places) - 1
+    more = f" (and {others} more fault{'s' if others > 1 else ''})" if others else ""
     path = path_text(loc) or "the project"
     return ProjectFileError(f"{name}, {path}: {fault}{more}.", path, first["input"], allowed)
 

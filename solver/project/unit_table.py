@@ -183,8 +183,8 @@ _ENTROPY = (
 )
 
 TABLE: Final[tuple[Unit, ...]] = (
-    Unit("K", "temperature", 1.0, 0.0, ("kelvin",)),
-    Unit("degC", "temperature", 1.0, 273.15, ("°C", "C", "℃", "deg C", "celsius")),
+    Unit("K", "temperature", 1.0, 0.0, ("kelvin", "Kelvin", "degK", "°K")),
+    Unit("degC", "temperature", 1.0, 273.15, ("°C", "C", "℃", "deg C", "celsius", "Celsius")),
     Unit("degF", "temperature", 5 / 9, 459.67 * 5 / 9, ("°F", "F", "deg F", "fahrenheit")),
     Unit("degR", "temperature", 5 / 9, 0.0, ("°R", "rankine")),
     Unit("K", "temperature_difference", 1.0, 0.0, ("kelvin",)),

@@ -77,7 +77,7 @@ def parse_quantity(
             f"{text.strip()!r} is not a number with a unit; write for example "
             f"{_example(kind, default_unit)}."
             if text.strip()
-            else f"Nothing is typed; write for example {_example(kind, default_unit)}.",
+            else f"Nothing is written; write for example {_example(kind, default_unit)}.",
             field=field,
             value=text,
             allowed=f"a number and a unit of {_words(kind)}",
@@ -331,12 +331,13 @@ def _words(kind: str) -> str:
 
 
 def _example(kind: str, default_unit: str | None) -> str:
-    return f"25 {default_unit or default_unit_of(kind)}"
+    number = 25 if kind.startswith("temperature") else 1.5
+    return f"{number} {unit_text(default_unit or default_unit_of(kind))}"
 
 
 def _nothing(kind: str, field: str) -> float:
     raise UnitError(
-        f"Nothing is typed; write for example {_example(kind, None)}.",
+        f"Nothing is written; write for example {_example(kind, None)}.",
         field=field,
         value="",
         allowed=f"a number and a unit of {_words(kind)}",

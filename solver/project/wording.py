@@ -66,6 +66,11 @@ def quantity_text(value: float, unit: str, digits: int = SIGNIFICANT) -> str:
     return f"{number_text(value, digits)} {unit_text(unit)}".rstrip()
 
 
+def one_line(text: str) -> str:
+    """A text as one line a terminal can be given: no line breaks, no control characters."""
+    return " ".join("".join(c if c.isprintable() else " " for c in text).split())
+
+
 _FORMULA = re.compile(r"(?<=[A-Za-z)\]])(\d+(?:\.\d+)?)")
 
 

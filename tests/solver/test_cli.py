@@ -70,7 +70,7 @@ def test_json_has_the_keys_it_promises(capsys):
     assert (document["format"], document["version"]) == ("thalweg-answer", 1)
     case = document["cases"][0]
     assert set(case) == {
-        "name", "pair", "basis", "T", "p", "V", "H", "U", "S", "G", "heat", "fed", "amounts",
+        "name", "pair", "basis", "T", "p", "V", "H", "U", "S", "G", "heat", "heat_is", "fed", "amounts",
         "fractions", "phases", "proof", "outside_range", "messages", "cautions",
     }  # fmt: skip
     assert case["basis"] == "flow"
@@ -139,6 +139,16 @@ def test_files_that_are_no_project(tmp_path, capsys, name, data, text):
     assert text in err
     assert name in err
     assert path.read_bytes() == data
+
+
+def test_names_cannot_reach_the_terminal_as_commands(save, capsys):
+    path = save(project(name="a\nb\x1b[31m[bold]c", T=q(900, "K")))
+    _, out, _ = run(capsys, "settle", path)
+    assert "\x1b" not in out
+    assert "a b [31m[bold]c" in out
+    _, _, err = run(capsys, "settle", save(project(name="a\nb\x1b[31m", amount=-1.0)))
+    assert "\x1b" not in err
+    assert len(err.splitlines()) == 1
 
 
 @pytest.mark.parametrize(

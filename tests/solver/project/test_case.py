@@ -126,6 +126,17 @@ def test_the_heat_of_an_adiabatic_case_is_nothing_and_a_loss_is_what_was_lost():
     assert sealed.end.T > lossy.end.T, "no work is done against the surroundings"
 
 
+def test_with_entropy_held_the_figure_is_work():
+    """Nitrogen expanded reversibly: T2 = T1 (p2/p1)^(R/cp), work = H2 - H1."""
+    hot = case(stream(("N2", 1, "mol"), T="600 K", p="8 bar"), pair="S,p", p="1 bar")
+    answer = settle_case(hot)
+    assert answer.heat_is == "work"
+    mean_cp = (LIB["N2"].h(600.0) - LIB["N2"].h(answer.end.T)) / (600.0 - answer.end.T)
+    assert answer.end.T == pytest.approx(600.0 * (1 / 8) ** (R / mean_cp), rel=2e-3)
+    assert answer.heat == pytest.approx(LIB["N2"].h(answer.end.T) - LIB["N2"].h(600.0), rel=1e-6)
+    assert settle_case(case(stream(("N2", 1, "mol")), T="900 K")).heat_is == "heat"
+
+
 def test_heat_of_reaction_comes_out_as_heat():
     """Burning 1 mol H2 at 298.15 K to steam gives off 241.8 kJ (ATcT 1.112: 241.83)."""
     gases = Candidates(rule="listed", added=("H2", "O2", "H2O"))
@@ -253,6 +264,7 @@ GOOD = ("CH4", 1.0, "mol")
             "candidates.elements",
             "No candidate holds C",
         ),
+        (case(stream(("H+", 1, "mol"))), "streams", "net electric charge"),
         (case(stream(GOOD), candidates=Candidates(added=("xyz",))), "candidates.added[0]", "xyz"),
     ],
 )
@@ -292,8 +304,19 @@ def test_faults_survive_the_way_between_processes():
 
 def test_an_energy_that_no_temperature_can_match_is_said_with_the_heat():
     feed = stream(("N2", 1, "mol"))
-    with pytest.raises(NoEndState, match="−1000 kJ") as caught:
+    with pytest.raises(NoEndState, match="Taking away 1000 kJ") as caught:
         settle_case(case(feed, pair="H,p", heat="-1000 kJ"))
     assert caught.value.field == "fixed.heat"
-    with pytest.raises(NoEndState):
-        settle_case(case(feed, pair="H,p", H="1e9 J"))
+    with pytest.raises(NoEndState, match="add less heat") as caught:
+        settle_case(case(feed, pair="U,V", heat="1e9 kJ"))
+    assert caught.value.field == "fixed.heat"
+    with pytest.raises(NoEndState) as caught:
+        settle_case(case(feed, pair="H,p", H="1e9 kJ"))
+    assert caught.value.field == "fixed.H"
+
+
+def test_candidates_that_cannot_take_up_the_feed_are_the_fault():
+    listed = Candidates(rule="listed", added=("CO2", "H2O"))
+    with pytest.raises(InputError) as caught:
+        settle_case(case(stream(("CH4", 1, "mol"), ("O2", 1, "mol")), candidates=listed))
+    assert caught.value.field == "candidates"

@@ -145,7 +145,11 @@ def test_a_damaged_file_is_refused_with_the_place(data, place, text):
         (["cases"], [], "cases: must not be empty"),
         (["cases"], {}, "cases: must be a list"),
         (["cases", 0, "fixed"], {"pair": "T,q"}, "cases[0].fixed.pair: must be 'T,p'"),
-        (["cases", 0, "fixed"], {"values": {"Q": {}}}, "cases[0].fixed.values.Q"),
+        (
+            ["cases", 0, "fixed"],
+            {"values": {"Q": {"value": 1, "unit": "K"}}},
+            "cases[0].fixed.values.Q",
+        ),
         (["cases", 0, "streams", 0, "T"], {"value": 25}, "cases[0].streams[0].T.unit: is missing"),
         (
             ["cases", 0, "streams", 0, "p", "value"],
@@ -168,7 +172,9 @@ def test_a_field_that_does_not_fit_is_named_by_its_path(path, value, text):
     for part in path[:-1]:
         inner = inner[part]
     inner[path[-1]] = value
-    assert text in str(_fault(json.dumps(document).encode()))
+    said = str(_fault(json.dumps(document).encode()))
+    assert text in said
+    assert "more fault" not in said
 
 
 def test_a_byte_order_mark_does_no_harm():

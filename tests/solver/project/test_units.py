@@ -134,7 +134,7 @@ def test_molar_volume_of_the_normal_cubic_metre():
     [
         ("1,200 kg/h", "feed", "1200 or 1.200"),
         ("abc", "temperature", "'abc'"),
-        ("", "temperature", "Nothing is typed"),
+        ("", "temperature", "Nothing is written"),
         ("nan K", "temperature", "not a number"),
         ("1e999 K", "temperature", "too large"),
         ("25 kelvn", "temperature", "K"),

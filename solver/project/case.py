@@ -100,7 +100,7 @@ class CaseAnswer:
 
     @property
     def heat_is(self) -> Literal["heat", "work", "heat and work"]:
-        """What `heat` is: heat, or with S held the work, or both where S is not that of the feed."""
+        """What `heat` is: heat; with S held work, or both where S is not that of the feed."""
         fixed = self.end.fixed
         if PAIRS[fixed.pair].variables[0] != "S":
             return "heat"

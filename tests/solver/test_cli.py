@@ -70,8 +70,8 @@ def test_json_has_the_keys_it_promises(capsys):
     assert (document["format"], document["version"]) == ("thalweg-answer", 1)
     case = document["cases"][0]
     assert set(case) == {
-        "name", "pair", "basis", "T", "p", "V", "H", "U", "S", "G", "heat", "heat_is", "fed", "amounts",
-        "fractions", "phases", "proof", "outside_range", "messages", "cautions",
+        "name", "pair", "basis", "T", "p", "V", "H", "U", "S", "G", "heat", "heat_is", "fed",
+        "amounts", "fractions", "phases", "proof", "outside_range", "messages", "cautions",
     }  # fmt: skip
     assert case["basis"] == "flow"
     assert case["T"] == pytest.approx(1118.15)

@@ -11,7 +11,7 @@ import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from types import MappingProxyType
-from typing import TYPE_CHECKING, Literal, cast
+from typing import TYPE_CHECKING, Literal
 
 import species_db
 from solver.endstate import EndState
@@ -20,8 +20,9 @@ from solver.fed import as_fed
 from solver.fixed import PAIRS, T_HIGHEST, T_LOWEST, Fixed
 from solver.project import units
 from solver.project.candidates import choose
-from solver.project.model import Case, Quantity, Variable
-from solver.project.streams import Basis, ReadStream, read_state, read_stream
+from solver.project.held import check_fixed, read_fixed
+from solver.project.model import Case
+from solver.project.streams import Basis, ReadStream, read_stream
 from solver.settle import settle
 
 if TYPE_CHECKING:
@@ -159,12 +160,12 @@ def prepare(case: Case, library: Library | None = None) -> Prepared:
     if case.gas != "ideal":
         faults.append(InputError(f"The gas model {case.gas!r} is not known.", "gas", case.gas))
     if faults:
-        _fixed_alone(case, faults)
+        check_fixed(case, faults)
         raise CaseFaults(faults)
     basis = streams[0].basis
     live = [stream for stream in streams if stream.feed]
     fed = _totals(live, case.gas)
-    fixed, heat, notes = _fixed(case, fed, basis, faults)
+    fixed, heat, notes = read_fixed(case, fed, basis, faults)
     if faults or fixed is None:
         raise CaseFaults(faults)
     messages = [m for stream in streams for m in stream.messages]
@@ -283,127 +284,6 @@ def _common(values: Sequence[float]) -> float | None:
     """The value on which all agree but for the rounding of a change of unit."""
     same = all(math.isclose(value, values[0], rel_tol=1e-12) for value in values)
     return values[0] if same else None
-
-
-_KIND = {
-    "T": "temperature",
-    "p": "pressure",
-    "V": "vessel",
-    "H": "heat",
-    "U": "heat",
-    "S": "disorder",
-}
-
-
-def _fixed(
-    case: Case, fed: FedTotals, basis: Basis, faults: list[InputError]
-) -> tuple[Fixed | None, float, list[str]]:
-    """The pair with its values in SI, the heat, and remarks."""
-    pair = PAIRS[case.fixed.pair]
-    notes: list[str] = []
-    if pair.holds_volume and basis == "flow":
-        faults.append(
-            InputError(
-                f"The pair {pair.name} holds a volume, so the feed must be a batch; write the "
-                "amounts in mol or kg instead of a flow, or choose a pair with p.",
-                "fixed.pair",
-                pair.name,
-                ", ".join(name for name, other in PAIRS.items() if not other.holds_volume),
-            )
-        )
-        return None, 0.0, notes
-    heat = 0.0
-    if case.fixed.heat is not None and _written(case.fixed.heat):
-        if {"H", "U"} & set(pair.variables):
-            heat = _extensive(case.fixed.heat, "heat", "fixed.heat", basis, faults) or 0.0
-        elif case.fixed.heat.value != 0:
-            notes.append(
-                f"Heat is not used: with {pair.name} held, the heat is part of the answer."
-            )
-    values: dict[str, float] = {}
-    for name in _variables(case):
-        field = f"fixed.{name}"
-        typed = case.fixed.values.get(name)
-        if typed is None:
-            value = getattr(fed, name)
-            if value is None:
-                faults.append(_no_common(name, field))
-        elif name in ("T", "p"):
-            value = read_state(typed, _KIND[name], field, faults)
-        else:
-            value = _extensive(typed, _KIND[name], field, basis, faults)
-        if value is not None:
-            values[name] = value + (heat if name in ("H", "U") else 0.0)
-    if faults:
-        return None, heat, notes
-    try:
-        return Fixed(pair.name, **values), heat, notes
-    except InputError as fault:
-        faults.append(fault)
-        return None, heat, notes
-
-
-def _fixed_alone(case: Case, faults: list[InputError]) -> None:
-    """Faults of the fixed values that can be seen without knowing the feed."""
-    for name in _variables(case):
-        typed = case.fixed.values.get(name)
-        if typed is not None and name in ("T", "p"):
-            read_state(typed, _KIND[name], f"fixed.{name}", faults)
-        elif typed is not None:
-            _extensive(typed, _KIND[name], f"fixed.{name}", None, faults)
-
-
-def _written(quantity: Quantity) -> bool:
-    return not isinstance(quantity.value, str) or bool(quantity.value.strip())
-
-
-def _no_common(name: str, field: str) -> InputError:
-    word = {"T": "temperature", "p": "pressure"}[name]
-    return InputError(
-        f"The streams differ in {word}, so the {word} held cannot be taken from them; write it.",
-        field,
-        None,
-        f"a {word}",
-    )
-
-
-def _variables(case: Case) -> tuple[Variable, Variable]:
-    first, second = PAIRS[case.fixed.pair].variables
-    return cast(Variable, first), cast(Variable, second)
-
-
-def _extensive(
-    quantity: Quantity, kind: str, field: str, basis: Basis | None, faults: list[InputError]
-) -> float | None:
-    """A batch's energy, volume or entropy, or that of a flow per second."""
-    try:
-        si = units.to_si(quantity, kind, field)
-        found = units.unit_kind(quantity.unit, kind, field)
-    except InputError as fault:
-        faults.append(fault)
-        return None
-    per_time = found in ("power", "entropy_flow", "volume_flow")
-    if basis is not None and per_time != (basis == "flow"):
-        example = {
-            ("heat", "flow"): "kW",
-            ("heat", "batch"): "kJ",
-            ("disorder", "flow"): "kW/K",
-            ("disorder", "batch"): "kJ/K",
-            ("vessel", "flow"): "m3/h",
-            ("vessel", "batch"): "m3",
-        }[kind, basis]
-        feed = "a flow" if basis == "flow" else "a batch"
-        faults.append(
-            InputError(
-                f"The feed is {feed}, but {units.typed_number(quantity.value)} {quantity.unit} "
-                f"is not per {'time' if basis == 'flow' else 'batch'}; write it in {example}.",
-                field,
-                quantity.unit,
-                example,
-            )
-        )
-        return None
-    return si
 
 
 def _feed_out_of_range(stream: ReadStream) -> list[str]:

@@ -7,8 +7,9 @@ Conversion to SI is ``value * factor + offset``.
 Definitions: BIPM, The International System of Units, 9th edition (bar, litre, hour, degree
 Celsius); NIST Special Publication 811 (2008), appendix B (atm, torr, psi, calorie, Btu, pound,
 degree Fahrenheit, horsepower). The normal cubic metre is the ideal-gas amount at 0 degC and
-101325 Pa (DIN 1343), the standard cubic metre that at 15 degC and 101325 Pa (ISO 13443), both
-from memory. Gauge pressure counts from the standard atmosphere, 101325 Pa.
+101325 Pa (DIN 1343), the standard cubic metre that at 15 degC and 101325 Pa (ISO 13443), the
+standard cubic foot that at 60 degF and 14.696 psi (American gas trade); all three from memory.
+Gauge pressure counts from the standard atmosphere, 101325 Pa.
 """
 
 from __future__ import annotations
@@ -23,13 +24,14 @@ NORMAL_MOLES: Final = ATMOSPHERE / (R * 273.15)
 """mol in one normal cubic metre of an ideal gas."""
 STANDARD_MOLES: Final = ATMOSPHERE / (R * 288.15)
 """mol in one standard cubic metre of an ideal gas."""
-
 _PSI = 0.45359237 * 9.80665 / 0.0254**2
 _LB = 0.45359237
 _BTU = 1055.05585262
 _CAL = 4.184
 _FT3 = 0.3048**3
 _TORR = ATMOSPHERE / 760.0
+SCF_MOLES: Final = 14.696 * _PSI * _FT3 / (R * 519.67 * 5 / 9)
+"""mol in one standard cubic foot of an ideal gas."""
 
 
 class Unit(NamedTuple):
@@ -157,6 +159,7 @@ _NORMAL = (
     Unit("Nm3", "normal_volume", NORMAL_MOLES, 0.0, ("Nm³", "Nm^3", "m3(n)", "m³(n)")),
     Unit("NL", "normal_volume", NORMAL_MOLES * 1e-3, 0.0, ("Nl",)),
     Unit("Sm3", "normal_volume", STANDARD_MOLES, 0.0, ("Sm³", "Sm^3")),
+    Unit("scf", "normal_volume", SCF_MOLES, 0.0, ("SCF",)),
 )
 _VOLUME = (
     Unit("m3", "volume", 1.0, 0.0, ("m³", "m^3")),
@@ -175,6 +178,7 @@ _ENERGY = (
     Unit("cal", "energy", _CAL),
     Unit("kcal", "energy", _CAL * 1e3),
     Unit("Btu", "energy", _BTU, 0.0, ("BTU", "btu")),
+    Unit("MMBtu", "energy", _BTU * 1e6, 0.0, ("MMBTU",)),
 )
 _ENTROPY = (
     Unit("J/K", "entropy", 1.0),

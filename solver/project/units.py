@@ -11,10 +11,11 @@ import math
 import re
 from difflib import get_close_matches
 from functools import cache
-from typing import TYPE_CHECKING, Any, Final
+from typing import Final
 
 from solver.errors import InputError
 from solver.project.model import Quantity
+from solver.project.pint_units import unit_from_pint
 from solver.project.unit_table import ATMOSPHERE, KINDS, NORMAL_MOLES, TABLE, UNIONS, Unit
 from solver.project.wording import (
     formula_text,
@@ -23,9 +24,6 @@ from solver.project.wording import (
     typed_number,
     unit_text,
 )
-
-if TYPE_CHECKING:
-    import pint
 
 __all__ = [
     "ATMOSPHERE",
@@ -95,7 +93,7 @@ _NUMBER = re.compile(
     rf"[+\-\u2212]?\s*(?:{_DIGITS}|[.,]\d+)"
     r"(?:\s*[eE][+\-\u2212]?\d+|\s*[×x*·]\s*10(?:\^?[+\-\u2212]?\d+|[⁺⁻]?[⁰¹²³⁴⁵⁶⁷⁸⁹]+))?"
 )
-_SUPERSCRIPT = str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹⁻⁺", "0123456789-+")
+_SUPERSCRIPT: Final = str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹⁻⁺", "0123456789-+")
 
 
 def parse_number(text: str, field: str = "") -> float:
@@ -239,7 +237,7 @@ def find(unit: str, kind: str, field: str = "") -> Unit:
         return known[squeezed]
     other = next((u for u in TABLE if squeezed in map(_squeeze, (u.name, *u.also))), None)
     if other is None:
-        found = _from_pint(unit, kind)
+        found = unit_from_pint(unit, kind)
         if isinstance(found, Unit):
             return found
         why = found
@@ -266,58 +264,6 @@ def _near(squeezed: str, kind: str) -> list[str]:
     names = list(dict.fromkeys(folded[c] for c in close))
     usual = [KINDS[k].default for k in UNIONS.get(kind, (kind,))]
     return (names or list(dict.fromkeys([*usual, *units_of(kind)])))[:5]
-
-
-_PINT_UNIT: Final = {
-    "temperature_difference": "delta_degC",
-    "volume": "m**3",
-    "volume_flow": "m**3/s",
-    "normal_volume": None,
-    "normal_volume_flow": None,
-    "amount_share": None,
-    "mass_share": None,
-    "share": None,
-    "temperature": None,
-}
-
-
-_NAMED: Final = r"[A-Za-zµμ°]+(?:_[A-Za-z]+)?(?:\^-?\d|\*\*-?\d|\d)?"
-
-
-@cache
-def _registry() -> pint.UnitRegistry[Any]:
-    import pint
-
-    return pint.UnitRegistry(autoconvert_offset_to_baseunit=False)
-
-
-@cache
-def _from_pint(unit: str, kind: str) -> Unit | str:
-    """The unit as pint knows it, or why it is none of this kind."""
-    import pint
-
-    # Only products and quotients of named units with one-digit powers: pint evaluates the text,
-    # and a tower of powers would keep it busy for ever.
-    if len(unit) > 40 or not re.fullmatch(rf"\s*\(?{_NAMED}([\s*·/]+\(?{_NAMED}\)?)*\s*", unit):
-        return "is not known"
-    registry = _registry()
-    try:
-        parsed = registry.parse_units(unit.strip().replace("·", "*"))
-    except Exception:  # pint's parser raises its own errors and Python's (tokenizer, zero division)
-        return "is not known"
-    for one in UNIONS.get(kind, (kind,)):
-        target = _PINT_UNIT.get(one, KINDS[one].si)
-        if target is None:
-            continue
-        try:
-            # A ratio keeps powers, offsets and logarithms out: those are no plain factors.
-            factor = float(registry.Quantity(1.0, parsed).to(target).magnitude)
-            twice = float(registry.Quantity(2.0, parsed).to(target).magnitude)
-        except (pint.PintError, TypeError, ValueError, ArithmeticError):
-            continue
-        if math.isfinite(factor) and factor > 0 and math.isclose(twice, 2 * factor):
-            return Unit(unit.strip(), one, factor)
-    return "is of another kind"
 
 
 def _words(kind: str) -> str:

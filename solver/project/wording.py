@@ -49,7 +49,7 @@ def typed_number(value: float | str) -> str:
     """A number as a person would have typed it: every digit that matters, no padding."""
     if isinstance(value, str):
         return value
-    text = f"{value:.12g}"
+    text = f"{value:.15g}"
     if "e" in text:
         mantissa, _, power = text.partition("e")
         return f"{mantissa}e{int(power)}"

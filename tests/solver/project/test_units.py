@@ -19,6 +19,8 @@ _PINT_NAME = {
     "Nm3": f"{101325 / (8.31446261815324 * 273.15)!r} mol",
     "Sm3": f"{101325 / (8.31446261815324 * 288.15)!r} mol",
     "NL": f"{101.325 / (8.31446261815324 * 273.15)!r} mol",
+    "scf": f"{14.696 * 6894.757293168361 * 0.3048**3 / (8.31446261815324 * 519.67 / 1.8)!r} mol",
+    "MMBtu": "Btu * 1e6",
     "t": "tonne",
     "Wh": "watt_hour",
     "kWh": "kilowatt_hour",
@@ -175,6 +177,8 @@ def test_rare_units_come_from_pint():
         2 * 0.028349523125 / 60
     )
     assert units.unit_kind("oz/min", "feed") == "mass_flow"
+    force = units.parse_quantity("10 kgf/cm2", "pressure")
+    assert units.to_si(force, "pressure") == pytest.approx(980665.0)
 
 
 def test_values_go_out_in_the_unit_they_came_in():
@@ -246,6 +250,8 @@ def test_units_as_shown():
     assert units.unit_text("Nm3/h") == "Nm³/h"
     assert units.typed_number(25.0) == "25"
     assert units.typed_number(1.2e-7) == "1.2e-7"
+    for typed in ("0.12345678901234", "1234.5678", "1e30", "-5"):
+        assert units.typed_number(units.parse_number(typed)) == typed
 
 
 def test_pint_stays_unloaded_for_the_common_units():

@@ -24,6 +24,8 @@ from solver.project.upgrades import VERSION, Document, upgrade
 
 FORMAT: Final = "thalweg-project"
 SUFFIX: Final = ".thalweg"
+LARGEST: Final = 64_000_000
+"""Bytes; no project comes near, but a device or a film picked by mistake goes beyond."""
 
 
 class ProjectFileError(InputError):
@@ -44,9 +46,12 @@ def read(path: str | os.PathLike[str]) -> Project:
     """
     where = Path(path)
     try:
-        data = where.read_bytes()
+        with where.open("rb") as file:
+            data = file.read(LARGEST + 1)
     except OSError as error:
         raise ProjectFileError(f"{where}: {_system(error)}", value=str(where)) from None
+    if len(data) > LARGEST:
+        raise ProjectFileError(f"{where}: the file is too large for a project.", value=str(where))
     return parse(data, where.name)
 
 
@@ -64,7 +69,9 @@ def text_of(project: Project) -> str:
     """The text of a project file; reading it back gives an equal project."""
     content = project.model_dump(mode="json", exclude_none=True)
     document = {"format": FORMAT, "version": VERSION, **_tidy(content)}
-    return json.dumps(document, indent=2, ensure_ascii=False, allow_nan=False) + "\n"
+    text = json.dumps(document, indent=2, ensure_ascii=False, allow_nan=False) + "\n"
+    # Half a character (a broken paste) cannot be written; it must not cost the rest.
+    return text.encode("utf-8", "replace").decode("utf-8")
 
 
 def write(project: Project, path: str | os.PathLike[str]) -> None:

@@ -67,6 +67,16 @@ def test_unfinished_input_survives_saving(tmp_path):
     assert file.read(tmp_path / "half.thalweg") == half
 
 
+def test_half_a_character_does_not_cost_the_project(tmp_path):
+    file.write(_project("plant \ud83d"), tmp_path / "plant.thalweg")
+    assert file.read(tmp_path / "plant.thalweg").title == "plant ?"
+
+
+def test_what_is_far_too_large_is_not_read_to_its_end():
+    with pytest.raises(file.ProjectFileError, match="too large"):
+        file.read("/dev/zero")
+
+
 def test_whole_numbers_are_written_as_typed():
     assert '"value": 25,' in file.text_of(_project())
 
@@ -164,6 +174,7 @@ def test_a_damaged_file_is_refused_with_the_place(data, place, text):
         (["cases", 0, "streams", 0, "p"], 5, "cases[0].streams[0].p: must be a group of fields"),
         (["cases", 0, "gas"], "vapour", "cases[0].gas: must be 'ideal'"),
         (["notes"], 7, "notes: must be a text"),
+        (["cases", 0, "streams", 0, "T", "value"], 10**400, "T.value: must be a number"),
     ],
 )
 def test_a_field_that_does_not_fit_is_named_by_its_path(path, value, text):

@@ -18,7 +18,7 @@ SHORT_RULE: Final = (
     "Gases without carbon; gases with one or two carbon atoms and at most three atoms besides "
     "hydrogen and halogens; graphite and every other liquid or solid that is no organic compound. "
     "Of isomers and of solid forms the most stable only; wustite as Fe0.947O, not as FeO; no ions, "
-    "no explosives. Species fed are always allowed."
+    "no explosives. Species fed are allowed too."
 )
 """The short list in words an engineer can check."""
 
@@ -234,7 +234,7 @@ def _metastable(same: Sequence[Species]) -> list[Species]:
     """Of one composition and phase, those that are nowhere the most stable.
 
     For gases (isomers) the comparison is at 298.15 K. For liquids and solids it runs over
-    the form's own temperature range, against the others where their data reach.
+    the temperatures where the data of the form and of another one reach.
     """
     if same[0].phase == "gas":
         best = min(same, key=lambda sp: sp.g(298.15))
@@ -250,6 +250,7 @@ def _metastable(same: Sequence[Species]) -> list[Species]:
             ],
             axis=0,
         )
-        if np.all(sp.g(T) > others):
+        known = np.isfinite(others)
+        if known.any() and np.all(sp.g(T)[known] > others[known]):
             never.append(sp)
     return never

@@ -12,7 +12,7 @@ from scipy.optimize import linprog
 from tests.solver.peers.problems import Arrays, gibbs, lower_bound
 
 
-class NoAnswer(Exception):
+class NoAnswerError(Exception):
     """The conic solver gave up."""
 
 
@@ -81,7 +81,7 @@ def minimise(problem: Arrays) -> Answer:
             continue
         break
     else:
-        raise NoAnswer(str(question.status))
+        raise NoAnswerError(str(question.status))
     amounts = np.zeros(len(problem.g))
     amounts[possible] = np.maximum(np.asarray(n.value), 0.0) * scale
     multipliers = np.asarray(balance.dual_value)

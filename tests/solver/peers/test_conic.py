@@ -10,7 +10,7 @@ import pytest
 
 import solver
 from species_db import R
-from tests.solver.peers.conic import Answer, NoAnswer, minimise
+from tests.solver.peers.conic import Answer, NoAnswerError, minimise
 from tests.solver.peers.problems import FUZZ, Arrays, arrays, gibbs, random_problem
 
 CASES = range(60 * FUZZ)
@@ -22,7 +22,7 @@ def conic(problem: Arrays) -> Answer:
         warnings.filterwarnings("ignore", message="Solution may be inaccurate")
         try:
             return minimise(problem)
-        except NoAnswer as error:
+        except NoAnswerError as error:
             pytest.skip(f"the conic solver gave up: {error}")
 
 
@@ -54,7 +54,7 @@ def test_most_problems_are_compared():
     found = 0
     for seed in range(60):
         data = arrays(random_problem(seed))
-        with warnings.catch_warnings(), contextlib.suppress(NoAnswer):
+        with warnings.catch_warnings(), contextlib.suppress(NoAnswerError):
             warnings.filterwarnings("ignore", message="Solution may be inaccurate")
             peer = minimise(data)
             found += abs(peer.gibbs - peer.bound) / peer.n.sum() + peer.residual < 1e-6

@@ -189,8 +189,9 @@ def short_list(species: Iterable[Species]) -> list[Species]:
     ]
     forms: dict[tuple[object, ...], list[Species]] = {}
     for sp in kept:
-        forms.setdefault((sp.phase, *sorted(sp.elements.items())), []).append(sp)
-    metastable = {sp.key for same in forms.values() if len(same) > 1 for sp in _metastable(same)}
+        kind = "gas" if sp.phase == "gas" else "condensed"
+        forms.setdefault((kind, *sorted(sp.elements.items())), []).append(sp)
+    metastable = {sp.key for same in forms.values() for sp in _metastable(same)}
     keys = {sp.key for sp in kept}
     metastable |= {key for key, better in _SUPERSEDED.items() if better in keys}
     return [sp for sp in kept if sp.key not in metastable]
@@ -231,16 +232,17 @@ def is_explosive(sp: Species) -> bool:
 
 
 def _metastable(same: Sequence[Species]) -> list[Species]:
-    """Of one composition and phase, those that are nowhere the most stable.
+    """Of one composition, the gases or the solids that are nowhere the most stable.
 
-    For gases (isomers) the comparison is at 298.15 K. For liquids and solids it runs over
-    the temperatures where the data of the form and of another one reach.
+    For gases (isomers) the comparison is at 298.15 K. For solids it runs over the temperatures
+    where the data of the form and of another form or the liquid reach; a sole solid stays.
     """
     if same[0].phase == "gas":
         best = min(same, key=lambda sp: sp.g(298.15))
         return [sp for sp in same if sp is not best]
+    solids = [sp for sp in same if sp.phase == "solid"]
     never = []
-    for sp in same:
+    for sp in solids if len(solids) > 1 else []:
         T = np.linspace(sp.T_min, sp.T_max, 25)
         others = np.min(
             [

@@ -1,7 +1,7 @@
 """Errors of the species library."""
 
 
-class UnknownSpecies(KeyError):  # noqa: N818 - the name is part of the interface
+class UnknownSpecies(KeyError):
     """No record answers to a text; `near` holds the keys that come closest."""
 
     def __init__(self, text: str, near: tuple[str, ...] = (), reason: str = "") -> None:

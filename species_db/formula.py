@@ -8,6 +8,8 @@ from species_db.elements import ATOMIC_MASS
 _TOKEN = re.compile(r"([A-Z][a-z]?)|(\()|(\))|(\d+(?:\.\d+)?)")
 _CHARGE = re.compile(r"(\d*[+-]|[+-]\d+|[+]+|[-]+)$")
 _STATE = re.compile(r"\((g|gas|l|liq|liquid|s|sol|solid|c|cr)\)$", re.IGNORECASE)
+_ADDUCT = re.compile(r"[·*]|\.(?=[A-Z])|(?<!\.\d)\.(?=\d+(?:\.\d+)?H2O)")
+"""A dot before a unit of its own: ``CaO.SiO2``, ``CaSO4.2H2O``, but not the one in ``Fe0.947O``."""
 _PHASE = {"g": "gas", "l": "liquid", "s": "solid", "c": "solid"}
 
 Composition = tuple[tuple[str, float], ...]
@@ -49,7 +51,7 @@ def parse_formula(text: str) -> tuple[Composition, int] | None:
         charge = size if "+" in sign else -size
         text = text[: found.end() - len(sign)]
     total: dict[str, float] = {}
-    for part in re.split(r"[·*]|\.(?=\d*[A-Z])", text):
+    for part in _ADDUCT.split(text):
         lead = re.match(r"\d+(?:\.\d+)?", part)
         factor = float(lead.group()) if lead else 1.0
         counts = _counts(part[lead.end() :] if lead else part)

@@ -24,9 +24,10 @@ def load() -> "Library":
 class Library(Mapping[str, Species]):
     """Species by key. ``lib[text]`` also takes formulas, names and synonyms.
 
-    A formula or a name without a state of aggregation means the gas where the library has it,
-    else the liquid, else the solid. Letters of a formula are case-sensitive (CO is not Co), names
-    are not.
+    A formula without a state of aggregation means the gas where the library has it, else the
+    liquid, else the solid. A name alone means the reference state of an element, else the gas,
+    else (no vapour to speak of at 298 K) the condensed record. Letters of a formula are
+    case-sensitive (CO is not Co), names are not.
     """
 
     def __init__(
@@ -138,7 +139,9 @@ class Library(Mapping[str, Species]):
         for sp in self._own.values():
             counts = " ".join(f"{e}:{n:g}" for e, n in sp.elements.items())
             synonyms = "|".join(sp.synonyms)
-            yield Entry(sp.key, sp.name, counts, str(sp.charge), sp.phase, False, synonyms, "")
+            yield Entry(
+                sp.key, sp.name, counts, str(sp.charge), sp.phase, False, True, synonyms, ""
+            )
         yield from (e for key, e in self._entries.items() if key not in self._own)
 
     @functools.cached_property
@@ -167,7 +170,9 @@ class Library(Mapping[str, Species]):
     def _names(self) -> dict[str, list[str]]:
         """Names and synonyms, letters folded -> keys, gas before liquid before solid."""
         index: dict[str, list[str]] = {}
-        for row in sorted(self._rows(), key=lambda r: (_PHASES.index(r.phase), not r.usual)):
+        for row in sorted(
+            self._rows(), key=lambda r: (not r.named, _PHASES.index(r.phase), not r.usual)
+        ):
             for name in (row.name, *row.synonyms.split("|")):
                 if name and row.key not in (same := index.setdefault(folded(name), [])):
                     same.append(row.key)
@@ -220,7 +225,9 @@ class Library(Mapping[str, Species]):
         if not found:
             return None
         parsed = parse_formula(found["head"])
-        form, _, letter = found["form"].partition(",")
+        form, _, letter = found["form"].rpartition(",")
+        if letter.strip() not in ("g", "l", "s"):
+            form, letter = found["form"], ""
         if parsed is None:
             return None
         named = self._all_named(form)

@@ -17,7 +17,7 @@ COLUMNS = (
     "elements",  # "C:1 O:2"
     "charge",
     "phase",
-    "usual",  # 1: the record the bare formula means
+    "means",  # f: the bare formula means this record; n: the plain name does
     "synonyms",
     "cas",
     "source",
@@ -47,6 +47,7 @@ class Entry:
     charge: str
     phase: str
     usual: bool
+    named: bool
     synonyms: str
     rest: str
 
@@ -65,8 +66,10 @@ def read_entries() -> dict[str, Entry]:
     entries: dict[str, Entry] = {}
     for line in lines[1:]:
         if line:
-            key, name, elements, charge, phase, usual, synonyms, rest = line.split("\t", INDEXED)
-            entries[key] = Entry(key, name, elements, charge, phase, usual == "1", synonyms, rest)
+            key, name, elements, charge, phase, means, synonyms, rest = line.split("\t", INDEXED)
+            entries[key] = Entry(
+                key, name, elements, charge, phase, "f" in means, "n" in means, synonyms, rest
+            )
     return entries
 
 

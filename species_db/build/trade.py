@@ -17,18 +17,20 @@ Ca(HCO3)2 CaHPO4 CaSO4.2H2O Na2CO3.10H2O Na2SO4.10H2O MgCl2.6H2O MgSO4.7H2O CuSO
 FeOOH AlOOH MnOOH Ni(CO)4 Fe(CO)5 Cr(CO)6 Mo(CO)6 W(CO)6 Fe(CN)2 CaCN2 Hg2Cl2 Hg2Br2 Hg2I2 Hg2F2
 Na2C2O4 CaC2O4 (COOH)2 Pb3O4 Fe3O4 Co3O4 Mn3O4 Fe0.947O UO2F2 PH3 AsH3 SbH3 SiH4 GeH4
 CF2Cl2 CFCl3 CHF2Cl CHFCl2 CF3Cl CF3Br CH3Cl CHCl3 CH2Cl2 CCl4 CBrCl3 SF5Cl PSCl3 POCl3
-C2N2 C4N2 CNO NCN CS2 CSe2 HNC HSO3Cl H2NO HON ClOO=ClO2 FO2 N2H4 N2H2 N2H3 NH NH2 NH3 HN3 NH4OH
+C2N2 C4N2 HCCO CNO NCN CS2 CSe2 HNC HSO3Cl H2NO HON ClOO=ClO2 FO2 N2H4 N2H2 N2H3 NH NH2 NH3 HN3
+NH4OH (NH4)2SiF6 BaCl2.2H2O CaSO4.0.5H2O CaMg(CO3)2 HReO4 H2WO4 H2MoO4 KH2PO4 HCOONa HCOOK
+CH3COONa CH3COOK NaNH2 KNH2 LiNH2
 Al2SiO5 CaSiO3 MgSiO3 Mg2SiO4 Ca2SiO4 Ca3SiO5 Fe2SiO4 Na2SiO3 K2SiO3 NaAlSiO4 KAlSi3O8 NaAlSi3O8
 """
 """Formulas whose trade spelling does not follow from the rules below."""
 
-_ORDER = (
-    "Cs Rb K Na Li Ra Ba Sr Ca Mg Be Ac Th Pa U Np Pu La Ce Pr Nd Pm Sm Eu Gd Tb Dy Ho Er Tm Yb Lu "
-    "Y Sc Hf Zr Ti Ta Nb V W Mo Cr Re Tc Mn Os Ru Fe Ir Rh Co Pt Pd Ni Au Ag Cu Hg Cd Zn "
-    "Tl In Ga Al Pb Sn Ge Bi Po Rn Xe Kr Ar Ne He B Si C Sb As P N H Te Se S I Br Cl O F"
-).split()  # noqa: SIM905
+_ORDER = """
+Fr Cs Rb K Na Li Ra Ba Sr Ca Mg Be Ac Th Pa U Np Pu La Ce Pr Nd Pm Sm Eu Gd Tb Dy Ho Er Tm Yb Lu
+Y Sc Os Ru Fe Ir Rh Co Pt Pd Ni Au Ag Cu Hg Cd Zn Tl In Ga Al Pb Sn Bi Po
+Hf Zr Ti Ta Nb V W Mo Cr Re Tc Mn Ge At Rn Xe Kr Ar Ne He B Si C Sb As P N H Te Se S I Br Cl O F
+""".split()
 _RANK = {symbol: i for i, symbol in enumerate(_ORDER)}
-_NONMETALS = set("Xe Kr Ar Ne He Rn B Si C Sb As P N H Te Se S I Br Cl O F Ge".split())  # noqa: SIM905
+_NONMETALS = set("Xe Kr Ar Ne He Rn B Si C Sb As P N H Te Se S I Br Cl O F Ge".split())
 _HALOGENS = ("F", "Cl", "Br", "I")
 _GROUPS = {("S", 4): "SO4", ("N", 3): "NO3", ("P", 4): "PO4"}
 
@@ -94,7 +96,9 @@ def _by_rule(elements: Mapping[str, float]) -> str:
     order = sorted(rest, key=_RANK.__getitem__)
     halogens = [h for h in _HALOGENS if h in rest]
     centres = [e for e in order if e not in ("O", "H", *_HALOGENS)]
-    if "O" in rest and halogens and (centres or metals):
+    halate = metals and not centres and rest.get("O", 0) >= 3
+    halate = halate and len(halogens) == 1 and rest[halogens[0]] == 1
+    if "O" in rest and halogens and (centres or metals) and not halate:
         order = [e for e in order if e not in ("O", *_HALOGENS)] + ["O"]
         order += sorted(halogens, key=_RANK.__getitem__, reverse=False)
     acid = set(centres) <= {"N", "P", "S", "B", "Se", "Te", "As"}

@@ -67,7 +67,10 @@ def _print(out: Console, case: Case, answer: CaseAnswer) -> None:
     out.print(f"  V     {number(end.V * (3600 if flow else 1))} {'m³/h' if flow else 'm³'}")
     out.print(f"  {answer.heat_is:<4}  {_heat(answer)}")
     out.print()
-    out.print(_composition(answer, amount_unit, amount_factor))
+    table, traces = _composition(answer, amount_unit, amount_factor)
+    out.print(table)
+    if traces:
+        out.print(f"  and {traces} gases below 1 ppm each")
     phases = end.phase_amounts
     out.print(
         "  phases  "
@@ -101,7 +104,8 @@ def _small(value: float) -> str:
     return units.number_text(abs(value), 2)
 
 
-def _composition(answer: CaseAnswer, unit: str, factor: float) -> Table:
+def _composition(answer: CaseAnswer, unit: str, factor: float) -> tuple[Table, int]:
+    """The table of what is there, and how many gases are too little to be printed."""
     end = answer.end
     table = Table(box=box.SIMPLE_HEAD, pad_edge=False, show_edge=False, padding=(0, 1))
     table.add_column("  species")
@@ -126,9 +130,7 @@ def _composition(answer: CaseAnswer, unit: str, factor: float) -> Table:
                 units.number_text(100 * share),
                 sp.phase,
             )
-    if traces:
-        table.add_row(f"  {traces} more gases, each below 1 ppm")
-    return table
+    return table, traces
 
 
 def _print_absent(out: Console, answer: CaseAnswer) -> None:

@@ -2,7 +2,10 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, Final
+import tomllib
+from functools import cache
+from importlib import resources
+from typing import TYPE_CHECKING, Any, Final
 
 from rich import box
 from rich.console import Console
@@ -74,7 +77,7 @@ def _print_one(out: Console, sp: Species) -> None:
         )
     if sp.cas:
         facts.append(("CAS", sp.cas))
-    facts.append(("source", f"{sp.source}: {sp.reference}" if sp.reference else sp.source))
+    facts += _source("source", sp.source, sp.reference)
     facts += _second(sp)
     others = [name for name in dict.fromkeys(sp.synonyms) if name not in (sp.name, sp.key)]
     if others:
@@ -106,20 +109,36 @@ def _second(sp: Species) -> list[tuple[str, str]]:
         return [("second source", "none")]
     number = units.number_text
     apart = [
-        f"{number((g - sp.g(T)) / 1e3, 2)} at {T:g} K"
+        f"{number(round((g - sp.g(T)) / 1e3, 3), 2)} at {T:g} K"
         for T, g in zip(SECOND_T, second.g, strict=True)
         if g == g  # nan where that source ends
     ]
-    facts = [
-        ("second source", f"{second.source}: {second.reference}"),
+    facts = _source("second source", second.source, second.reference)
+    facts.append(
         (
-            "  its h, s",
-            f"{number(second.h298 / 1e3, 6)} kJ/mol, {number(second.s298, 5)} J/(mol K)",
-        ),
-    ]
+            "  h, s there",
+            f"{_kilojoules(second.h298, 6)} kJ/mol, {number(second.s298, 5)} J/(mol K)",
+        )
+    )
     if apart:
-        facts.append(("  its g - g", ", ".join(apart) + " kJ/mol"))
+        facts.append(("  g there - here", ", ".join(apart) + ", kJ/mol"))
     return facts
+
+
+def _source(label: str, source: str, reference: str) -> list[tuple[str, str]]:
+    """The table inside a source, and the full title of the source."""
+    facts = [(label, f"{source}: {reference}" if reference else source)]
+    about = _sources().get(source)
+    if isinstance(about, dict) and "title" in about:
+        parts = (about.get("authors"), about["title"], about.get("report"), about.get("year"))
+        facts.append(("", ", ".join(str(part) for part in parts if part)))
+    return facts
+
+
+@cache
+def _sources() -> dict[str, Any]:
+    text = resources.files("species_db").joinpath("data/sources.toml").read_text("utf-8")
+    return tomllib.loads(text)
 
 
 def _list(found: list[Species]) -> Table:

@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from solver.core.mixture import condensed_volume
 from solver.core.thermo import ThermoTable
 from solver.core.totals import totals
 from solver.errors import InputError
@@ -67,7 +68,7 @@ def as_fed(feed: Mapping[Species, float], T: float, p: float, gas: str = "ideal"
     thermo = ThermoTable(species)
     is_gas = np.array([sp.phase == "gas" for sp in species])
     g, h, _ = thermo.at(T)
-    state = totals(n, is_gas, np.zeros(len(species)), g, h, T, p, None)
+    state = totals(n, is_gas, np.array([condensed_volume(sp) for sp in species]), g, h, T, p, None)
     return Fed(T=T, p=p, V=state.V, H=state.H, U=state.U, S=state.S, G=state.G)
 
 

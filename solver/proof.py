@@ -24,8 +24,8 @@ ENERGY_LIMIT = 1e-10
 GAP_LIMIT = 1e-9
 
 MODEL = (
-    "Ideal gas mixture; each condensed species a pure phase of activity one; "
-    "the volume of condensed phases is neglected."
+    "Ideal gas mixture; each condensed species a pure phase of constant molar volume v, "
+    "which counts in V and as v (p - 1 bar) in its Gibbs energy."
 )
 
 
@@ -109,7 +109,7 @@ def optimality_gap(
         then b.lambda - pi V/RT for any pressure pi that the gas does not exceed.
     """
     is_gas = mixture.is_gas
-    force = mixture.A @ potentials - g
+    force = mixture.A @ potentials - g - mixture.volume * ((p - P0) / (R * T))
     atoms = mixture.A @ mixture.atoms
     log_p = float(np.log(p / P0)) if p > 0.0 else -np.inf
     log_sum = -np.inf
@@ -123,7 +123,7 @@ def optimality_gap(
     vessel = 0.0
     if V is not None:
         # pi may be as large as the gas asks for, at a cost of (pi - p) V
-        vessel = P0 * float(np.exp(log_sum)) * V / (R * T) - float(n[is_gas].sum())
+        vessel = max(P0 * float(np.exp(log_sum)) - p, 0.0) * V / (R * T)
     elif is_gas.any():
         shift = max(shift, (log_sum - log_p) / min(float(atoms[is_gas].min()), 1.0))
     if log_p > -np.inf:

@@ -15,6 +15,7 @@ from solver.core.mixture import Held, Mixture, mixture_of
 from solver.core.phaseset import Case
 from solver.core.temperature import OutOfReach, Point, Search, find_temperature, point_at
 from solver.core.totals import Totals
+from solver.core.vessel import TooSmall
 from solver.endstate import PRESENT, EndState
 from solver.errors import InputError, NoEndState, NotProven
 from solver.fed import check_gas, checked_amount
@@ -77,6 +78,8 @@ def settle(
         raise _not_held(mixture, error) from None
     except OutOfReach as error:
         raise _out_of_reach(fixed, error) from None
+    except TooSmall as error:
+        raise _too_small(fixed, error, scale) from None
     except (Unsettled, np.linalg.LinAlgError) as error:
         raise NotProven(
             f"No end state could be proven for this case ({error}); "
@@ -150,6 +153,17 @@ def _not_held(mixture: Mixture, error: NotHeld) -> InputError:
         "species",
         open_rows,
         "candidates that can hold the feed",
+    )
+
+
+def _too_small(fixed: Fixed, error: TooSmall, scale: float) -> InputError:
+    needed = error.needed / scale
+    return InputError(
+        f"The vessel of {fixed.V:.6g} m3 is smaller than the liquids and solids that must stay "
+        f"in it ({needed:.6g} m3); enlarge V or feed less.",
+        "fixed.V",
+        fixed.V,
+        f"above {needed:.6g} m3",
     )
 
 

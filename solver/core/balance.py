@@ -33,46 +33,93 @@ _PATIENCE = 6  # iterations that a gas may be larger than its feed
 class GasSystem:
     """What the cases of one batch share.
 
+    The gas is held in one of three ways. At a pressure, its size nu = ln N is unknown. In a
+    volume, nu = ln(p0 V/RT) is given. In a vessel that condensed phases share, the volume
+    left to the gas and the pressure upon those phases are unknown too.
+
     Attributes
     ----------
     reactions : ndarray, shape (gas species, gas components)
-    holds_pressure : bool
-        True: the gas fills any volume at the case's pressure (one more unknown, nu).
-        False: nu is given, the gas fills a fixed volume.
+    extra : int
+        Unknowns beyond the components' activities: 1 at a pressure, 0 in a volume, 2 in a
+        shared vessel (nu and the molar density w = p/RT).
+    swelling : ndarray, shape (gas species,)
+        Condensed volume used up by a mole of each gas species, m3/mol.
     """
 
     reactions: Array
-    holds_pressure: bool
+    extra: int
+    swelling: Array
+    effect: Array
     weights: Array
     """Columns that turn amounts into all sums a Newton step needs, one matrix product."""
 
     @classmethod
-    def of(cls, reactions: Array, holds_pressure: bool) -> GasSystem:
-        """Gather the weights of one set of components."""
+    def of(cls, reactions: Array, holds_pressure: bool, swelling: Array | None = None) -> GasSystem:
+        """Gather the weights of one set of components; `swelling` for a shared vessel."""
         species, m = reactions.shape
-        unknowns = m + 1 if holds_pressure else m
-        effect = np.ones((species, unknowns))
+        extra = 1 if holds_pressure else (0 if swelling is None else 2)
+        sides, effect = reactions, np.ones((species, m + extra))
         effect[:, :m] = reactions
-        up, down = np.maximum(reactions, 0.0), np.maximum(-reactions, 0.0)
+        if swelling is not None:
+            effect[:, m + 1] = swelling
+            sides = np.column_stack([reactions, swelling])
+        up, down = np.maximum(sides, 0.0), np.maximum(-sides, 0.0)
         slopes_up = (up[:, :, None] * effect[:, None, :]).reshape(species, -1)
         slopes_down = (down[:, :, None] * effect[:, None, :]).reshape(species, -1)
         parts = [up, down, slopes_up, slopes_down, effect, np.ones((species, 1))]
-        return cls(reactions, holds_pressure, np.concatenate(parts, axis=1))
+        if swelling is None:
+            swelling = np.zeros(species)
+        return cls(reactions, extra, swelling, effect, np.concatenate(parts, axis=1))
+
+
+@dataclass(frozen=True)
+class Vessel:
+    """The cases' shared vessels.
+
+    Attributes
+    ----------
+    left : ndarray, shape (cases,)
+        Vessel less the condensed volume when all components are condensed, m3; any sign.
+    unit : ndarray, shape (cases,)
+        RT/p0, m3/mol.
+    w : ndarray, shape (cases,)
+        Start of the molar density p/RT, mol/m3; kappa refers to the standard pressure.
+    """
+
+    left: Array
+    unit: Array
+    w: Array
 
 
 @dataclass(frozen=True)
 class GasSolution:
-    """Amounts n (cases, gas species), log_a (cases, components), nu (cases,), closed (cases,)."""
+    """Solution of many cases.
+
+    Attributes
+    ----------
+    n : ndarray, shape (cases, gas species)
+    log_a : ndarray, shape (cases, gas components)
+    nu, w : ndarray, shape (cases,)
+    closed : ndarray of bool, shape (cases,)
+    """
 
     n: Array
     log_a: Array
     nu: Array
+    w: Array
     closed: NDArray[np.bool_]
     iterations: int
 
 
 def solve_balances(
-    system: GasSystem, kappa: Array, b: Array, log_a: Array, nu: Array, nu_limit: Array
+    system: GasSystem,
+    kappa: Array,
+    b: Array,
+    log_a: Array,
+    nu: Array,
+    nu_limit: Array,
+    vessel: Vessel | None = None,
 ) -> GasSolution:
     """Solve the balances from the start (log_a, nu).
 
@@ -84,47 +131,62 @@ def solve_balances(
     b : ndarray, shape (cases, gas components)
         Component amounts, mol; any sign.
     log_a, nu : ndarray, shape (cases, gas components) and (cases,)
-        Start: ln of the components' mole fractions and ln of the gas amount (holding
-        pressure), or of p0 V/RT (holding volume; then log_a is ln of p_k/p0).
+        Start: ln of the components' mole fractions and ln of the gas amount (at a
+        pressure), or of p0 V/RT (in a volume; then log_a is ln of p_k/p0).
     nu_limit : ndarray, shape (cases,)
         A gas grown beyond this cannot be fed by the case: the case stops unclosed.
+    vessel : Vessel, optional
+        Where condensed phases share the volume.
     """
-    m = b.shape[1]
-    reactions, weights = system.reactions, system.weights
-    unknowns = m + 1 if system.holds_pressure else m
+    cases, m = b.shape
+    reactions, weights, extra = system.reactions, system.weights, system.extra
+    unknowns, rows = m + extra, m + (1 if vessel is not None else 0)
     b_up, b_down = np.maximum(-b, 0.0), np.maximum(b, 0.0)
     log_a, nu = log_a.copy(), nu.copy()
+    w = vessel.w.copy() if vessel is not None else np.zeros(cases)
     log_n = log_a @ reactions.T - kappa + nu[:, None]
+    if vessel is not None:
+        log_n += (w - 1.0 / vessel.unit)[:, None] * system.swelling
     n = np.exp(np.clip(log_n, -_EXP_LIMIT, _EXP_LIMIT))
-    closed = np.zeros(len(b), dtype=bool)
-    failed = np.zeros(len(b), dtype=bool)
-    last = np.full(len(b), np.inf)
-    merit_last = np.full(len(b), np.inf)
-    too_large = np.zeros(len(b), dtype=int)
-    step = np.zeros((len(b), unknowns))
-    cut1, cut2 = 2 * m, 2 * m + m * unknowns
-    cut3, cut4 = cut2 + m * unknowns, cut2 + m * unknowns + unknowns
+    closed = np.zeros(cases, dtype=bool)
+    failed = np.zeros(cases, dtype=bool)
+    last = np.full(cases, np.inf)
+    merit_last = np.full(cases, np.inf)
+    too_large = np.zeros(cases, dtype=int)
+    step = np.zeros((cases, unknowns))
+    cut1, cut2 = 2 * rows, 2 * rows + rows * unknowns
+    cut3 = cut2 + rows * unknowns
     iteration = 0
     if unknowns == 0:
-        return GasSolution(n, log_a, nu, ~closed, 0)
+        return GasSolution(n, log_a, nu, w, ~closed, 0)
     while iteration < _MAX_ITERATIONS:
         iteration += 1
         sums = n @ weights
-        P, M = sums[:, :m] + b_up, sums[:, m:cut1] + b_down
-        J = np.empty((len(b), unknowns, unknowns))
-        F = np.empty((len(b), unknowns))
-        J[:, :m] = sums[:, cut1:cut2].reshape(-1, m, unknowns) / P[:, :, None]
-        J[:, :m] -= sums[:, cut2:cut3].reshape(-1, m, unknowns) / M[:, :, None]
-        F[:, :m] = np.log(P / M)
-        if system.holds_pressure:
-            total = sums[:, cut4:]
-            F[:, m] = np.log(total[:, 0]) - nu
-            J[:, m] = sums[:, cut3:cut4] / total
-            J[:, m, m] -= 1.0
+        P, M = sums[:, :rows], sums[:, rows:cut1]
+        P[:, :m] += b_up
+        M[:, :m] += b_down
+        J = np.empty((cases, unknowns, unknowns))
+        F = np.empty((cases, unknowns))
+        if vessel is not None:
+            free = np.exp(nu) * vessel.unit
+            P[:, m] += np.maximum(vessel.left, 0.0)
+            M[:, m] += np.maximum(-vessel.left, 0.0) + free
+        J[:, :rows] = sums[:, cut1:cut2].reshape(-1, rows, unknowns) / P[:, :, None]
+        J[:, :rows] -= sums[:, cut2:cut3].reshape(-1, rows, unknowns) / M[:, :, None]
+        F[:, :rows] = np.log(P / M)
+        if extra:
+            total = sums[:, -1:]
+            F[:, -1] = np.log(total[:, 0]) - nu
+            J[:, -1] = sums[:, cut3:-1] / total
+            J[:, -1, m] -= 1.0
             too_large = np.where(nu > nu_limit, too_large + 1, 0)
+        if vessel is not None:
+            J[:, m, m] -= free / M[:, m]
+            F[:, -1] -= np.log(w * vessel.unit)
+            J[:, -1, -1] -= 1.0 / w
         beyond = (np.maximum(P, M) < _FAINT) | (log_n.max(axis=1) > 300.0)[:, None]
-        beyond |= ~np.isfinite(F[:, :m])
-        if beyond.any():
+        beyond |= ~np.isfinite(F[:, :rows])
+        if vessel is None and beyond.any():
             _rescale(system, log_n, b, nu, beyond, J, F)
         worst = np.abs(F).max(axis=1)
         closed = (worst <= _CLOSED) | ((worst <= 1e-11) & (worst >= 0.5 * last))
@@ -137,6 +199,9 @@ def solve_balances(
         J[~np.isfinite(J)] = 0.0
         F[~np.isfinite(F)] = 0.0
         newton = step if back.all() else _newton_steps(J, F)
+        if vessel is not None:  # densities change by a factor of ten at most
+            fall = np.maximum(-newton[:, -1], newton[:, -1] / 9.0) / (0.9 * w)
+            newton = newton / np.maximum(fall, 1.0)[:, None]
         if back.any():
             # worse than before: return three quarters of the way, and try the rest again
             move = np.where(back[:, None], -0.75 * step, newton)
@@ -146,20 +211,19 @@ def solve_balances(
         merit_last = np.where(back, merit_last, merit)
         last = np.where(back, last, worst)
         move[~active] = 0.0
-        size = np.abs(move).max(axis=1)
+        size = np.abs(move[:, : m + 1]).max(axis=1)
         damp = np.where(back, 1.0, np.minimum(1.0, _MAX_STEP / np.maximum(size, 1e-300)))
         if (damp < 1.0).any():
             move = move * damp[:, None]
             step = np.where(back[:, None], step, step * damp[:, None])
-        change = move[:, :m] @ reactions.T
-        if system.holds_pressure:
-            change += move[:, m:]
         log_a += move[:, :m]
-        if system.holds_pressure:
+        log_n += move @ system.effect.T
+        if extra:
             nu += move[:, m]
-        log_n += change
+        if vessel is not None:
+            w += move[:, -1]
         n = np.exp(np.clip(log_n, -_EXP_LIMIT, _EXP_LIMIT))
-    return GasSolution(n, log_a, nu, closed & ~failed, iteration)
+    return GasSolution(n, log_a, nu, w, closed & ~failed, iteration)
 
 
 def _newton_steps(J: Array, F: Array) -> Array:
@@ -186,15 +250,14 @@ def _rescale(
     may form, so that these balances are solved like all others.
     """
     species, m = system.reactions.shape
-    effect = np.ones((species, J.shape[1]))
-    effect[:, :m] = system.reactions
+    effect = system.effect
     for case, row in zip(*np.nonzero(rows), strict=True):
         column = system.reactions[:, row]
         up = _log_sum(log_n[case], column, effect, -b[case, row])
         down = _log_sum(log_n[case], -column, effect, b[case, row])
         F[case, row] = up[0] - down[0]
         J[case, row] = up[1] - down[1]
-    if system.holds_pressure:
+    if system.extra:
         for case in np.flatnonzero(rows.any(axis=1)):
             value, slope = _log_sum(log_n[case], np.ones(species), effect, 0.0)
             F[case, m] = value - nu[case]

@@ -10,19 +10,21 @@ linear program, which then names the next set; that sequence converges from anyw
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from solver.core.basis import Basis
-from solver.core.mixture import Held, Mixture, R
+from solver.core.mixture import Held, Mixture
 from solver.core.phaseset import Attempt, Case, Problem, restart, solve_set
 from solver.core.simplex import Endless, Simplex
+from solver.core.vessel import TooSmall, fill
 
 Array = NDArray[np.float64]
 
 _MAX_ROUNDS = 80
+_VACUUM = 1e-20  # Pa; no gas feels it
 
 
 class Unsettled(ArithmeticError):
@@ -89,15 +91,46 @@ def minimise(mixture: Mixture, case: Case, held: Held, start: Present | None = N
         The candidates cannot hold the feed.
     Unsettled
         No end within the allowed rounds.
+    TooSmall
+        The vessel cannot hold what must stay condensed.
     """
     problem = Problem(mixture, case, held)
+    if held.V is not None and not problem.gas.size:
+        return _without_gas(mixture, case, held)
     if start is not None:
         basis = mixture.basis(start.members)
         try:
             return _exchange(problem, list(start.active), basis, start.log_a, start.nu, None)
         except (Unsettled, _Stuck):
             pass  # too far: start cold
-    return _from_program(problem)
+    try:
+        return _from_program(problem)
+    except Unsettled:
+        if held.V is None:
+            raise
+    return _by_pressure(problem)
+
+
+def _by_pressure(problem: Problem) -> Minimum:
+    """Meet the volume through the pressure, for vessels that defeat the direct search."""
+    mixture, case, held = problem.mixture, problem.case, problem.held
+
+    def minimum_at(at: Held, last: Minimum | None) -> Minimum:
+        return minimise(mixture, case, at, last.present if last else None)
+
+    guess = float(np.log(0.5 * problem.atoms)) - problem.nu_fixed
+    last, n, p = fill(minimum_at, lambda found: found.n, problem.gas, mixture.volume, held, guess)
+    return replace(last, n=n, p=p)
+
+
+def _without_gas(mixture: Mixture, case: Case, held: Held) -> Minimum:
+    """A vessel whose candidates are all condensed: nothing evaporates, no pressure."""
+    assert held.V is not None
+    found = minimise(mixture, case, Held(held.T, p=_VACUUM))
+    needed = float(found.n @ mixture.volume)
+    if needed > held.V:
+        raise TooSmall(needed)
+    return replace(found, p=0.0)
 
 
 def _from_program(problem: Problem) -> Minimum:
@@ -116,7 +149,8 @@ def _from_program(problem: Problem) -> Minimum:
         if short:
             raise NotHeld(short)
         columns: list[Array] = []
-        for _ in range(_MAX_ROUNDS):
+        # in a volume the program's pressure is a guess: more columns need not help there
+        for _ in range(_MAX_ROUNDS if problem.holds_pressure else 4):
             n, active = _read(problem, program, columns)
             e = mixture.A @ program.potentials - c
             scarce = 1e-40 * problem.scale * np.exp(np.clip(e, -100.0, 0.0))
@@ -171,7 +205,6 @@ def _exchange(
     problem: Problem, active: list[int], basis: Basis, log_a: Array, nu: float, n: Array | None
 ) -> Minimum:
     """Follow the active set from feasible amounts n (None: not known) to the minimum."""
-    A = problem.mixture.A
     for _ in range(_MAX_ROUNDS):
         attempt = solve_set(problem, active, basis, log_a, nu)
         new = attempt.n
@@ -188,7 +221,7 @@ def _exchange(
             basis, log_a, nu = restart(problem, active, np.where(n > 0.0, n, np.abs(new)), attempt)
             continue
         n = new
-        force = A @ attempt.potentials - problem.c
+        force = attempt.force.copy()
         force[active] = -np.inf
         force[problem.gas] = -np.inf
         entering = int(np.argmax(force))
@@ -217,9 +250,5 @@ def _enter(j: int, active: list[int], n: Array, basis: Basis) -> tuple[list[int]
 
 
 def _finish(problem: Problem, active: list[int], attempt: Attempt) -> Minimum:
-    p = problem.held.p
-    if p is None:
-        assert problem.held.V is not None
-        p = float(attempt.n[problem.gas].sum()) * R * problem.held.T / problem.held.V
     present = Present(tuple(active), attempt.basis.members, attempt.log_a, attempt.log_gas)
-    return Minimum(attempt.n, attempt.potentials, p, present, attempt.basis, attempt.gas)
+    return Minimum(attempt.n, attempt.potentials, attempt.p, present, attempt.basis, attempt.gas)

@@ -57,6 +57,13 @@ class Mixture:
         return self._bases[key]
 
 
+def condensed_volume(species: Species) -> float:
+    """Molar volume of a condensed species, m3/mol; zero for a gas or where none is known."""
+    if species.phase == "gas" or species.molar_volume is None:
+        return 0.0
+    return float(species.molar_volume)
+
+
 def make_mixture(species: Sequence[Species], rows: Mapping[str, int]) -> Mixture:
     """Gather the arrays of candidates whose elements all have a row."""
     A = np.array([formula_vector(sp, rows) for sp in species]).reshape(-1, len(rows))
@@ -75,7 +82,7 @@ def make_mixture(species: Sequence[Species], rows: Mapping[str, int]) -> Mixture
         condensed=np.flatnonzero(~is_gas),
         rank=int(np.linalg.matrix_rank(A)) if len(species) else 0,
         thermo=ThermoTable(species),
-        volume=np.zeros(len(species)),
+        volume=np.array([condensed_volume(sp) for sp in species]),
         atoms=atoms,
     )
 

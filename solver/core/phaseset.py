@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from solver.core.balance import GasSolution, GasSystem, solve_balances
+from solver.core.balance import GasSolution, GasSystem, Vessel, solve_balances
 from solver.core.basis import Basis, choose_members, component_amounts
 from solver.core.descent import descend
 from solver.core.forced import Sink, combined, infeasible, one_sided
@@ -41,7 +41,7 @@ class Problem:
     Attributes
     ----------
     c : ndarray, shape (species,)
-        g/RT, for gases at the pressure held (at 1 bar where the volume is held).
+        g/RT at the pressure held, or at 1 bar where the volume is held.
     nu_fixed : float
         ln of p0 V/RT where the volume is held.
     force_tolerance : float
@@ -59,6 +59,7 @@ class Problem:
         self.c = g.copy()
         if held.p is not None:
             self.c[self.gas] += float(np.log(held.p / P0))
+            self.c += mixture.volume * ((held.p - P0) / (R * held.T))
         else:
             assert held.V is not None
             self.nu_fixed = float(np.log(P0 * held.V / (R * held.T)))
@@ -68,6 +69,18 @@ class Problem:
     def holds_pressure(self) -> bool:
         """Whether the gas may take any volume."""
         return self.held.p is not None
+
+    def pressure(self, n: Array) -> float:
+        """Pressure of the gas in what the condensed phases leave of the volume, Pa.
+
+        Zero where nothing evaporates: a vessel with involatile solids alone.
+        """
+        assert self.held.V is not None
+        gas = float(n[self.gas].sum())
+        left = self.held.V - float(n @ self.mixture.volume)
+        if left <= 0.0:
+            return 0.0 if gas == 0.0 else np.inf
+        return gas * R * self.held.T / left
 
     def members(self, active: Sequence[int], amounts: Array) -> list[int]:
         """Components: the active condensed phases, then the most abundant gases."""
@@ -96,7 +109,11 @@ class Attempt:
     log_a : ndarray, shape (gas components,)
         ln activity of the gas components, in the order of the basis.
     log_gas : float
-        nu: ln of the gas amount (pressure held) or of p0 V/RT.
+        nu: ln of the gas amount (pressure held) or of p0 V/RT of the volume left to it.
+    p : float
+        Pressure, Pa.
+    force : ndarray, shape (species,)
+        ln activity of every species at the potentials and the pressure reached.
     gas : ndarray
         Gas species that are not forced to zero.
     """
@@ -108,6 +125,8 @@ class Attempt:
     stuck_with: Array | None
     log_a: Array
     log_gas: float
+    p: float
+    force: Array
     gas: NDArray[np.intp]
 
 
@@ -154,14 +173,13 @@ def _solve_over(
     live = np.ones(gas.size, dtype=bool)
     rows = list(gas_rows)
     sinks = one_sided(reactions, b, live, rows)
-    result = _solve_gas(problem, reactions, kappa, b, start, nu, live, rows)
+    result = _solve_gas(problem, active, basis, reactions, kappa, b, start, nu, live, rows)
     if not result.closed and sum(b[k] == 0.0 for k in rows) > 1:
         more = combined(reactions, b, live, rows)
         if more:
             sinks += more
-            result = _solve_gas(problem, reactions, kappa, b, start, nu, live, rows)
+            result = _solve_gas(problem, active, basis, reactions, kappa, b, start, nu, live, rows)
     mu = c[members] + result.log_a
-    _sink(problem, mu, sinks, basis, gas[live])
     n = np.zeros(len(c))
     n[gas[live]] = result.n
     for k, m in enumerate(members):
@@ -169,18 +187,27 @@ def _solve_over(
             n[m] = b[k] - float(reactions[:, k] @ n[gas])
             if -16.0 * _EPS * abs(b[k]) <= n[m] < 0.0:
                 n[m] = 0.0
+    p = problem.held.p
+    if p is None:
+        p = problem.pressure(n)
+        c = c + problem.mixture.volume * ((p - P0) / (R * problem.held.T))
+        mu = c[members] + result.log_a
+    _sink(c, mu, sinks, basis, gas[live])
     stuck_with = None
     if not result.closed:
         stuck_with = np.zeros(len(c))
         stuck_with[gas[live]] = result.y
+    force = basis.reactions @ mu - c
     return Attempt(
         n=n,
         potentials=basis.potentials(mu),
         basis=basis,
-        activity=np.exp(np.clip(basis.reactions @ mu - c, -_EXP_LIMIT, _EXP_LIMIT)),
+        activity=np.exp(np.clip(force, -_EXP_LIMIT, _EXP_LIMIT)),
         stuck_with=stuck_with,
         log_a=(mu - c[members])[gas_rows],
         log_gas=result.nu,
+        p=p,
+        force=force,
         gas=gas[live],
     )
 
@@ -196,6 +223,8 @@ class _GasResult:
 
 def _solve_gas(
     problem: Problem,
+    active: Sequence[int],
+    basis: Basis,
     reactions: Array,
     kappa: Array,
     b: Array,
@@ -217,7 +246,11 @@ def _solve_gas(
     grows = problem.holds_pressure and not homogeneous
     nu_start = nu if grows else (0.0 if homogeneous else problem.nu_fixed)
     limit = float(np.log(4.0 * problem.atoms)) + 2.0 if grows else np.inf
-    system = GasSystem.of(part, grows)
+    vessel = None
+    swelling = None
+    if not problem.holds_pressure:
+        swelling, vessel = _shared(problem, basis, active, b, live)
+    system = GasSystem.of(part, grows, swelling)
 
     def solve(log_a: Array, nu: float) -> GasSolution:
         return solve_balances(
@@ -227,6 +260,7 @@ def _solve_gas(
             log_a[None, :],
             np.array([nu]),
             np.array([limit]),
+            vessel,
         )
 
     solution = solve(start[rows], nu_start)
@@ -242,13 +276,31 @@ def _solve_gas(
     return _GasResult(n, y, log_a, float(solution.nu[0]), closed)
 
 
-def _sink(
-    problem: Problem, mu: Array, sinks: list[Sink], basis: Basis, live: NDArray[np.intp]
-) -> None:
+def _shared(
+    problem: Problem,
+    basis: Basis,
+    active: Sequence[int],
+    b: Array,
+    live: NDArray[np.bool_],
+) -> tuple[Array | None, Vessel | None]:
+    """The vessel as the condensed phases share it; None where they take no room."""
+    V, T = problem.held.V, problem.held.T
+    assert V is not None
+    taken = set(active)
+    room = np.array([problem.mixture.volume[m] if m in taken else 0.0 for m in basis.members])
+    if not room.any():
+        return None, None
+    swelling = basis.reactions[problem.gas[live]] @ room
+    left = V - float(room @ b)
+    unit = R * T / P0
+    w = 0.5 * problem.atoms / V if left <= 0.0 else 1.0 / unit
+    return swelling, Vessel(np.array([left]), np.array([unit]), np.array([w]))
+
+
+def _sink(c: Array, mu: Array, sinks: list[Sink], basis: Basis, live: NDArray[np.intp]) -> None:
     """Lower the potentials of forced-out combinations until nothing made of them counts."""
     if not sinks:
         return
-    c = problem.c
     others = np.ones(len(c), dtype=bool)
     others[live] = False
     members = list(basis.members)

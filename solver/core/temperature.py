@@ -104,6 +104,7 @@ def find_temperature(
     T = start.T if start else min(max(_FIRST_T, search.T_low), search.T_high)
     present = start.present if start else None
     before_last = last = np.inf  # size of the two excesses before
+    creeps = 0
     for _ in range(_MAX_EVALUATIONS):
         point = point_at(mixture, case, search.held(T), present, search.variable)
         present = point.present
@@ -123,6 +124,8 @@ def find_temperature(
         if abs(step) <= 2.0 * np.spacing(T) and abs(excess) <= 1e-11 * size:
             return point  # rounding decides
         if low is None or high is None:
+            creeps = creeps + 1 if abs(excess) > 0.3 * last else 0
+            step *= 4.0**creeps  # the slope leaves out what condensed phases add: get across
             limits = max(0.4 * T, search.T_low), min(2.5 * T, search.T_high)
             T = float(np.clip(T + step, *limits))
         else:

@@ -19,6 +19,7 @@ if TYPE_CHECKING:
     from species_db import Species
 
 GAS_MODELS = ("ideal",)
+MOST = 1e30  # mol
 
 
 @dataclass(frozen=True, slots=True)
@@ -89,11 +90,11 @@ def checked_amount(key: str, amount: object) -> float:
         number = float(amount)  # type: ignore[arg-type]
     except (TypeError, ValueError):
         number = math.nan
-    if not math.isfinite(number) or number < 0.0:
+    if not 0.0 <= number <= MOST:
         raise InputError(
-            f"The amount of {key} is {amount}; give a number of moles, zero or more.",
+            f"The amount of {key} is {amount}; give a number of moles from 0 to {MOST:.0e}.",
             f"feed[{key}]",
             amount,
-            "0 or more mol",
+            f"0 to {MOST:.0e} mol",
         )
     return number

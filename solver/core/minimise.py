@@ -19,7 +19,7 @@ from solver.core.basis import Basis
 from solver.core.mixture import Held, Mixture
 from solver.core.phaseset import Attempt, Case, Problem, restart, solve_set
 from solver.core.simplex import Endless, Simplex
-from solver.core.vessel import TooSmall, fill
+from solver.core.vessel import TooSmall, Unfilled, fill
 
 Array = NDArray[np.float64]
 

@@ -31,6 +31,10 @@ class TooSmall(ArithmeticError):
         self.needed = needed
 
 
+class Unfilled(ArithmeticError):
+    """The search for the pressure did not end."""
+
+
 def fill(
     minimum_at: Callable[[Held, M | None], M],
     amounts_of: Callable[[M], Array],
@@ -64,6 +68,9 @@ def fill(
     Raises
     ------
     TooSmall
+        The vessel cannot hold what must stay condensed.
+    Unfilled
+        No end within the allowed evaluations.
     """
     assert held.V is not None
     ends: dict[bool, tuple[float, float, Array, M]] = {}  # by "needs more than the vessel"
@@ -89,7 +96,7 @@ def fill(
             room = max(held.V - condensed, 1e-3 * held.V)
             step = float(np.log(max(filled - condensed, 1e-300) / room))
             slow += 1
-            step = np.sign(step) * min(max(abs(step), 1e-3 * 4.0**slow), 60.0)
+            step = (1.0 if larger else -1.0) * min(max(abs(step), 1e-3 * 4.0**slow), 60.0)
             log_p = float(np.clip(log_p + step, _LOWEST, _HIGHEST))
             continue
         low, high = ends[True], ends[False]
@@ -104,4 +111,4 @@ def fill(
         if slow % 2 or not low[0] < proposal < high[0]:
             proposal = 0.5 * (low[0] + high[0])
         log_p = float(proposal)
-    raise ArithmeticError("no pressure fills the vessel")
+    raise Unfilled("no pressure fills the vessel")

@@ -119,7 +119,12 @@ def _by_pressure(problem: Problem) -> Minimum:
         return minimise(mixture, case, at, last.present if last else None)
 
     guess = float(np.log(0.5 * problem.atoms)) - problem.nu_fixed
-    last, n, p = fill(minimum_at, lambda found: found.n, problem.gas, mixture.volume, held, guess)
+    try:
+        last, n, p = fill(
+            minimum_at, lambda found: found.n, problem.gas, mixture.volume, held, guess
+        )
+    except Unfilled as error:
+        raise Unsettled(str(error)) from None
     return replace(last, n=n, p=p)
 
 

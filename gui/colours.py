@@ -13,6 +13,7 @@ from PySide6.QtGui import QColor
 
 from gui.theme import Tokens, readable
 
+# Those of "muted" that lie close to one of "bright" come last, where curves are dashed.
 PALETTE = (
     "#4477AA",
     "#66CCEE",
@@ -21,17 +22,17 @@ PALETTE = (
     "#CCBB44",
     "#AA3377",
     "#332288",
-    "#88CCEE",
     "#44AA99",
-    "#117733",
     "#999933",
+    "#88CCEE",
+    "#117733",
     "#DDCC77",
     "#CC6677",
     "#882255",
     "#AA4499",
 )
 # The species most cases show have a fixed seat, so that they look the same in every project.
-_SEATS = {"H2": 0, "H2O": 1, "CO": 2, "CO2": 3, "CH4": 4, "N2": 5, "O2": 8, "C(gr)": 6}
+_SEATS = {"H2": 0, "H2O": 1, "CO": 2, "CO2": 3, "CH4": 4, "N2": 5, "O2": 7, "C(gr)": 6}
 _DASHES = (Qt.PenStyle.SolidLine, Qt.PenStyle.DashLine, Qt.PenStyle.DotLine)
 DIRECT = 9
 """Seats that are drawn solid; later ones carry a dash pattern as a second sign."""

@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 from gui.jobs import Stopped
 from solver.project.model import Case
 from solver.project.units import to_si
+from solver.project.wording import formula_text
 
 if TYPE_CHECKING:
     from solver.project.case import CaseAnswer
@@ -52,7 +53,7 @@ def composition_line(
     high: float,
     progress: Callable[[float], None],
     should_stop: Callable[[], bool],
-    points: int = POINTS,
+    points: int | None = None,
     settle: Any = None,
 ) -> Line:
     """Settle `answer`'s feed over temperatures from `low` to `high` (K).
@@ -65,6 +66,7 @@ def composition_line(
     from solver.errors import SettleError
 
     began = perf_counter()
+    points = POINTS if points is None else points
     end = answer.end
     sealed = end.fixed.pair.endswith("V")
     species = answer.prepared.candidates
@@ -109,11 +111,26 @@ def shown_keys(line: Line, logarithmic: bool, most: int = 14) -> list[str]:
 
 
 def phase_changes(line: Line) -> list[tuple[float, str]]:
-    """Temperatures (K) at which a condensed phase appears or goes, with its name in words."""
-    out = []
+    """Temperatures (K) at which condensed phases appear or go on heating, each in words.
+
+    Changes between the same two points share a place: "Fe3O4(s) gone, Fe(s) forms".
+    """
+    words: dict[int, list[str]] = {}
     for key in line.condensed:
         present = line.shares[:, line.keys.index(key)] > 0
         for i in np.flatnonzero(present[1:] != present[:-1]):
-            word = "forms" if present[i + 1] else "gone"
-            out.append((float(line.T[i] + line.T[i + 1]) / 2, f"{key} {word}"))
-    return sorted(out)
+            text = f"{formula_text(key)} {'forms' if present[i + 1] else 'gone'}"
+            words.setdefault(int(i), []).append(text)
+    return [
+        (float(line.T[i] + line.T[i + 1]) / 2, _joined(sorted(texts, key=_gone_first)))
+        for i, texts in sorted(words.items())
+    ]
+
+
+def _joined(texts: list[str], most: int = 2) -> str:
+    more = f" and {len(texts) - most} more" if len(texts) > most else ""
+    return ", ".join(texts[:most]) + more
+
+
+def _gone_first(text: str) -> tuple[bool, str]:
+    return text.endswith("forms"), text

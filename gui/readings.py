@@ -57,7 +57,8 @@ def _typed(quantities: list[Quantity | None], kind: str, default: str) -> str:
 def scaled(si: float, steps: tuple[tuple[float, str], ...]) -> tuple[float, str]:
     """`si` in the largest of the units whose factor it reaches; steps from small to large."""
     size = abs(si)
-    chosen = steps[0]
+    # Nothing is said in the unit of the middle: 0 kJ, 0 kW.
+    chosen = steps[0] if size else steps[min(1, len(steps) - 1)]
     for factor, unit in steps:
         if size >= factor * 0.9995:
             chosen = (factor, unit)

@@ -69,12 +69,13 @@ class Session(QObject):
         self.messages = Messages(self)
         self.colours = SpeciesColours()
         self.undo_stack = QUndoStack(self)
-        self.undo_stack.cleanChanged.connect(self._say_file_changed)
+        self.undo_stack.cleanChanged.connect(lambda _: self.file_changed.emit())
         self.path: Path | None = None
         self.document = Document(Project())
         self.answer = Answer("settling")
         self._good: list[tuple[Case, CaseAnswer]] = []
         self._visits = 0
+        self._closed = False
         self._channel = Channel(self)
         self._channel.finished.connect(self._settled)
         self._channel.failed.connect(self._failed)
@@ -151,8 +152,11 @@ class Session(QObject):
 
     def close(self) -> None:
         """Stop settling; waits for the worker."""
-        # A dying stack tells of its state once more, to a session that is no longer whole.
-        self.undo_stack.cleanChanged.disconnect(self._say_file_changed)
+        if self._closed:
+            return
+        self._closed = True
+        # A dying stack tells of its state once more, to listeners that are no longer whole.
+        self.undo_stack.blockSignals(True)
         self._throttle.stop()
         self._channel.close()
 
@@ -166,9 +170,6 @@ class Session(QObject):
         self._channel.cancel()
         fault = Fault("", "Settling was stopped. Any edit starts it again.")
         self._answer(Answer("faulty", self.answer.value, (fault,)))
-
-    def _say_file_changed(self) -> None:
-        self.file_changed.emit()
 
     # -- settling
 

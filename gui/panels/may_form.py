@@ -108,7 +108,7 @@ class MayForm(Card):
         self.view.horizontalHeader().hide()
         self.view.horizontalHeader().setSectionResizeMode(1, QHeaderView.ResizeMode.Stretch)
         self.view.setColumnWidth(0, 124)
-        self.view.setColumnWidth(2, 132)
+        self.view.setColumnWidth(2, 146)
         self.view.setMinimumHeight(ROW_HEIGHT * 2)
         self.body.addWidget(self.view, 1)
         self.search = QLineEdit()
@@ -166,6 +166,9 @@ class MayForm(Card):
         self._names |= {sp.key: sp.name for sp in species}
         keys = [sp.key for sp in species]
         wanted = dict.fromkeys([*keys, *wish.added, *wish.excluded])
+        if not self._order:
+            keys = sorted(keys, key=_by_fate(answer.value.end))
+            wanted = dict.fromkeys([*keys, *wish.added, *wish.excluded])
         self._order = [k for k in self._order if k in wanted]
         self._order += [k for k in wanted if k not in self._order]
         remarks = self._remarks(answer.value.end) if settled else {}
@@ -175,14 +178,22 @@ class MayForm(Card):
                 for k in self._order
             ]
         )
+        self._span()
         self._show_chips({e for sp in answer.value.prepared.feed for e in sp.elements})
         self.remark.setText(f"{len(keys)} species" if settled else "")
         out = wish.excluded
         self.excluded.setText("excluded: " + ", ".join(out) if out else "")
         self.excluded.setVisible(bool(out))
 
+    def _span(self) -> None:
+        """A name without a remark beside it may run to the edge."""
+        self.view.clearSpans()
+        for i, row in enumerate(self.model.rows):
+            if not row.remark:
+                self.view.setSpan(i, 1, 1, 2)
+
     def _remarks(self, end) -> dict[str, str]:  # type: ignore[no-untyped-def]
-        out = {k: f"absent, activity {number_text(a, 2)}" for k, a in end.proof.absent.items()}
+        out = {k: f"activity {number_text(a, 2)}, absent" for k, a in end.proof.absent.items()}
         out |= {k: "forms" for k, n in end.phase_amounts.items() if k != "gas" and n > 0}
         return out | dict.fromkeys(end.outside_range, "outside data range")
 
@@ -296,6 +307,15 @@ def _library_key(text: str) -> str:
         return species_db.load().resolve(text)
     except species_db.UnknownSpecies as error:
         raise KeyError(str(unknown_species(error, "candidates.added"))) from None
+
+
+def _by_fate(end):  # type: ignore[no-untyped-def]
+    """The most abundant first, then the condensed ones by how near they are to forming."""
+
+    def key(species: str) -> tuple[float, float]:
+        return -end.amounts.get(species, 0.0), -end.proof.absent.get(species, 0.0)
+
+    return key
 
 
 def _hill(symbol: str) -> tuple[int, str]:

@@ -41,9 +41,11 @@ class FiguresTable(QWidget):
             self.table.setColumnWidth(column, 118)
         self.table.setColumnWidth(0, self._first)
 
-    def text_column(self, column: int) -> None:
-        """A column of words that takes the room that is left."""
+    def text_column(self, column: int, stretch: bool = True) -> None:
+        """A column of words, which may take the room that is left."""
         self.table.setItemDelegateForColumn(column, self._cells)
+        if not stretch:
+            return
         self.table.horizontalHeader().setSectionResizeMode(column, QHeaderView.ResizeMode.Stretch)
 
 
@@ -94,6 +96,7 @@ class EnergyView(FiguresTable):
             first = None if a is None else convert(a)
             second = convert(b)
             change = None if first is None else second - first
+            first = "differs" if first is None else first
             rows.append((f"{words}, {unit_text(unit)}", first, second, change))
 
         add("temperature", fed.T, end.T, units.T, lambda x: from_si(x, units.T, "temperature"))

@@ -16,8 +16,7 @@ MEANING = {
     "the largest total.",
     "trace closure": "The same for each element over its own total, so that traces count.",
     "energy closure": "Distance of the energy or entropy from the value held, over nRT.",
-    "gap": "No mixture of the candidates has a Gibbs energy lower by more than this, over nRT. "
-    "It is a bound by weak duality, independent of the path taken.",
+    "gap": "No mixture of the candidates lies lower in Gibbs energy by more than this, over nRT.",
 }
 
 
@@ -66,9 +65,9 @@ class ProofView(QWidget):
         ]
         figures = self.figures
         figures.model.show(("figure", "value", "limit", "what it means"), rows, stale)
-        figures.text_column(3)
-        figures.table.setWordWrap(True)
-        figures.table.setColumnWidth(1, 92)
+        for column in (1, 2, 3):
+            figures.text_column(column, stretch=column == 3)
+        figures.table.setColumnWidth(1, 104)
         figures.table.setColumnWidth(2, 74)
         figures.table.setFixedHeight(24 + 26 * len(rows) + 2)
         names = {sp.key: sp.name for sp in end.species}
@@ -83,7 +82,8 @@ class ProofView(QWidget):
         )
         self.absent.setVisible(bool(near))
         self.model_line.say(
-            proof.model + " A condensed candidate forms where its activity would reach 1."
+            proof.model + " The gap is a bound by weak duality, whatever way the state was found."
+            " A condensed candidate forms where its activity would reach 1."
         )
 
 

@@ -22,7 +22,7 @@ class ShareAxis(pg.AxisItem):
     def tickValues(self, minVal: float, maxVal: float, size: float):  # type: ignore[no-untyped-def]
         """Whole decades in the logarithmic view."""
         if not self.decades:
-            return super().tickValues(minVal, maxVal, size)
+            return few(super().tickValues(minVal, maxVal, size))
         low, high = math.ceil(minVal - 1e-9), math.floor(maxVal + 1e-9)
         step = max(1, math.ceil((high - low) * 24 / max(size, 1)))
         return [(float(step), [float(v) for v in range(high, low - 1, -step)])]
@@ -35,11 +35,25 @@ class ShareAxis(pg.AxisItem):
 
 
 class PlainAxis(pg.AxisItem):
-    """Whole numbers, never with a power of ten factored out."""
+    """Whole numbers, never with a power of ten factored out, and few grid lines."""
+
+    def tickValues(self, minVal: float, maxVal: float, size: float):  # type: ignore[no-untyped-def]
+        """The coarsest ticks that are at least four, so that the grid stays light."""
+        return few(super().tickValues(minVal, maxVal, size))
 
     def tickStrings(self, values: list[float], scale: float, spacing: float) -> list[str]:
         """Numbers without padding."""
         return [f"{v:g}".replace("-", "−") for v in values]
+
+
+def few(levels, least: int = 4):  # type: ignore[no-untyped-def]
+    """The coarsest levels of ticks that together are `least` or more, as one level."""
+    ticks: list[float] = []
+    for spacing, values in levels:
+        ticks += list(values)
+        if len(ticks) >= least:
+            return [(spacing, sorted(ticks))]
+    return levels
 
 
 def decade_text(power: int) -> str:

@@ -115,7 +115,7 @@ class CompositionPlot(QWidget):
             axis.setPen(QPen(QColor(t.line), 1))
             axis.setTextPen(QPen(QColor(t.muted)))
             axis.setTickFont(small)
-            axis.setStyle(tickLength=0, tickTextOffset=6)
+            axis.setStyle(tickLength=0, tickTextOffset=6, hideOverlappingLabels=False)
             axis.setGrid(70 if not t.dark else 110)
         style = {"color": t.muted, "font-size": f"{small.pointSizeF():.1f}pt"}
         self.bottom.setLabel(f"temperature, {unit_text(self._unit)}", **style)
@@ -177,17 +177,17 @@ class CompositionPlot(QWidget):
 
     def _draw_changes(self, item: pg.PlotItem, font: QFont) -> None:
         t = self._theme.tokens
-        for n, (T, words) in enumerate(phase_changes(self._line) if self._line else []):
-            key, _, what = words.rpartition(" ")
+        for T, words in phase_changes(self._line) if self._line else []:
             rule = pg.InfiniteLine(
                 float(self._x(T)),
                 angle=90,
                 pen=QPen(QColor(t.line), 1, Qt.PenStyle.DashLine),
-                label=f"{formula_text(key)} {what}",
+                label=words,
                 labelOpts={
-                    "position": 0.95 - 0.08 * (n % 3),
+                    "position": 0.98,
                     "color": t.muted,
-                    "anchors": [(1.0, 0.5), (0.0, 0.5)],
+                    "rotateAxis": (1, 0),
+                    "anchors": [(1.0, 1.0), (1.0, 1.0)],
                 },
             )
             rule.pen.setCosmetic(True)
@@ -234,7 +234,7 @@ class CompositionPlot(QWidget):
             y = (FLOOR + 2.0, 2.0)
         else:
             at = [line.keys.index(k) for k in self._keys]
-            top = float(np.nanmax(np.nan_to_num(line.shares[:, at]))) * 100 if at else 1.0
+            top = float(np.nan_to_num(line.shares[:, at]).max()) * 100 if at else 1.0
             y = (0.0, min(top * 1.06, 102.0) if top > 0 else 1.0)
         item.getViewBox().setRange(xRange=(x[0], x[-1]), yRange=y, padding=0)
 

@@ -25,7 +25,7 @@ class EndLabels(pg.AxisItem):
 
     def placed(self) -> list[tuple[str, float, float, QColor]]:
         """(text, y of the curve's end, y of the label, colour) in pixels, from the top."""
-        box = self.boundingRect()
+        box = self._box()
         view = self.linkedView()
         if view is None or not self._labels:
             return []
@@ -42,9 +42,13 @@ class EndLabels(pg.AxisItem):
         places = spread([y for _, y, _ in inside], height, box.top(), box.bottom())
         return [(t, y, at, c) for (t, y, c), at in zip(inside, places, strict=True)]
 
+    def _box(self) -> QRectF:
+        """The axis's own place; its bounding rectangle reaches beyond the plot."""
+        return self.mapRectFromParent(self.geometry())
+
     def paint(self, p: QPainter, opt, widget) -> None:  # type: ignore[no-untyped-def]
         """Names and, where a name had to move, a hair line to its curve."""
-        box = self.boundingRect()
+        box = self._box()
         p.setRenderHint(QPainter.RenderHint.TextAntialiasing)
         p.setFont(self._font)
         metrics = QFontMetricsF(self._font)

@@ -33,6 +33,7 @@ class CompositionModel(QAbstractTableModel):
         self._rows: list[_Row] = []
         self._units = Units()
         self._stale = False
+        self._full = 1.0
         self.logarithmic = False
 
     @property
@@ -48,8 +49,10 @@ class CompositionModel(QAbstractTableModel):
             new += [*(["Gas"] if condensed else []), *gases]
         if condensed:
             new += ["Condensed, as share of the whole", *condensed]
-        units_changed = units != self._units
+        heads = (self._units, self._full)
         self._units = units
+        top = max((r.share for r in (*gases, *condensed)), default=1.0)
+        self._full = min(math.ceil(top * 10 - 1e-9) / 10, 1.0) or 1.0
         if len(new) == len(self._rows):
             self._rows = new
             self.repaint()
@@ -57,7 +60,7 @@ class CompositionModel(QAbstractTableModel):
             self.beginResetModel()
             self._rows = new
             self.endResetModel()
-        if units_changed:
+        if heads != (self._units, self._full):
             self.headerDataChanged.emit(Qt.Orientation.Horizontal, 0, MASS)
 
     def clear(self) -> None:
@@ -77,6 +80,7 @@ class CompositionModel(QAbstractTableModel):
         """Draw the bars over decades."""
         self.logarithmic = on
         self.repaint()
+        self.headerDataChanged.emit(Qt.Orientation.Horizontal, BAR, BAR)
 
     def repaint(self) -> None:
         """Values changed, rows did not."""
@@ -97,7 +101,9 @@ class CompositionModel(QAbstractTableModel):
             return None
         if role == Qt.ItemDataRole.DisplayRole:
             amount = unit_text(self._units.amount)
-            bar = "share, one decade a step" if self.logarithmic else "share"
+            bar = f"share, 0 to {100 * self._full:.0f} %"
+            if self.logarithmic:
+                bar = f"share, {DECADES:.0f} decades to 100 %"
             return ("species", "", bar, "mol %", amount, "mass %")[section]
         if role == COPY_ROLE:
             return ("species", "name", "", "mol %", self._units.amount, "mass %")[section]
@@ -134,7 +140,7 @@ class CompositionModel(QAbstractTableModel):
                 self._stale,
             )
         if role == MUTED_ROLE:
-            return self._stale or column == NAME
+            return self._stale or column in (NAME, BAR)
         if role == WARNING_ROLE:
             return row.outside and column == SPECIES and not self._stale
         if role == Qt.ItemDataRole.ToolTipRole:
@@ -171,4 +177,6 @@ class CompositionModel(QAbstractTableModel):
     def _bar(self, share: float) -> float:
         if share <= 0:
             return 0.0
-        return max(1.0 + math.log10(share) / DECADES, 0.0) if self.logarithmic else share
+        if self.logarithmic:
+            return max(1.0 + math.log10(share) / DECADES, 0.0)
+        return share / self._full

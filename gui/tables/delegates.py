@@ -86,7 +86,7 @@ class FigureDelegate(CellDelegate):
     """Aligns figures on the decimal point."""
 
     def __init__(
-        self, theme: Theme, decimals: str = ".0000", parent: QObject | None = None
+        self, theme: Theme, decimals: str = ".00000", parent: QObject | None = None
     ) -> None:
         super().__init__(theme, parent)
         self._room = decimals
@@ -128,6 +128,8 @@ class BarDelegate(CellDelegate):
             share, colour, muted = bar
             rect = option.rect.adjusted(PAD, 6, -PAD, -7)
             width = round(rect.width() * share)
+            if share > 0 and not index.data(Qt.ItemDataRole.DisplayRole):
+                width = max(width, 2)
             if width >= 2:
                 t = self.theme.tokens
                 fill = mixed(colour, t.panel, 0.6) if muted else colour

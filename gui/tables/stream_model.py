@@ -43,16 +43,18 @@ class StreamModel(QAbstractTableModel):
     def refresh(self) -> None:
         """Follow the session, without resetting an open editor's row."""
         new, old = self._read(), self._amounts
-        if len(new) > len(old):
+        more = len(new) - len(old)
+        if more > 0:
+            # Rows come after the empty one, which then is filled: an editor in it stays open.
             self.beginInsertRows(_TOP, len(old) + 1, len(new))
-            self._amounts = new
+            self._amounts = (*old, *(Amount(species="", value="", unit=""),) * more)
             self.endInsertRows()
-        elif len(new) < len(old):
+        elif more < 0:
             same = next(
                 (i for i, (a, b) in enumerate(zip(old, new, strict=False)) if a != b), len(new)
             )
-            self.beginRemoveRows(_TOP, same, same + len(old) - len(new) - 1)
-            self._amounts = new
+            self.beginRemoveRows(_TOP, same, same - more - 1)
+            self._amounts = (*old[:same], *old[same - more :])
             self.endRemoveRows()
         self._amounts = new
         self.changed()
@@ -112,9 +114,8 @@ class StreamModel(QAbstractTableModel):
             )
             return int(side | Qt.AlignmentFlag.AlignVCenter)
         if row == len(self._amounts):
-            if role == Qt.ItemDataRole.DisplayRole and column == SPECIES:
-                return "add a species"
-            return "" if role == Qt.ItemDataRole.EditRole else None
+            texts = (Qt.ItemDataRole.EditRole, Qt.ItemDataRole.DisplayRole)
+            return "" if role in texts and column != SHARE else None
         if role in (Qt.ItemDataRole.DisplayRole, Qt.ItemDataRole.EditRole, COPY_ROLE):
             return self._text(self._amounts[row], row, column, role)
         if role in (FAULT_ROLE, Qt.ItemDataRole.ToolTipRole):

@@ -2,9 +2,16 @@
 
 from __future__ import annotations
 
-from PySide6.QtCore import QAbstractItemModel, QEvent, QModelIndex, QObject, QSize, Qt, Signal
+from PySide6.QtCore import QModelIndex, QObject, QSize, Qt, Signal
 from PySide6.QtGui import QGuiApplication, QKeyEvent, QKeySequence
-from PySide6.QtWidgets import QAbstractItemView, QCompleter, QHeaderView, QTableView, QWidget
+from PySide6.QtWidgets import (
+    QAbstractItemDelegate,
+    QAbstractItemView,
+    QCompleter,
+    QHeaderView,
+    QTableView,
+    QWidget,
+)
 
 from gui import edits
 from gui.fields.species_completer import SpeciesCompleter
@@ -107,8 +114,10 @@ class StreamView(QTableView):
             self._edit(edits.insert_amount, max(at.row(), 0), "insert row")
         elif alt and key in (Qt.Key.Key_Up, Qt.Key.Key_Down):
             self.move_row(-1 if key == Qt.Key.Key_Up else 1)
-        elif key in (Qt.Key.Key_Return, Qt.Key.Key_Enter) and at.isValid():
-            self.edit(at)
+        elif key in (Qt.Key.Key_Return, Qt.Key.Key_Enter):
+            # An editor passes its Enter on to here; then there is nothing to open.
+            if at.isValid() and self.state() != QAbstractItemView.State.EditingState:
+                self.edit(at)
         else:
             super().keyPressEvent(event)
 
@@ -140,14 +149,15 @@ class StreamView(QTableView):
         case = change(self._session.case, self._model.stream, where)
         self._session.edit_case(case, label)
 
-    def closeEditor(self, editor: QWidget, hint) -> None:  # type: ignore[no-untyped-def]
-        """After Enter in the last column the next row's species is the next cell to type."""
+    def closeEditor(self, editor: QWidget, hint: QAbstractItemDelegate.EndEditHint) -> None:
+        """Enter goes on: from species to amount, from there to the next row."""
         super().closeEditor(editor, hint)
-        self.setFocus()
-
-    def setModel(self, model: QAbstractItemModel | None) -> None:
-        """Start in the first cell."""
-        super().setModel(model)
+        if hint != QAbstractItemDelegate.EndEditHint.SubmitModelCache:
+            return
+        at = self.currentIndex()
+        row, column = (at.row(), AMOUNT) if at.column() == SPECIES else (at.row() + 1, SPECIES)
+        if row < self._model.rowCount():
+            self.setCurrentIndex(self._model.index(row, column))
 
 
 class _SpeciesDelegate(EditDelegate):
@@ -179,6 +189,3 @@ def _unit_completer(parent: QObject) -> QCompleter:
     completer.setCaseSensitivity(Qt.CaseSensitivity.CaseInsensitive)
     completer.setFilterMode(Qt.MatchFlag.MatchStartsWith)
     return completer
-
-
-__all__ = ["QEvent", "StreamView"]

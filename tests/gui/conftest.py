@@ -44,9 +44,10 @@ def preferences(tmp_path):
 
 
 @pytest.fixture
-def make_window(qtbot, preferences):
+def make_window(qtbot, preferences, monkeypatch):
     """A factory of windows, shown and settled; each is closed again and leaves nothing running."""
     made = []
+    monkeypatch.setattr("gui.line.POINTS", 7)  # a coarse line is settled sooner
 
     def factory(start=None, settle=settle_case, path=None, theme="light", wait=True):
         _, window = make(["thalweg"], preferences, settle, theme)

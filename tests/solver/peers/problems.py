@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cache
 
@@ -85,8 +86,23 @@ def arrays(problem: Problem) -> Arrays:
         [sum(n * s.elements.get(e, 0.0) for s, n in problem.feed.items()) for e in elements]
     )
     gas = np.array([s.phase == "gas" for s in problem.species])
-    g = np.array([s.g(problem.T) for s in problem.species]) / (species_db.R * problem.T)
-    return Arrays(A, b, g + gas * np.log(problem.p / species_db.P_STANDARD), gas)
+    return Arrays(A, b, pure_potentials(problem.species, problem.T, problem.p), gas)
+
+
+def pure_potentials(species: Sequence[Species], T: float, p: float) -> npt.NDArray[np.float64]:
+    """mu/RT of each species alone at T and p: an ideal gas, or a phase of constant volume."""
+    over = p - species_db.P_STANDARD
+    return np.array(
+        [
+            s.g(T) / (species_db.R * T)
+            + (
+                np.log(p / species_db.P_STANDARD)
+                if s.phase == "gas"
+                else (s.molar_volume or 0.0) * over / (species_db.R * T)
+            )
+            for s in species
+        ]
+    )
 
 
 def gibbs(problem: Arrays, n: npt.NDArray[np.float64]) -> float:

@@ -7,6 +7,8 @@ from typing import Protocol
 
 _SPACE = re.compile(r"[\s_\-–]+")
 
+_SPELLINGS = (("sulph", "sulf"), ("aluminium", "aluminum"), ("caesium", "cesium"))
+
 
 class Row(Protocol):
     """What the ranking reads of a record."""
@@ -23,7 +25,10 @@ def folded(name: str) -> str:
     A hyphen between two digits or letters of a locant (``1-butene``, ``n-butane``) is kept as a
     blank is: ``iso butane`` and ``isobutane`` stay different only where the trade differs.
     """
-    return _SPACE.sub(" ", name.strip()).casefold().replace("sulph", "sulf")
+    low = _SPACE.sub(" ", name.strip()).casefold()
+    for other, usual in _SPELLINGS:
+        low = low.replace(other, usual)
+    return low
 
 
 def rank(text: str, rows: Iterable[Row]) -> list[str]:

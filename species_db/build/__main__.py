@@ -23,6 +23,10 @@ from species_db.build.janaf import janaf_drafts
 from species_db.build.places import DATA
 from species_db.build.properties import critical_constants, molar_volume
 
+ZERO = 10.0
+"""An element whose record has less than this as formation enthalpy, J/mol, is in its reference
+state, and is set to zero exactly."""
+
 
 def collect() -> tuple[list[Draft], list[LeftOut], list[str]]:
     """All chosen records, what was left out, and shifts that were refused."""
@@ -55,6 +59,9 @@ def collect() -> tuple[list[Draft], list[LeftOut], list[str]]:
     gases = choose.gases([d for d in everything if d.phase == "gas"], out)
     condensed = choose.condensed([d for d in everything if d.phase != "gas"], out)
     chosen = gases + condensed
+    for d in chosen:
+        if len(d.elements) == 1 and not d.charge and abs(d.h298) < ZERO:
+            d.is_reference = True
     refused = atct.move(chosen, everything)
     for d in chosen:
         if d.is_reference:
@@ -62,7 +69,7 @@ def collect() -> tuple[list[Draft], list[LeftOut], list[str]]:
     chosen = apart.drop_undercutting(chosen, out)
     apart.keep_apart(chosen)
     chosen = boil.gate(chosen, out)
-    uncertainty.assign(chosen)
+    uncertainty.assign(chosen, everything)
     return chosen, out, refused
 
 

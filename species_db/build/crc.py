@@ -69,6 +69,26 @@ def element_entropies() -> dict[str, float]:
     return out
 
 
+FORMULA_BY_CAS = {
+    "1312-81-8": "La2O3",
+    "1314-36-9": "Y2O3",
+    "1304-76-3": "Bi2O3",
+    "1313-97-9": "Nd2O3",
+    "12060-08-1": "Sc2O3",
+    "1344-59-8": "U3O8",
+    "1314-37-0": "Yb2O3",
+    "1345-13-7": "Ce2O3",
+    "1303-36-2": "As2Se3",
+    "1345-07-9": "Bi2S3",
+    "12018-01-8": "CrO2",
+    "13410-01-0": "Na2SeO4",
+    "10031-22-8": "PbBr2",
+    "13870-24-1": "FeWO4",
+    "13597-65-4": "Zn2SiO4",
+    "1317-35-7": "Mn3O4",
+    "20427-59-2": "Cu(OH)2",
+}
+"""Formulas that the identifier tables garble beyond a count of hydrogen."""
 GIBBS_FITS = 5000.0
 """H - G - T (S - elements) of a row must be zero within this, J/mol: a quarter of an atom of H."""
 
@@ -78,7 +98,7 @@ def composition_of(cas: str, row: dict[str, float | str], state: str) -> Identit
 
     The identifier tables add or lose hydrogen in many salts. One atom of hydrogen is 19 kJ/mol in
     T S, so the row's figures tell: the listed composition, or else the same without hydrogen, is
-    taken if they agree with it. Compounds of C and H, which carry no G, are taken as listed.
+    taken if they agree with it. Organic compounds, which mostly carry no G, are taken as listed.
     """
     entry = known(cas)
     if not entry or entry.identity[1] or any(e not in ATOMIC_MASS for e, _ in entry.identity[0]):
@@ -86,16 +106,22 @@ def composition_of(cas: str, row: dict[str, float | str], state: str) -> Identit
     symbols = {e for e, _ in entry.identity[0]}
     h, g, s = (float(row[c + state]) for c in ("Hf", "Gf", "S0"))
     if not math.isfinite(g):
-        organic = {"C", "H"} <= symbols and symbols <= set("C H N O S F Cl Br I P".split())
+        organic = "C" in symbols and symbols <= set("C H N O S F Cl Br I P".split())
         return entry.identity if organic or len(symbols) == 1 else None
-    bare = tuple((e, n) for e, n in entry.identity[0] if e != "H")
-    for elements in dict.fromkeys((entry.identity[0], bare)):
+    bare = _bare(entry.identity)
+    given = parse_formula(FORMULA_BY_CAS.get(cas, ""))
+    for elements in dict.fromkeys((given[0] if given else bare, entry.identity[0], bare)):
         if any(e not in element_entropies() for e, _ in elements) or not elements:
             continue
         total = sum(element_entropies()[e] * n for e, n in elements)
         if abs(h - g - T0 * (s - total)) < GIBBS_FITS:
             return elements, 0
     return None
+
+
+def _bare(identity: Identity) -> tuple[tuple[str, float], ...]:
+    """Composition without its hydrogen."""
+    return tuple((e, n) for e, n in identity[0] if e != "H")
 
 
 def perry_solids(have: set[tuple[object, str]]) -> list[Draft]:
@@ -199,6 +225,10 @@ def constant_cp_drafts(have: set[tuple[object, str]], out: list[LeftOut]) -> lis
                 continue
             identity = composition_of(cas, {**row, s: s298}, phase[0])
             if identity is None:
+                entry = known(cas)
+                guesses = {entry.identity, (_bare(entry.identity), 0)} if entry else set()
+                if any((guess, phase) in have for guess in guesses):
+                    continue  # another source has it
                 out.append(LeftOut("crc", cas, str(row["Chemical"]), phase, UNCONFIRMED))
                 continue
             cp = float(row[c])

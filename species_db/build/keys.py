@@ -20,7 +20,7 @@ MINERAL = {
     "calcite", "aragonite", "pyrite", "marcasite", "gr", "diamond", "white", "red", "black",
 }  # fmt: skip
 """Forms whose name stands in the key of the stable form too."""
-VOLATILE = 25.0
+VOLATILE = 15.0
 """A name means the gas while g/RT of the gas is less than this above the condensed one, 298 K."""
 
 
@@ -128,6 +128,7 @@ def named_records(drafts: list[Draft]) -> set[str]:
     by: dict[str, list[Draft]] = defaultdict(list)
     for d in drafts:
         by[d.name.casefold()].append(d)
+    elements = {tuple(d.elements) for d in drafts if d.is_reference}
     chosen = set()
     for group in by.values():
         reference = [d for d in group if d.is_reference]
@@ -143,4 +144,4 @@ def named_records(drafts: list[Draft]) -> set[str]:
             chosen.add(gas.key)
         else:
             chosen.add((condensed or group)[0].key)
-    return chosen
+    return chosen - {d.key for d in drafts if tuple(d.elements) in elements and not d.is_reference}

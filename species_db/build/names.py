@@ -114,7 +114,9 @@ def _tidy(label: str, formula: str) -> str:
 def _lower(name: str) -> str:
     for letter, word in _GREEK.items():
         name = name.replace(letter, word)
-    name = name.strip()
+    name = re.sub(
+        r" (\((?=[^)]*[A-Z0-9])[A-Z][A-Za-z0-9()]*\)|\[[A-Z][A-Za-z0-9]*\])$", "", name.strip()
+    )
     if name[:1].isupper() and (name[1:2].islower() or name[1:2] == ""):
         name = name[0].lower() + name[1:]
     words = [w.lower() if w[1:].islower() and w[:1].isupper() else w for w in name.split(" ")]

@@ -47,11 +47,11 @@ def stated_in_text(texts: Iterable[str], h298: float) -> tuple[float, str]:
     return math.nan, ""
 
 
-def assign(drafts: list[Draft]) -> None:
-    """Give every chosen record an uncertainty and its kind."""
+def assign(drafts: list[Draft], everything: list[Draft]) -> None:
+    """Give every chosen record an uncertainty and its kind; `everything` holds the stated ones."""
     stated: dict[tuple[object, str], list[tuple[float, float]]] = {}
-    for d in drafts:
-        if d.u_kind == "stated":
+    for d in everything:
+        if d.u_kind in ("stated", KIND_TEXT):
             stated.setdefault((d.identity, d.phase), []).append((d.h_as_read, d.u))
     for d in drafts:
         if d.is_reference or (not d.elements and d.charge == -1):

@@ -10,9 +10,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from solver.core.basis import CHARGE, formula_vector
+from solver.core.cases import Feed
 from solver.core.minimise import NotHeld, Unsettled
 from solver.core.mixture import Held, Mixture, mixture_of
-from solver.core.phaseset import Case
 from solver.core.temperature import OutOfReach, Point, Search, find_temperature, point_at
 from solver.core.totals import Totals
 from solver.core.vessel import TooSmall
@@ -71,9 +71,9 @@ def settle(
     vectors = np.array([formula_vector(sp, mixture.rows) for sp in fed])
     # the minimiser works on totals near one; a power of two changes no digit
     scale = 2.0 ** -round(float(np.log2(np.abs(amounts @ vectors).max())))
-    case = Case(amounts * scale, vectors)
+    scaled = Feed((amounts * scale)[None, :], vectors)
     try:
-        point = _find(mixture, case, fixed, scale)
+        point = _find(mixture, scaled, fixed, scale)
     except NotHeld as error:
         raise _not_held(mixture, error) from None
     except OutOfReach as error:
@@ -87,7 +87,7 @@ def settle(
             "fixed",
             fixed,
         ) from None
-    return _end_state(mixture, species, case, point, fixed, gas, scale)
+    return _end_state(mixture, species, scaled, point, fixed, gas, scale)
 
 
 def _checked_feed(
@@ -186,21 +186,21 @@ def _out_of_reach(fixed: Fixed, error: OutOfReach) -> NoEndState:
     return NoEndState(text, f"fixed.{variable}", value, allowed)
 
 
-def _find(mixture: Mixture, case: Case, fixed: Fixed, scale: float) -> Point:
+def _find(mixture: Mixture, feed: Feed, fixed: Fixed, scale: float) -> Point:
     pair = PAIRS[fixed.pair]
     second = fixed.values[1]
     p = None if pair.holds_volume else second
     V = second * scale if pair.holds_volume else None
     if pair.searched is None:
-        return point_at(mixture, case, Held(fixed.values[0], p=p, V=V), None, None)
+        return point_at(mixture, feed, Held(fixed.values[0], p=p, V=V), None, None)
     search = Search(pair.searched, fixed.values[0] * scale, p, V, T_LOWEST, T_HIGHEST)
-    return find_temperature(mixture, case, search)
+    return find_temperature(mixture, feed, search)
 
 
 def _end_state(
     mixture: Mixture,
     species: Sequence[Species],
-    case: Case,
+    feed: Feed,
     point: Point,
     fixed: Fixed,
     gas: str,
@@ -208,9 +208,9 @@ def _end_state(
 ) -> EndState:
     T, p, n = point.T, point.p, point.n
     g, _, _ = mixture.thermo.at(T)
-    closure, trace = element_residuals(mixture, n, case.feed, case.vectors)
+    closure, trace = element_residuals(mixture, n, feed.amounts[0], feed.vectors)
     held_volume = point.totals.V if PAIRS[fixed.pair].holds_volume else None
-    gap, force = optimality_gap(mixture, n, case.totals, point.potentials, g, T, p, held_volume)
+    gap, force = optimality_gap(mixture, n, feed.totals[0], point.potentials, g, T, p, held_volume)
     absent = {sp.key: 0.0 for sp in species if sp.phase != "gas"}
     for sp, amount, f in zip(mixture.species, n, force, strict=True):
         if sp.phase != "gas":

@@ -10,14 +10,16 @@ linear program, which then names the next set; that sequence converges from anyw
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from solver.core.basis import Basis
+from solver.core.cases import Cases, Feed
 from solver.core.mixture import Held, Mixture
-from solver.core.phaseset import Attempt, Case, Problem, restart, solve_set
+from solver.core.phaseset import Solved, solve_set
 from solver.core.simplex import Endless, Simplex
 from solver.core.vessel import TooSmall, Unfilled, fill
 
@@ -25,6 +27,7 @@ Array = NDArray[np.float64]
 
 _MAX_ROUNDS = 80
 _VACUUM = 1e-20  # Pa; no gas feels it
+_FIRST = np.zeros(1, dtype=np.intp)
 
 
 class Unsettled(ArithmeticError):
@@ -82,8 +85,8 @@ class Minimum:
     gas: NDArray[np.intp]
 
 
-def minimise(mixture: Mixture, case: Case, held: Held, start: Present | None = None) -> Minimum:
-    """Find the minimum from a neighbour's `start`, or from a linear program.
+def minimise(mixture: Mixture, feed: Feed, held: Held, start: Present | None = None) -> Minimum:
+    """Find the minimum of one case from a neighbour's `start`, or from a linear program.
 
     Raises
     ------
@@ -94,60 +97,66 @@ def minimise(mixture: Mixture, case: Case, held: Held, start: Present | None = N
     TooSmall
         The vessel cannot hold what must stay condensed.
     """
-    problem = Problem(mixture, case, held)
-    if held.V is not None and not problem.gas.size:
-        return _without_gas(mixture, case, held)
+    if held.V is not None and not mixture.gas.size:
+        return _without_gas(mixture, feed, held)
+    case = Cases(
+        mixture,
+        feed,
+        np.array([held.T]),
+        None if held.p is None else np.array([held.p]),
+        None if held.V is None else np.array([held.V]),
+    )
     if start is not None:
         basis = mixture.basis(start.members)
         try:
-            return _exchange(problem, list(start.active), basis, start.log_a, start.nu, None)
+            return _exchange(case, list(start.active), basis, start.log_a, start.nu, None)
         except (Unsettled, _Stuck):
             pass  # too far: start cold
     try:
-        return _from_program(problem)
+        return _from_program(case)
     except Unsettled:
         if held.V is None:
             raise
-    return _by_pressure(problem)
+    return _by_pressure(case, held)
 
 
-def _by_pressure(problem: Problem) -> Minimum:
+def _by_pressure(case: Cases, held: Held) -> Minimum:
     """Meet the volume through the pressure, for vessels that defeat the direct search."""
-    mixture, case, held = problem.mixture, problem.case, problem.held
+    mixture, feed = case.mixture, case.feed
 
     def minimum_at(at: Held, last: Minimum | None) -> Minimum:
-        return minimise(mixture, case, at, last.present if last else None)
+        return minimise(mixture, feed, at, last.present if last else None)
 
-    guess = float(np.log(0.5 * problem.atoms)) - problem.nu_fixed
+    guess = float(np.log(0.5 * case.atoms[0]) - case.nu_fixed[0])
     try:
         last, n, p = fill(
-            minimum_at, lambda found: found.n, problem.gas, mixture.volume, held, guess
+            minimum_at, lambda found: found.n, mixture.gas, mixture.volume, held, guess
         )
     except Unfilled as error:
         raise Unsettled(str(error)) from None
     return replace(last, n=n, p=p)
 
 
-def _without_gas(mixture: Mixture, case: Case, held: Held) -> Minimum:
+def _without_gas(mixture: Mixture, feed: Feed, held: Held) -> Minimum:
     """A vessel whose candidates are all condensed: nothing evaporates, no pressure."""
     assert held.V is not None
-    found = minimise(mixture, case, Held(held.T, p=_VACUUM))
+    found = minimise(mixture, feed, Held(held.T, p=_VACUUM))
     needed = float(found.n @ mixture.volume)
     if needed > held.V:
         raise TooSmall(needed)
     return replace(found, p=0.0)
 
 
-def _from_program(problem: Problem) -> Minimum:
+def _from_program(case: Cases) -> Minimum:
     """Start cold: the linear program names the sets."""
-    mixture, case = problem.mixture, problem.case
-    c = problem.c.copy()
+    mixture, gas = case.mixture, case.gas
+    c, atoms, scale = case.c[0].copy(), float(case.atoms[0]), float(case.scale[0])
     log_p = 0.0
-    if not problem.holds_pressure:
+    if not case.holds_pressure:
         # the program needs a pressure: that of half as many moles as there are atoms
-        log_p = max(float(np.log(0.5 * problem.atoms)) - problem.nu_fixed, -60.0)
-        c[problem.gas] += log_p
-    program = Simplex(mixture.A, case.totals / problem.scale, c)
+        log_p = max(float(np.log(0.5 * atoms) - case.nu_fixed[0]), -60.0)
+        c[gas] += log_p
+    program = Simplex(mixture.A, case.feed.totals[0] / scale, c)
     try:
         program.run()
         short = [k for k, j in enumerate(program.basis) if j < 0 and program.levels[k] > 0.0]
@@ -155,24 +164,24 @@ def _from_program(problem: Problem) -> Minimum:
             raise NotHeld(short)
         columns: list[Array] = []
         # in a volume the program's pressure is a guess: more columns need not help there
-        for _ in range(_MAX_ROUNDS if problem.holds_pressure else 4):
-            n, active = _read(problem, program, columns)
+        for _ in range(_MAX_ROUNDS if case.holds_pressure else 4):
+            n, active = _read(case, program, columns)
             e = mixture.A @ program.potentials - c
-            scarce = 1e-40 * problem.scale * np.exp(np.clip(e, -100.0, 0.0))
-            basis = mixture.basis(problem.members(active, n + scarce))
-            taken = set(active)
-            gas_members = [i for i in basis.members if i not in taken]
-            gas_amount = float(n[problem.gas].sum())
-            nu = float(np.log(gas_amount)) if gas_amount > 0.0 else np.log(problem.atoms) - 30.0
+            scarce = 1e-40 * scale * np.exp(np.clip(e, -100.0, 0.0))
+            basis = mixture.basis(case.members(active, n + scarce))
+            members = np.array(basis.members)
+            gas_amount = float(n[gas].sum())
+            nu = float(np.log(gas_amount)) if gas_amount > 0.0 else np.log(atoms) - 30.0
             # where the vertex has none, its potentials say how active a component is at most
-            log_a = e[gas_members] + log_p
-            some = n[gas_members] > 0.0
-            log_a[some] = np.log(n[gas_members][some])
-            log_a[some] -= nu if problem.holds_pressure else problem.nu_fixed
+            log_a = e[members] + log_p
+            some = n[members] > 0.0
+            log_a[some] = np.log(n[members][some])
+            log_a[some] -= nu if case.holds_pressure else case.nu_fixed[0]
+            log_a[~mixture.is_gas[members]] = 0.0
             try:
-                return _exchange(problem, active, basis, log_a, nu, n)
+                return _exchange(case, active, basis, log_a, nu, n)
             except _Stuck as stuck:
-                for y in (stuck.y, _gas_at(problem, program.potentials, c)):
+                for y in (stuck.y, _gas_at(case, program.potentials, c)):
                     if y is not None:
                         entropy = float(y[y > 0.0] @ np.log(y[y > 0.0]))
                         program.add(y @ mixture.A, float(y @ c) + entropy)
@@ -183,38 +192,36 @@ def _from_program(problem: Problem) -> Minimum:
     raise Unsettled("no end of the search for the phases")
 
 
-def _gas_at(problem: Problem, potentials: Array, c: Array) -> Array | None:
+def _gas_at(case: Cases, potentials: Array, c: Array) -> Array | None:
     """The gas that would form at given element potentials, mole fractions (species,)."""
-    gas = problem.gas
+    gas = case.gas
     if not gas.size:
         return None
-    e = problem.mixture.A[gas] @ potentials - c[gas]
+    e = case.mixture.A[gas] @ potentials - c[gas]
     y = np.zeros(len(c))
     y[gas] = np.exp(e - e.max())
     return np.asarray(y / y.sum())
 
 
-def _read(problem: Problem, program: Simplex, columns: list[Array]) -> tuple[Array, list[int]]:
+def _read(case: Cases, program: Simplex, columns: list[Array]) -> tuple[Array, list[int]]:
     """Amounts (species,) and active condensed phases of a vertex."""
-    species = len(problem.c)
+    species = case.c.shape[1]
     n = np.zeros(species)
-    for j, level in zip(program.basis, program.levels * problem.scale, strict=True):
+    for j, level in zip(program.basis, program.levels * case.scale[0], strict=True):
         if 0 <= j < species:
             n[j] += level
         elif j >= species:
             n += level * columns[j - species]
-    return n, [i for i in problem.condensed.tolist() if n[i] > 0.0]
+    return n, [i for i in case.condensed.tolist() if n[i] > 0.0]
 
 
 def _exchange(
-    problem: Problem, active: list[int], basis: Basis, log_a: Array, nu: float, n: Array | None
+    case: Cases, active: list[int], basis: Basis, log_a: Array, nu: float, n: Array | None
 ) -> Minimum:
     """Follow the active set from feasible amounts n (None: not known) to the minimum."""
     for _ in range(_MAX_ROUNDS):
-        attempt = solve_set(problem, active, basis, log_a, nu)
-        new = attempt.n
-        if attempt.stuck_with is not None:
-            raise _Stuck(attempt.stuck_with)
+        solved = _with_good_components(case, active, basis, log_a, nu)
+        new, force = solved.n[0], solved.force[0]
         negative = [i for i in active if new[i] < 0.0]
         if negative:
             if n is None:
@@ -223,18 +230,52 @@ def _exchange(
             n = np.maximum(n + step * (new - n), 0.0)
             n[leaving] = 0.0
             active = [i for i in active if i != leaving]
-            basis, log_a, nu = restart(problem, active, np.where(n > 0.0, n, np.abs(new)), attempt)
+            basis, log_a, nu = restart(
+                case, active, np.where(n > 0.0, n, np.abs(new)), force, float(case.scale[0])
+            )
             continue
         n = new
-        force = attempt.force.copy()
-        force[active] = -np.inf
-        force[problem.gas] = -np.inf
-        entering = int(np.argmax(force))
-        if force[entering] <= problem.force_tolerance:
-            return _finish(problem, active, attempt)
-        active, n = _enter(entering, active, n, attempt.basis)
-        basis, log_a, nu = restart(problem, active, n, attempt)
+        entering = leading(case, active, force)
+        if entering is None or force[entering] <= case.force_tolerance[0]:
+            return _finish(active, solved)
+        active, n = _enter(entering, active, n, solved.basis)
+        basis, log_a, nu = restart(case, active, n, force, float(case.scale[0]))
     raise Unsettled("no end of the exchange of phases")
+
+
+def leading(case: Cases, active: Sequence[int], force: Array) -> int | None:
+    """The absent condensed species with the largest driving force, if any is absent."""
+    taken = set(active)
+    absent = [i for i in case.condensed.tolist() if i not in taken]
+    return max(absent, key=lambda i: float(force[i]), default=None)
+
+
+def restart(
+    case: Cases, active: Sequence[int], n: Array, force: Array, scale: float
+) -> tuple[Basis, Array, float]:
+    """Components, log_a (components,) and nu for a changed set, from amounts n (species,)."""
+    scarce = np.exp(np.clip(force, -650.0, 650.0)) * 1e-40 * scale
+    basis = case.mixture.basis(case.members(active, np.where(n > 0.0, n, scarce)))
+    log_a = np.maximum(force[list(basis.members)], -650.0)
+    total = float(n[case.gas].sum())
+    nu = float(np.log(total)) if total > 0.0 else float(np.log(scale)) - 30.0
+    return basis, log_a, nu
+
+
+def _with_good_components(
+    case: Cases, active: Sequence[int], basis: Basis, log_a: Array, nu: float
+) -> Solved:
+    """Solve one set, changing the components until they are the abundant species."""
+    for _ in range(8):
+        ((_, solved),) = solve_set(case, _FIRST, active, basis, log_a[None, :], np.array([nu]))
+        if not solved.closed[0]:
+            raise _Stuck(solved.y[0])
+        if solved.well_based[0]:
+            break
+        basis, log_a, nu = restart(case, active, solved.n[0], solved.force[0], float(case.scale[0]))
+        if basis.members == solved.basis.members:
+            break
+    return solved
 
 
 def _enter(j: int, active: list[int], n: Array, basis: Basis) -> tuple[list[int], Array]:
@@ -254,6 +295,8 @@ def _enter(j: int, active: list[int], n: Array, basis: Basis) -> tuple[list[int]
     return [*(i for i in active if i != leaving), j], np.maximum(n, 0.0)
 
 
-def _finish(problem: Problem, active: list[int], attempt: Attempt) -> Minimum:
-    present = Present(tuple(active), attempt.basis.members, attempt.log_a, attempt.log_gas)
-    return Minimum(attempt.n, attempt.potentials, attempt.p, present, attempt.basis, attempt.gas)
+def _finish(active: list[int], solved: Solved) -> Minimum:
+    basis = solved.basis
+    present = Present(tuple(active), basis.members, solved.log_a[0], float(solved.nu[0]))
+    potentials = basis.potentials(solved.mu[0])
+    return Minimum(solved.n[0], potentials, float(solved.p[0]), present, basis, solved.gas)

@@ -1,4 +1,4 @@
-"""The minimum for one given set of condensed phases."""
+"""The minimum for a given set of condensed phases and given components, many cases at once."""
 
 from __future__ import annotations
 
@@ -8,300 +8,246 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from solver.core.balance import GasSolution, GasSystem, Vessel, solve_balances
-from solver.core.basis import Basis, choose_members, component_amounts
+from solver.core.balance import GasSystem, Vessel, solve_balances
+from solver.core.basis import Basis, component_amounts
+from solver.core.cases import Cases
 from solver.core.descent import descend
 from solver.core.forced import Sink, combined, infeasible, one_sided
-from solver.core.mixture import P0, Held, Mixture, R
+from solver.core.mixture import P0, R
 
 Array = NDArray[np.float64]
+Indices = NDArray[np.intp]
+Flags = NDArray[np.bool_]
 
 _EPS = float(np.finfo(float).eps)
 _DOMINANCE = 1e3  # a component this much scarcer than a species it builds is a poor component
 _ABSENT = -50.0  # ln activity at most, of a species that the balances force to zero
-_EXP_LIMIT = 650.0
 
 
 @dataclass(frozen=True)
-class Case:
-    """Feed of one case: amounts (fed species,) and formula vectors (fed species, rows)."""
-
-    feed: Array
-    vectors: Array
-
-    @property
-    def totals(self) -> Array:
-        """Element totals (rows,)."""
-        return np.asarray(self.feed @ self.vectors)
-
-
-class Problem:
-    """One case at one temperature and pressure or volume, as the search needs it.
+class Solved:
+    """What solving one set of phases gave, for the cases asked.
 
     Attributes
     ----------
-    c : ndarray, shape (species,)
-        g/RT at the pressure held, or at 1 bar where the volume is held.
-    nu_fixed : float
-        ln of p0 V/RT where the volume is held.
-    force_tolerance : float
-        Rounding of a driving force c - a.lambda.
-    """
-
-    def __init__(self, mixture: Mixture, case: Case, held: Held) -> None:
-        self.mixture, self.case, self.held = mixture, case, held
-        g, _, _ = mixture.thermo.at(held.T)
-        self.gas, self.condensed = mixture.gas, mixture.condensed
-        totals = case.totals
-        self.scale = float(np.abs(totals).max())
-        self.atoms = float(np.abs(totals).sum())
-        self.nu_fixed = 0.0
-        self.c = g.copy()
-        if held.p is not None:
-            self.c[self.gas] += float(np.log(held.p / P0))
-            self.c += mixture.volume * ((held.p - P0) / (R * held.T))
-        else:
-            assert held.V is not None
-            self.nu_fixed = float(np.log(P0 * held.V / (R * held.T)))
-        self.force_tolerance = 6e-14 * (1.0 + float(np.abs(self.c).max()))
-
-    @property
-    def holds_pressure(self) -> bool:
-        """Whether the gas may take any volume."""
-        return self.held.p is not None
-
-    def pressure(self, n: Array) -> float:
-        """Pressure of the gas in what the condensed phases leave of the volume, Pa.
-
-        Zero where nothing evaporates: a vessel with involatile solids alone.
-        """
-        assert self.held.V is not None
-        gas = float(n[self.gas].sum())
-        left = self.held.V - float(n @ self.mixture.volume)
-        if left <= 0.0:
-            return 0.0 if gas == 0.0 else np.inf
-        return gas * R * self.held.T / left
-
-    def members(self, active: Sequence[int], amounts: Array) -> list[int]:
-        """Components: the active condensed phases, then the most abundant gases."""
-        gases = self.gas[np.argsort(-amounts[self.gas], kind="stable")]
-        rest = self.condensed[np.argsort(-amounts[self.condensed], kind="stable")]
-        taken = set(active)
-        others = [i for i in rest.tolist() if i not in taken]
-        order = [*active, *gases.tolist(), *others]
-        return choose_members(self.mixture.A, order, self.mixture.rank)
-
-
-@dataclass(frozen=True)
-class Attempt:
-    """What solving one set of phases gave.
-
-    Attributes
-    ----------
-    n : ndarray, shape (species,)
+    n : ndarray, shape (cases, species)
         Amounts; a condensed one is negative where the set asks for too much.
-    potentials : ndarray, shape (rows,)
-        Element potentials over RT.
-    activity : ndarray, shape (species,)
-        At those potentials.
-    stuck_with : ndarray, shape (species,), or None
-        None when the balances were solved, else the gas composition reached.
-    log_a : ndarray, shape (gas components,)
-        ln activity of the gas components, in the order of the basis.
-    log_gas : float
-        nu: ln of the gas amount (pressure held) or of p0 V/RT of the volume left to it.
-    p : float
-        Pressure, Pa.
-    force : ndarray, shape (species,)
-        ln activity of every species at the potentials and the pressure reached.
-    gas : ndarray
+    log_a : ndarray, shape (cases, components)
+        ln activity of the components, zero for the condensed phases that are present.
+    nu : ndarray, shape (cases,)
+        ln of the gas amount (pressure held) or of p0 V/RT of the volume left to it.
+    p : ndarray, shape (cases,)
+        Pa.
+    mu : ndarray, shape (cases, components)
+        Potentials of the components over RT.
+    force : ndarray, shape (cases, species)
+        ln activity of every species at those potentials.
+    closed : ndarray of bool, shape (cases,)
+        Whether the balances were solved.
+    y : ndarray, shape (cases, species)
+        Composition of the gas reached, where they were not.
+    well_based : ndarray of bool, shape (cases,)
+        No component is much scarcer than a species made of it.
+    gas : ndarray of int
         Gas species that are not forced to zero.
     """
 
-    n: Array
-    potentials: Array
     basis: Basis
-    activity: Array
-    stuck_with: Array | None
+    n: Array
     log_a: Array
-    log_gas: float
-    p: float
+    nu: Array
+    p: Array
+    mu: Array
     force: Array
-    gas: NDArray[np.intp]
+    closed: Flags
+    y: Array
+    well_based: Flags
+    gas: Indices
 
 
 def solve_set(
-    problem: Problem, active: Sequence[int], basis: Basis, log_a: Array, nu: float
-) -> Attempt:
-    """Solve the balances of one set, changing the components until they are abundant."""
-    for _ in range(8):
-        attempt = _solve_over(problem, active, basis, log_a, nu)
-        if attempt.stuck_with is not None or _well_based(problem, active, attempt):
-            return attempt
-        basis, log_a, nu = restart(problem, active, attempt.n, attempt)
-        if basis.members == attempt.basis.members:
-            return attempt
-    return attempt
+    cases: Cases,
+    which: Indices,
+    active: Sequence[int],
+    basis: Basis,
+    log_a: Array,
+    nu: Array,
+) -> list[tuple[Indices, Solved]]:
+    """Solve the balances of some cases that share a set and components.
+
+    Cases are parted by which balances have a zero total, because those decide what is forced
+    to zero.
+
+    Parameters
+    ----------
+    which : ndarray of int, shape (n,)
+        The cases.
+    active : sequence of int
+        Condensed phases present.
+    log_a : ndarray, shape (n, components)
+    nu : ndarray, shape (n,)
+
+    Returns
+    -------
+    list of (positions in `which`, Solved)
+    """
+    b = component_amounts(cases.feed.amounts[which], cases.feed.vectors, basis)
+    patterns: dict[bytes, list[int]] = {}
+    zero = b == 0.0
+    if not zero.any():
+        groups = [np.arange(len(which))]
+    else:
+        for i, row in enumerate(zero):
+            patterns.setdefault(row.tobytes(), []).append(i)
+        groups = [np.array(rows, dtype=np.intp) for rows in patterns.values()]
+    return [
+        (rows, _solve(cases, which[rows], active, basis, b[rows], log_a[rows], nu[rows]))
+        for rows in groups
+    ]
 
 
-def restart(
-    problem: Problem, active: Sequence[int], n: Array, attempt: Attempt
-) -> tuple[Basis, Array, float]:
-    """Components, log_a and nu for a changed set, from the amounts reached so far."""
-    scarce = attempt.activity * 1e-40 * problem.scale
-    basis = problem.mixture.basis(problem.members(active, np.where(n > 0.0, n, scarce)))
-    taken = set(active)
-    gas_members = [i for i in basis.members if i not in taken]
-    log_a = np.log(np.maximum(attempt.activity[gas_members], 1e-290))
-    total = float(n[problem.gas].sum())
-    nu = float(np.log(total)) if total > 0.0 else float(np.log(problem.atoms)) - 30.0
-    return basis, log_a, nu
-
-
-def _solve_over(
-    problem: Problem, active: Sequence[int], basis: Basis, log_a: Array, nu: float
-) -> Attempt:
-    c, gas = problem.c, problem.gas
-    members = list(basis.members)
+def _solve(
+    cases: Cases,
+    which: Indices,
+    active: Sequence[int],
+    basis: Basis,
+    b: Array,
+    start: Array,
+    nu: Array,
+) -> Solved:
+    gas, members = cases.gas, list(basis.members)
     taken = set(active)
     gas_rows = [k for k, m in enumerate(members) if m not in taken]
-    b = component_amounts(problem.case.feed[None, :], problem.case.vectors, basis)[0]
     reactions = basis.reactions[gas]
-    kappa = c[gas] - reactions @ c[members]
-    start = np.zeros(len(members))
-    start[gas_rows] = log_a
+    c = cases.c[which]
+    kappa = c[:, gas] - c[:, members] @ reactions.T
     live = np.ones(gas.size, dtype=bool)
     rows = list(gas_rows)
-    sinks = one_sided(reactions, b, live, rows)
-    result = _solve_gas(problem, active, basis, reactions, kappa, b, start, nu, live, rows)
-    if not result.closed and sum(b[k] == 0.0 for k in rows) > 1:
-        more = combined(reactions, b, live, rows)
+    sinks = one_sided(reactions, b[0], live, rows)
+    result = _solve_gas(cases, which, active, basis, kappa, b, start, nu, live, rows)
+    if len(which) == 1 and not result.closed[0] and sum(b[0, k] == 0.0 for k in rows) > 1:
+        more = combined(reactions, b[0], live, rows)
         if more:
             sinks += more
-            result = _solve_gas(problem, active, basis, reactions, kappa, b, start, nu, live, rows)
-    mu = c[members] + result.log_a
-    n = np.zeros(len(c))
-    n[gas[live]] = result.n
-    for k, m in enumerate(members):
-        if m in taken:
-            n[m] = b[k] - float(reactions[:, k] @ n[gas])
-            if -16.0 * _EPS * abs(b[k]) <= n[m] < 0.0:
-                n[m] = 0.0
-    p = problem.held.p
-    if p is None:
-        p = problem.pressure(n)
-        c = c + problem.mixture.volume * ((p - P0) / (R * problem.held.T))
-        mu = c[members] + result.log_a
-    _sink(c, mu, sinks, basis, gas[live])
-    stuck_with = None
-    if not result.closed:
-        stuck_with = np.zeros(len(c))
-        stuck_with[gas[live]] = result.y
-    force = basis.reactions @ mu - c
-    return Attempt(
-        n=n,
-        potentials=basis.potentials(mu),
+            result = _solve_gas(cases, which, active, basis, kappa, b, start, nu, live, rows)
+    n = np.zeros(c.shape)
+    live_gas = gas[live]
+    n[:, live_gas] = result.n
+    present = [k for k, m in enumerate(members) if m in taken]
+    if present:
+        left = b[:, present] - n[:, gas] @ reactions[:, present]
+        rounding = (left < 0.0) & (left >= -16.0 * _EPS * np.abs(b[:, present]))
+        left[rounding] = 0.0
+        n[:, [members[k] for k in present]] = left
+    p = cases.pressures(which, n)
+    if not cases.holds_pressure:
+        finite = np.where(np.isfinite(p), p, P0)
+        c = c + cases.mixture.volume * ((finite - P0) / (R * cases.T[which]))[:, None]
+    mu = c[:, members] + result.log_a
+    _sink(c, mu, sinks, basis, live_gas)
+    y = np.zeros(c.shape)
+    y[:, live_gas] = result.y
+    well = np.ones(len(which), dtype=bool)
+    if rows:
+        size = np.abs(reactions[:, rows])
+        own = n[:, [members[k] for k in rows]]
+        for column in range(len(rows)):  # (cases, gas) at a time
+            most = (n[:, gas] * size[:, column]).max(axis=1)
+            well &= own[:, column] * _DOMINANCE >= most
+    return Solved(
         basis=basis,
-        activity=np.exp(np.clip(force, -_EXP_LIMIT, _EXP_LIMIT)),
-        stuck_with=stuck_with,
-        log_a=(mu - c[members])[gas_rows],
-        log_gas=result.nu,
+        n=n,
+        log_a=mu - c[:, members],
+        nu=result.nu,
         p=p,
-        force=force,
-        gas=gas[live],
+        mu=mu,
+        force=mu @ basis.reactions.T - c,
+        closed=result.closed & np.isfinite(p),
+        y=y,
+        well_based=well,
+        gas=live_gas,
     )
 
 
 @dataclass(frozen=True)
 class _GasResult:
-    n: Array  # amounts of the live gas species
-    y: Array  # their composition, mole fractions
-    log_a: Array  # (components,), zero for condensed ones
-    nu: float
-    closed: bool
+    n: Array  # (cases, live gas species)
+    y: Array
+    log_a: Array  # (cases, components), zero for condensed ones
+    nu: Array
+    closed: Flags
 
 
 def _solve_gas(
-    problem: Problem,
+    cases: Cases,
+    which: Indices,
     active: Sequence[int],
     basis: Basis,
-    reactions: Array,
     kappa: Array,
     b: Array,
     start: Array,
-    nu: float,
-    live: NDArray[np.bool_],
+    nu: Array,
+    live: Flags,
     rows: list[int],
 ) -> _GasResult:
-    log_a = np.zeros(len(b))
+    count = len(which)
+    log_a = np.zeros(b.shape)
     if not live.any():
-        return _GasResult(np.zeros(0), np.zeros(0), log_a, nu, True)
-    part = reactions[np.ix_(live, np.array(rows, dtype=np.intp))]
-    b_rows = b[rows]
-    if infeasible(part, b_rows):
-        y = np.exp(np.clip(part @ start[rows] - kappa[live], -_EXP_LIMIT, _EXP_LIMIT))
-        return _GasResult(np.zeros(live.sum()), y / y.sum(), log_a, nu, False)
+        empty = np.zeros((count, 0))
+        return _GasResult(empty, empty, log_a, nu, np.ones(count, dtype=bool))
+    part = basis.reactions[np.ix_(cases.gas[live], np.array(rows, dtype=np.intp))]
+    kappa, b, start = kappa[:, live], b[:, rows], start[:, rows]
     # no gas component is fed: what the gas would be is sought first, at any amount
-    homogeneous = problem.holds_pressure and not b_rows.any()
-    grows = problem.holds_pressure and not homogeneous
-    nu_start = nu if grows else (0.0 if homogeneous else problem.nu_fixed)
-    limit = float(np.log(4.0 * problem.atoms)) + 2.0 if grows else np.inf
-    vessel = None
-    swelling = None
-    if not problem.holds_pressure:
-        swelling, vessel = _shared(problem, basis, active, b, live)
+    homogeneous = cases.holds_pressure and not b.any()
+    grows = cases.holds_pressure and not homogeneous
+    swelling, vessel = (None, None)
+    limit = np.full(count, np.inf)
+    if grows:
+        limit = np.log(4.0 * cases.atoms[which]) + 2.0
+    elif homogeneous:
+        nu = np.zeros(count)
+    else:
+        nu = cases.nu_fixed[which]
+        swelling, vessel = _shared(cases, which, active, basis, live)
     system = GasSystem.of(part, grows, swelling)
-
-    def solve(log_a: Array, nu: float) -> GasSolution:
-        return solve_balances(
-            system,
-            kappa[live][None, :],
-            b_rows[None, :],
-            log_a[None, :],
-            np.array([nu]),
-            np.array([limit]),
-            vessel,
-        )
-
-    solution = solve(start[rows], nu_start)
-    if not solution.closed[0]:
-        near = descend(part, kappa[live], b_rows, start[rows], nu_start, grows, limit)
-        solution = solve(*near)
-    n, closed = solution.n[0], bool(solution.closed[0])
-    log_a[rows] = solution.log_a[0]
-    y = n / n.sum()
+    solution = solve_balances(system, kappa, b, start, nu, limit, vessel)
+    if count == 1 and not solution.closed[0] and not infeasible(part, b[0]):
+        near, size = descend(part, kappa[0], b[0], start[0], float(nu[0]), grows, float(limit[0]))
+        solution = solve_balances(system, kappa, b, near[None, :], np.array([size]), limit, vessel)
+    log_a[:, rows] = solution.log_a
+    n, closed = solution.n, solution.closed
+    total = n.sum(axis=1, keepdims=True)
+    y = n / total
     if homogeneous:
-        forms = float(np.log(n.sum())) > problem.force_tolerance
-        return _GasResult(np.zeros(n.size), y, log_a, nu, closed and not forms)
-    return _GasResult(n, y, log_a, float(solution.nu[0]), closed)
+        forms = np.log(total[:, 0]) > cases.force_tolerance[which]
+        return _GasResult(np.zeros(n.shape), y, log_a, nu, closed & ~forms)
+    return _GasResult(n, y, log_a, solution.nu, closed)
 
 
 def _shared(
-    problem: Problem,
-    basis: Basis,
-    active: Sequence[int],
-    b: Array,
-    live: NDArray[np.bool_],
+    cases: Cases, which: Indices, active: Sequence[int], basis: Basis, live: Flags
 ) -> tuple[Array | None, Vessel | None]:
-    """The vessel as the condensed phases share it; None where they take no room."""
-    V, T = problem.held.V, problem.held.T
-    assert V is not None
+    """The vessels as the condensed phases share them; None where those take no room."""
     taken = set(active)
-    room = np.array([problem.mixture.volume[m] if m in taken else 0.0 for m in basis.members])
+    volume = cases.mixture.volume
+    room = np.array([volume[m] if m in taken else 0.0 for m in basis.members])
     if not room.any():
         return None, None
-    swelling = basis.reactions[problem.gas[live]] @ room
-    left = V - float(room @ b)
-    unit = R * T / P0
-    w = 0.5 * problem.atoms / V if left <= 0.0 else 1.0 / unit
-    return swelling, Vessel(np.array([left]), np.array([unit]), np.array([w]))
+    assert cases.V is not None
+    V = cases.V[which]
+    swelling = basis.reactions[cases.gas[live]] @ room
+    b = component_amounts(cases.feed.amounts[which], cases.feed.vectors, basis)
+    left = V - b @ room
+    unit = R * cases.T[which] / P0
+    w = np.where(left <= 0.0, 0.5 * cases.atoms[which] / V, 1.0 / unit)
+    return swelling, Vessel(left, unit, w)
 
 
-def _sink(c: Array, mu: Array, sinks: list[Sink], basis: Basis, live: NDArray[np.intp]) -> None:
+def _sink(c: Array, mu: Array, sinks: list[Sink], basis: Basis, live: Indices) -> None:
     """Lower the potentials of forced-out combinations until nothing made of them counts."""
     if not sinks:
         return
-    others = np.ones(len(c), dtype=bool)
+    others = np.ones(c.shape[1], dtype=bool)
     others[live] = False
     members = list(basis.members)
     others[[m for k, m in enumerate(members) if not any(s.direction[k] for s in sinks)]] = False
@@ -311,16 +257,5 @@ def _sink(c: Array, mu: Array, sinks: list[Sink], basis: Basis, live: NDArray[np
         use = basis.reactions[dead] @ sink.direction
         own, use = dead[use > 1e-9], use[use > 1e-9]
         if own.size:
-            over = (basis.reactions[own] @ mu - c[own] - _ABSENT) / use
-            mu -= max(0.0, float(over.max())) * sink.direction
-
-
-def _well_based(problem: Problem, active: Sequence[int], attempt: Attempt) -> bool:
-    """Whether no gas component is much scarcer than a species made of it."""
-    taken = set(active)
-    rows = [k for k, m in enumerate(attempt.basis.members) if m not in taken]
-    members = [attempt.basis.members[k] for k in rows]
-    n = attempt.n
-    size = np.abs(attempt.basis.reactions[np.ix_(problem.gas, np.array(rows, dtype=np.intp))])
-    most = (size * n[problem.gas][:, None]).max(axis=0, initial=0.0)
-    return bool(np.all(n[members] * _DOMINANCE >= most))
+            over = (mu @ basis.reactions[own].T - c[:, own] - _ABSENT) / use
+            mu -= np.maximum(over.max(axis=1), 0.0)[:, None] * sink.direction

@@ -14,9 +14,9 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from solver.core.cases import Feed
 from solver.core.minimise import Minimum, Present, minimise
 from solver.core.mixture import Held, Mixture, R
-from solver.core.phaseset import Case
 from solver.core.response import amounts_by_log_T
 from solver.core.totals import Totals, totals
 
@@ -66,10 +66,10 @@ class Search:
 
 
 def point_at(
-    mixture: Mixture, case: Case, held: Held, start: Present | None, variable: str | None
+    mixture: Mixture, feed: Feed, held: Held, start: Present | None, variable: str | None
 ) -> Point:
     """Minimise at one temperature and evaluate the state."""
-    minimum = minimise(mixture, case, held, start)
+    minimum = minimise(mixture, feed, held, start)
     g, h, cp = mixture.thermo.at(held.T)
     state = totals(minimum.n, mixture.is_gas, mixture.volume, g, h, held.T, minimum.p, held.V)
     slope = _slope(mixture, minimum, held, h, cp) if variable else None
@@ -90,7 +90,7 @@ def _slope(mixture: Mixture, minimum: Minimum, held: Held, h: Array, cp: Array) 
 
 
 def find_temperature(
-    mixture: Mixture, case: Case, search: Search, start: Point | None = None
+    mixture: Mixture, feed: Feed, search: Search, start: Point | None = None
 ) -> Point:
     """The point that has the value searched.
 
@@ -106,7 +106,7 @@ def find_temperature(
     before_last = last = np.inf  # size of the two excesses before
     creeps = 0
     for _ in range(_MAX_EVALUATIONS):
-        point = point_at(mixture, case, search.held(T), present, search.variable)
+        point = point_at(mixture, feed, search.held(T), present, search.variable)
         present = point.present
         excess = getattr(point.totals, search.variable) - search.value
         size = R * float(point.n.sum()) * (1.0 if search.variable == "S" else point.T)

@@ -1,0 +1,108 @@
+"""Many cases over one candidate list at fixed T and p or V, as arrays."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from solver.core.basis import choose_members
+from solver.core.mixture import P0, Mixture, R
+
+Array = NDArray[np.float64]
+Indices = NDArray[np.intp]
+
+
+@dataclass(frozen=True)
+class Feed:
+    """What is fed: amounts (cases, fed species) and formula vectors (fed species, rows)."""
+
+    amounts: Array
+    vectors: Array
+
+    @property
+    def totals(self) -> Array:
+        """Element totals (cases, rows)."""
+        return np.asarray(self.amounts @ self.vectors)
+
+    def of(self, cases: Indices) -> Feed:
+        """The feed of some of the cases."""
+        return Feed(self.amounts[cases], self.vectors)
+
+
+class Cases:
+    """Cases at given temperatures and at given pressures or volumes.
+
+    Parameters
+    ----------
+    mixture : Mixture
+    feed : Feed
+    T : ndarray, shape (cases,)
+        K.
+    p, V : ndarray, shape (cases,), or None
+        Pa and m3; one of the two.
+
+    Attributes
+    ----------
+    c : ndarray, shape (cases, species)
+        g/RT at the pressure held, or at 1 bar where the volume is held.
+    nu_fixed : ndarray, shape (cases,)
+        ln of p0 V/RT where the volume is held, else zero.
+    force_tolerance : ndarray, shape (cases,)
+        Rounding of a driving force a.lambda - c.
+    atoms, scale : ndarray, shape (cases,)
+        Sum and largest of the element totals.
+    """
+
+    def __init__(
+        self, mixture: Mixture, feed: Feed, T: Array, p: Array | None, V: Array | None
+    ) -> None:
+        self.mixture, self.feed, self.T, self.p, self.V = mixture, feed, T, p, V
+        self.g, self.h, self.cp = mixture.thermo.over(T)
+        self.gas, self.condensed = mixture.gas, mixture.condensed
+        totals = np.abs(feed.totals)
+        self.scale = totals.max(axis=1)
+        self.atoms = totals.sum(axis=1)
+        self.c = self.g.copy()
+        self.nu_fixed = np.zeros(len(T))
+        if p is not None:
+            self.c[:, self.gas] += np.log(p / P0)[:, None]
+            self.c += mixture.volume * ((p - P0) / (R * T))[:, None]
+        else:
+            assert V is not None
+            self.nu_fixed = np.log(P0 * V / (R * T))
+        self.force_tolerance = 6e-14 * (1.0 + np.abs(self.c).max(axis=1))
+
+    def __len__(self) -> int:
+        return len(self.T)
+
+    @property
+    def holds_pressure(self) -> bool:
+        """Whether the gas may take any volume."""
+        return self.p is not None
+
+    def pressures(self, cases: Indices, n: Array) -> Array:
+        """Pressure of the gas in what the condensed phases leave of the volume, Pa.
+
+        Zero where nothing evaporates: a vessel with involatile solids alone; infinite where
+        the condensed phases overfill it.
+        """
+        if self.p is not None:
+            return self.p[cases]
+        assert self.V is not None
+        gas = n[:, self.gas].sum(axis=1)
+        left = self.V[cases] - n @ self.mixture.volume
+        with np.errstate(divide="ignore", invalid="ignore"):
+            p = gas * R * self.T[cases] / left
+        return np.where(left > 0.0, p, np.where(gas > 0.0, np.inf, 0.0))
+
+    def members(self, active: Sequence[int], amounts: Array) -> list[int]:
+        """Components for amounts (species,): active condensed phases, then abundant gases."""
+        gases = self.gas[np.argsort(-amounts[self.gas], kind="stable")]
+        rest = self.condensed[np.argsort(-amounts[self.condensed], kind="stable")]
+        taken = set(active)
+        others = [i for i in rest.tolist() if i not in taken]
+        order = [*active, *gases.tolist(), *others]
+        return choose_members(self.mixture.A, order, self.mixture.rank)

@@ -39,7 +39,8 @@ def test_same_minimum_as_a_conic_solver(seed: int):
     own = gibbs(data, n)
     # how far the peer is from its own bound, and its balance from the feed
     accuracy = abs(peer.gibbs - peer.bound) / total + peer.residual
-    assert accuracy < 1e-5, "the peer has no answer to compare with"
+    if accuracy > 1e-5:
+        pytest.skip(f"the conic solver's own answer is good to {accuracy:.0e} only")
 
     # never below the bound of the peer's dual, never above its minimum
     assert own >= peer.bound - 1e-9 * total, str(problem)

@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING
 
 from solver.core.mixture import P0, R, condensed_volume
 from solver.endstate import EndState
-from solver.fed import check_gas
+from solver.errors import InputError
 from solver.reactions.reaction import Reaction
 
 if TYPE_CHECKING:
@@ -24,6 +24,17 @@ UNKNOWN = "absent; activity not known"
 NO_GAS = "there is no gas"
 NOT_THERE = "amount zero"
 NO_CANDIDATE = "not among the candidates"
+
+
+def check_ideal(gas: str) -> None:
+    """Refuse any gas model but the ideal one: y p would not be its activity."""
+    if gas != "ideal":
+        raise InputError(
+            f"Reactions are worked out for the ideal gas only, not for {gas!r}; choose ideal.",
+            "gas",
+            gas,
+            "ideal",
+        )
 
 
 @dataclass(frozen=True, slots=True)
@@ -65,7 +76,7 @@ def activities(
     gas : str
         Gas model.
     """
-    check_gas(gas)
+    check_ideal(gas)
     total = math.fsum(n for sp, n in amounts.items() if sp.phase == "gas")
     out = {}
     for sp, n in amounts.items():

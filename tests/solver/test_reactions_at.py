@@ -148,6 +148,27 @@ def test_quotient_is_K_in_adiabatic_vessels(pair: str):
         assert figures.q_over_k == pytest.approx(1.0, abs=1e-9)
 
 
+@pytest.mark.parametrize("share", [0.2, 0.7])
+def test_quotient_is_K_on_a_plateau(share: float):
+    """Water boiling alone and calcium carbonate under its own gas, energy held."""
+    lib = library()
+    water = {lib["H2O(l)"]: 1.0}
+    chalk = {lib["CaCO3(s)"]: 1.0}
+    for feed, others in ((water, ["H2O"]), (chalk, ["CaO(s)", "CO2"])):
+        species = [*feed, *(lib[key] for key in others)]
+        reaction = reactions_at(
+            solver.settle(species, feed, solver.Fixed("T,p", T=2000.0, p=1e5)), feed
+        ).reactions[0]
+        T_eq = equilibrium_temperature(reaction, 0.0, 1000.0).T_eq
+        assert T_eq is not None
+        H = sum(n * sp.h(T_eq) for sp, n in feed.items()) + share * reaction.dh(T_eq)
+        end = solver.settle(species, feed, solver.Fixed("H,p", H=H, p=1e5))
+        (figures,) = reactions_at(end, feed).figures
+        assert figures.extent == pytest.approx(share, abs=1e-9)
+        assert figures.q_over_k == pytest.approx(1.0, abs=1e-9)
+        assert end.T == pytest.approx(T_eq, abs=0.01)
+
+
 @pytest.mark.parametrize(
     ("name", "expected"),
     [
@@ -348,6 +369,12 @@ def test_absent_carbon_needs_its_activity():
     assert any("as given" in note for note in about_to_form.notes)
     present = reaction_figures(reaction, gas | feed_of(**{"C(gr)": 1.0}), 1000.0, 1e5)
     assert present.ln_q == pytest.approx(about_to_form.ln_q, abs=1e-12)
+
+
+def test_other_gas_models_are_refused():
+    with pytest.raises(InputError) as caught:
+        reaction_figures(parsed("N2 + O2 = 2 NO"), feed_of(N2=1.0, O2=1.0), 900.0, 1e5, gas="pr")
+    assert caught.value.field == "gas"
 
 
 def test_quotient_follows_pressure_and_inerts():

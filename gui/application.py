@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING
 
 from PySide6.QtWidgets import QApplication
 
+from gui.edits import blank_project
 from gui.preferences import Preferences
 from gui.session import Session, settle_case
 from gui.theme import Theme
@@ -29,4 +30,5 @@ def make(
     app.setDesktopFileName("thalweg")
     preferences = preferences or Preferences()
     window = Window(Session(settle), Theme(app, theme or preferences.theme), preferences)
+    window.session.open_document(blank_project(), None)
     return app, window

@@ -5,10 +5,15 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from gui.document import Document, replaced
-from solver.project.model import Amount, Candidates, Case, Quantity, Stream
+from solver.project.model import Amount, Candidates, Case, Project, Quantity, Stream
 
 AMBIENT_T = Quantity(value=25, unit="degC")
 AMBIENT_p = Quantity(value=1, unit="bar")
+
+
+def blank_project() -> Project:
+    """What New opens: one case with one empty stream, ready to be typed in."""
+    return Project(cases=(add_stream(Case()),))
 
 
 # -- streams
@@ -130,7 +135,7 @@ def forbid(case: Case, key: str, by_rule: bool) -> Case:
 
 def add_case(document: Document) -> Document:
     """The document with one more, empty case, which is looked at."""
-    return _with_new(document, Case(name=_free_name(document, "Case")))
+    return _with_new(document, add_stream(Case(name=_free_name(document, "Case"))))
 
 
 def duplicate_case(document: Document) -> Document:

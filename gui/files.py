@@ -8,10 +8,10 @@ from pathlib import Path
 from PySide6.QtWidgets import QFileDialog, QWidget
 
 from gui.dialogs.unsaved import Choice, ask_unsaved
+from gui.edits import blank_project
 from gui.preferences import Preferences
 from gui.session import Session
 from solver.errors import SettleError
-from solver.project.model import Project
 
 SUFFIX = ".thalweg"
 FILTER = f"Thalweg projects (*{SUFFIX});;All files (*)"
@@ -50,7 +50,7 @@ class Files:
         """Start an empty project."""
         if not self.may_leave():
             return False
-        self._session.open_document(Project(), None)
+        self._session.open_document(blank_project(), None)
         return True
 
     def open(self) -> bool:

@@ -6,7 +6,8 @@ import sys
 from collections.abc import Sequence
 
 COMMANDS = ("settle", "what-if", "sheet", "species")
-FLAGS = ("--help", "-h", "--version")
+WARM_AFTER = 2.0
+"""Seconds after the start at which what may be needed later is loaded."""
 
 
 def main(argv: Sequence[str] | None = None) -> int:
@@ -24,6 +25,11 @@ def main(argv: Sequence[str] | None = None) -> int:
     """
     arguments = list(sys.argv[1:] if argv is None else argv)
     first = arguments[0] if arguments else ""
+    if first == "--version":
+        from gui.version import program_version
+
+        print(f"thalweg {program_version()}")
+        return 0
     if first in COMMANDS or first.startswith("-"):
         from solver.cli import main as headless
 
@@ -48,8 +54,19 @@ def main(argv: Sequence[str] | None = None) -> int:
     return show(first)
 
 
+def _warm_units() -> None:
+    """Bring in the library of rare units, so that the first half-typed one costs no pause."""
+    from contextlib import suppress
+
+    from solver.project.units import UnitError, unit_kind
+
+    with suppress(UnitError):
+        unit_kind("furlong", "volume")
+
+
 def show(file: str) -> int:
     """Open the window on `file` ("" for an empty project) and run until it is closed."""
+    import threading
     from pathlib import Path
 
     from gui.application import make
@@ -59,6 +76,7 @@ def show(file: str) -> int:
     window.show()
     if file:
         window.files.read(Path(file))
+    threading.Timer(WARM_AFTER, _warm_units).start()
     try:
         return app.exec()
     finally:

@@ -21,6 +21,10 @@ QLabel[role="warning"] { color: {warning}; }
 QLabel[role="good"] { color: {good}; }
 QLabel[stale="true"] { color: {stale}; }
 
+QAbstractItemView#offers { background: {panel}; border: 1px solid {line}; outline: 0;
+            selection-background-color: {accent_wash}; selection-color: {text}; }
+QAbstractItemView#offers::item { padding: 3px 6px; }
+
 QToolTip { background: {panel}; color: {text}; border: 1px solid {line}; padding: 4px; }
 
 QLineEdit { background: {panel}; border: 1px solid {line}; border-radius: 3px;
@@ -101,7 +105,7 @@ QScrollBar::handle:hover { background: {muted}; }
 QScrollBar::add-line, QScrollBar::sub-line { width: 0; height: 0; }
 QScrollBar::add-page, QScrollBar::sub-page { background: transparent; }
 
-QFrame#notice { background: {faint}; border: 0; border-bottom: 1px solid {line}; }
+QFrame#notice { background: {faint}; border: 1px solid {muted}; border-radius: 3px; }
 QFrame#notice[level="warning"] { background: {warning_wash}; }
 QPlainTextEdit { background: {panel}; border: 1px solid {line}; }
 """

@@ -50,7 +50,6 @@ class Window(QMainWindow):
         self._painted = False
         self.actions_by_name = actions.build(self, self._callbacks())
         self.header = Header(session, theme, self.actions_by_name)
-        self.notice = Notice()
         self.going_in = GoingIn(session, theme)
         self.held_fixed = HeldFixed(session)
         self.may_form = MayForm(session, theme)
@@ -67,12 +66,12 @@ class Window(QMainWindow):
 
     def _place(self) -> None:
         page = QWidget()
+        self.notice = Notice(page)
         page.setObjectName("page")
         outer = QVBoxLayout(page)
         outer.setContentsMargins(0, 0, 0, 0)
         outer.setSpacing(0)
         outer.addWidget(self.header)
-        outer.addWidget(self.notice)
         below = QHBoxLayout()
         below.setContentsMargins(GRID * 2, GRID * 2, GRID * 2, GRID * 2)
         below.setSpacing(GRID * 2)
@@ -253,6 +252,7 @@ class Window(QMainWindow):
         QApplication.processEvents()
         self.what_if.load_plot()
         self._share_height()
+        self.going_in.focus_first()
 
     def closeEvent(self, event: QCloseEvent) -> None:
         """Ask about unsaved changes; then wait for the workers."""

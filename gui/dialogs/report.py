@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import platform
-from importlib.metadata import PackageNotFoundError, version
 
 from PySide6.QtGui import QFontDatabase, QGuiApplication
 from PySide6.QtWidgets import (
@@ -18,15 +17,8 @@ from PySide6.QtWidgets import (
 
 from gui.parts.card import Label
 from gui.theme import GRID
+from gui.version import program_version
 from solver.project.cautions import CANDIDATES, JUDGEMENT, LIMIT, SEALED
-
-
-def program_version() -> str:
-    """The version that is installed."""
-    try:
-        return version("thalweg")
-    except PackageNotFoundError:
-        return "from source"
 
 
 class BugReport(QDialog):

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 
-from PySide6.QtCore import Qt
+from PySide6.QtCore import Qt, QTimer
 from PySide6.QtGui import QKeyEvent
 from PySide6.QtWidgets import (
     QAbstractItemView,
@@ -129,6 +129,9 @@ class MayForm(Card):
             button.clicked.connect(lambda on, name=name: self._pick_phase(name, on))
         self.model.toggled.connect(self._toggle)
         self.search.returnPressed.connect(self._add_species)
+        self.completer.activated.connect(
+            lambda _: QTimer.singleShot(0, self.search, self._add_species)
+        )
         self.search.textEdited.connect(lambda _: self.search_sentence.say(""))
         self._session.document_changed.connect(self.refresh)
         self._session.answer_changed.connect(self.show_answer)
@@ -166,11 +169,11 @@ class MayForm(Card):
         self._names |= {sp.key: sp.name for sp in species}
         keys = [sp.key for sp in species]
         wanted = dict.fromkeys([*keys, *wish.added, *wish.excluded])
-        if not self._order:
+        if set(self._order) != set(wanted):
+            self._order = []
             keys = sorted(keys, key=_by_fate(answer.value.end))
             wanted = dict.fromkeys([*keys, *wish.added, *wish.excluded])
-        self._order = [k for k in self._order if k in wanted]
-        self._order += [k for k in wanted if k not in self._order]
+            self._order = list(wanted)
         remarks = self._remarks(answer.value.end) if settled else {}
         self.model.show(
             [
@@ -193,7 +196,7 @@ class MayForm(Card):
                 self.view.setSpan(i, 1, 1, 2)
 
     def _remarks(self, end) -> dict[str, str]:  # type: ignore[no-untyped-def]
-        out = {k: f"activity {number_text(a, 2)}, absent" for k, a in end.proof.absent.items()}
+        out = {k: f"activity {number_text(a, 2)}" for k, a in end.proof.absent.items()}
         out |= {k: "forms" for k, n in end.phase_amounts.items() if k != "gas" and n > 0}
         return out | dict.fromkeys(end.outside_range, "outside data range")
 

@@ -233,6 +233,8 @@ class WhatIf(Card):
         answer = self._session.answer
         if line is None:
             self._key = None
+            if not self._range_faults():
+                self.plot.set_empty_range(*range_of(self._session.case))
             self.plot.show_line(None, unit)
             self.plot.set_mark(None)
             self.remark.setText("")

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from PySide6.QtCore import Qt
+from PySide6.QtCore import Qt, QTimer
 from PySide6.QtWidgets import QFrame, QHBoxLayout, QLabel, QToolButton, QVBoxLayout, QWidget
 
 from gui.theme import CARD_PADDING, GRID, sized
@@ -36,20 +36,36 @@ class Label(QLabel):
 
 
 class Sentence(Label):
-    """A wrapped sentence that takes no room while it is empty."""
+    """A wrapped sentence that takes no room while it is empty.
+
+    It waits a moment before it appears: half-typed text is wrong most of the time, and a line
+    that comes and goes with each key would make the panel jump.
+    """
+
+    DELAY = 350
+    """Milliseconds."""
 
     def __init__(self, role: str = "fault", size: str = "small") -> None:
         super().__init__("", role, size)
         self.setWordWrap(True)
         self.setTextInteractionFlags(Qt.TextInteractionFlag.TextSelectableByMouse)
         self.setFocusPolicy(Qt.FocusPolicy.NoFocus)
+        self._timer = QTimer(self, singleShot=True, interval=self.DELAY)
+        self._timer.timeout.connect(self.show)
         self.hide()
 
     def say(self, text: str) -> None:
         """Show `text`; "" hides the sentence."""
         if text != self.text():
             self.setText(text)
-        self.setVisible(bool(text))
+        if not text:
+            self._timer.stop()
+            self.hide()
+        elif self.isHidden():
+            if self.DELAY and self.property("role") in ("fault", "warning"):
+                self._timer.start()
+            else:
+                self.show()
 
 
 class Card(QFrame):

@@ -47,8 +47,5 @@ class CompositionView(QWidget):
 
     def show_end(self, end, units: Units, stale: bool) -> None:  # type: ignore[no-untyped-def]
         """Show an end state."""
-        before = [isinstance(r, str) for r in self.model.rows]
         self.model.show(end, units)
         self.model.set_stale(stale)
-        if before != [isinstance(r, str) for r in self.model.rows]:
-            self._span()

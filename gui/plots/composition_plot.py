@@ -39,6 +39,7 @@ class CompositionPlot(QWidget):
         self._line: Line | None = None
         self._mark: Mark | None = None
         self._unit = "degC"
+        self._empty = (500.0, 1500.0)
         self._log = False
         self._stale = False
         self._keys: list[str] = []
@@ -80,6 +81,10 @@ class CompositionPlot(QWidget):
         """Draw a line against temperature in `unit`; None clears the plot."""
         self._line, self._unit, self._stale = line, unit, stale
         self.draw()
+
+    def set_empty_range(self, low: float, high: float) -> None:
+        """The temperatures (K) between which an empty plot is drawn."""
+        self._empty = (low, high)
 
     def set_stale(self, stale: bool) -> None:
         """Pale the curves: they belong to an earlier input."""
@@ -125,11 +130,16 @@ class CompositionPlot(QWidget):
         if self._line is None:
             self.labels.set_labels([], small)
             self._read(None)
+            low, high = self._empty
+            x = (float(self._x(low)), float(self._x(high)))
+            item.getViewBox().setRange(xRange=x, yRange=(0, 100), padding=0)
             return
         self._draw_curves(item, small)
         self._draw_changes(item, small)
         self._draw_mark(item, small)
-        self._rule = pg.InfiniteLine(angle=90, pen=QPen(QColor(t.muted), 1))
+        pen = QPen(QColor(t.muted), 1)
+        pen.setCosmetic(True)
+        self._rule = pg.InfiniteLine(angle=90, pen=pen)
         self._rule.hide()
         item.addItem(self._rule, ignoreBounds=True)
         self._set_range(item)
@@ -209,6 +219,7 @@ class CompositionPlot(QWidget):
             labelOpts={
                 "position": 0.97,
                 "color": t.accent,
+                "fill": t.panel,
                 "anchors": [(0.0, 0.5), (1.0, 0.5)],
             },
         )

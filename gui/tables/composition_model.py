@@ -17,6 +17,7 @@ from solver.project.wording import formula_text, number_text, unit_text
 SPECIES, NAME, BAR, SHARE, AMOUNT, MASS = range(6)
 DECADES = 8.0
 """Decades that a logarithmic bar spans; less is a trace."""
+TRACE = 1e-6
 _TOP = QModelIndex()
 _Row = SpeciesRow | str
 
@@ -45,15 +46,21 @@ class CompositionModel(QAbstractTableModel):
         """Show an end state."""
         gases, condensed = composition(end)
         new: list[_Row] = []
-        if gases:
-            new += [*(["Gas"] if condensed else []), *gases]
         if condensed:
+            # Condensed phases stand before the traces of the gas, or nobody would see them.
+            main = [r for r in gases if r.share >= TRACE]
+            traces = gases[len(main) :]
+            new += ["Gas", *main] if main else []
             new += ["Condensed, as share of the whole", *condensed]
+            new += ["Traces in the gas", *traces] if traces else []
+        else:
+            new += gases
         heads = (self._units, self._full)
         self._units = units
         top = max((r.share for r in (*gases, *condensed)), default=1.0)
         self._full = min(math.ceil(top * 10 - 1e-9) / 10, 1.0) or 1.0
-        if len(new) == len(self._rows):
+        kinds = [isinstance(r, str) for r in new]
+        if kinds == [isinstance(r, str) for r in self._rows]:
             self._rows = new
             self.repaint()
         else:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 
-from PySide6.QtCore import QEvent, QModelIndex, QObject, QRect, Qt
+from PySide6.QtCore import QEvent, QModelIndex, QObject, QRect, Qt, QTimer
 from PySide6.QtGui import QColor, QFontMetrics, QKeyEvent, QPainter, QPen
 from PySide6.QtWidgets import (
     QCompleter,
@@ -16,7 +16,7 @@ from PySide6.QtWidgets import (
 )
 
 from gui.fields.quantity_field import LiveLine
-from gui.fields.species_completer import SpeciesCompleter
+from gui.fields.species_completer import PassOn, SpeciesCompleter
 from gui.tables.stream_model import FAULT_ROLE
 from gui.theme import Theme, mixed
 
@@ -179,9 +179,24 @@ class EditDelegate(CellDelegate):
                 completer.attach(line)
             else:
                 line.setCompleter(completer)
+                PassOn(completer, line)
+            # A click on an offer is the whole answer: it closes the cell as Enter does.
+            completer.activated.connect(
+                lambda _: QTimer.singleShot(0, line, lambda: self._take(line))
+            )
         if self._live:
             line.textEdited.connect(lambda _: self.commitData.emit(line))
         return line
+
+    def _take(self, line: QWidget) -> None:
+        self.commitData.emit(line)
+        self.closeEditor.emit(line, QStyledItemDelegate.EndEditHint.SubmitModelCache)
+
+    def updateEditorGeometry(
+        self, editor: QWidget, option: QStyleOptionViewItem, index: QModelIndex
+    ) -> None:
+        """The line covers the cell."""
+        editor.setGeometry(option.rect)
 
     def setEditorData(self, editor: QWidget, index: QModelIndex) -> None:
         """Fill the line; what is being typed is overwritten by undo and redo alone."""

@@ -126,7 +126,8 @@ class StreamModel(QAbstractTableModel):
     def _text(self, amount: Amount, row: int, column: int, role: int) -> Any:
         shown = role == Qt.ItemDataRole.DisplayRole
         if column == SPECIES:
-            return formula_text(amount.species) if shown else amount.species
+            typed = amount.species
+            return formula_text(typed) if shown and _is_key(typed) else typed
         if column == AMOUNT:
             return typed_number(amount.value)
         if column == UNIT:
@@ -193,6 +194,10 @@ class StreamModel(QAbstractTableModel):
         if new:
             case = edits.put_amounts(self._session.case, self.stream, row, new)
             self._session.edit_case(case, f"paste {len(new)} rows" if len(new) > 1 else "paste")
+
+
+def _is_key(text: str) -> bool:
+    return text[:1].isupper() and " " not in text.partition("(")[0]
 
 
 def read_amount(text: str) -> dict[str, Any]:

@@ -47,6 +47,7 @@ def preferences(tmp_path):
 def make_window(qtbot, preferences, monkeypatch):
     """A factory of windows, shown and settled; each is closed again and leaves nothing running."""
     made = []
+    monkeypatch.setattr("gui.parts.card.Sentence.DELAY", 0)
     monkeypatch.setattr("gui.line.POINTS", 7)  # a coarse line is settled sooner
 
     def factory(start=None, settle=settle_case, path=None, theme="light", wait=True):

@@ -168,13 +168,17 @@ class Library(Mapping[str, Species]):
 
     @functools.cached_property
     def _names(self) -> dict[str, list[str]]:
-        """Names and synonyms, letters folded -> keys, gas before liquid before solid."""
+        """Names and synonyms, letters folded -> keys, the record that the name means first."""
+        rows = sorted(
+            self._rows(),
+            key=lambda r: (r.charge != "0", not r.named, _PHASES.index(r.phase), not r.usual),
+        )
         index: dict[str, list[str]] = {}
-        for row in sorted(
-            self._rows(), key=lambda r: (not r.named, _PHASES.index(r.phase), not r.usual)
-        ):
-            for name in (row.name, *row.synonyms.split("|")):
-                if name and row.key not in (same := index.setdefault(folded(name), [])):
+        for row in rows:
+            index.setdefault(folded(row.name), []).append(row.key)
+        for row in rows:  # a name of one record goes before a synonym of another
+            for synonym in row.synonyms.split("|"):
+                if synonym and row.key not in (same := index.setdefault(folded(synonym), [])):
                     same.append(row.key)
         return index
 

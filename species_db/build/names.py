@@ -53,6 +53,8 @@ def give_names(drafts: list[Draft]) -> None:
         ]
         names = [n for n in choices if n]
         d.name = names[0]
+        if d.charge and d.elements and not re.search(r"ion\b|ium\b|proton|ide\b", d.name):
+            d.name += " cation" if d.charge > 0 else " anion"
         synonyms = names[1:] if d.cas or d.origin == "janaf" else []
         if entry and not d.charge:
             synonyms += [entry.iupac, *entry.synonyms]
@@ -90,7 +92,10 @@ def _label(d: Draft, long_text: str) -> str:
     text = re.sub(r"\s+", " ", long_text.replace("??", "")).strip()
     text = re.split(r"\b(?:SIGMA|STATWT|T0=|IA=|REF|CALC|FC|DATA|FROM|HF298)\b|\|", text)[0]
     text = re.sub(r"\bRAD\b\.?", "radical", text, flags=re.IGNORECASE)
-    words = [w for w in text.split(" ") if w and not _STRUCTURE.match(w)]
+    text = re.sub(r"\bESTIMATED USING.*$|\bSYMNO=\d|\bTRC\b", "", text, flags=re.IGNORECASE)
+    words = [
+        w for w in text.split(" ") if w and not _STRUCTURE.match(w) and not re.search("[#!*]", w)
+    ]
     name = " ".join(words).strip(" ,.;?|").lower()
     formula = trade_formula(d.elements, d.charge)
     if not re.search(r"[a-z]{4,}", name) or name.count("(") != name.count(")"):
@@ -119,8 +124,14 @@ def _lower(name: str) -> str:
     )
     if name[:1].isupper() and (name[1:2].islower() or name[1:2] == ""):
         name = name[0].lower() + name[1:]
-    words = [w.lower() if w[1:].islower() and w[:1].isupper() else w for w in name.split(" ")]
-    return " ".join(words)
+    name = re.sub(r" \((\d+CI,?)+\)$", "", name)
+    name = re.sub(r"(?<![A-Za-z])[A-Z](?=[a-z]{2})", lambda m: m.group().lower(), name)
+    turned = re.fullmatch(r"([^ ,]*[a-z]{4}[^ ,]*), ([^,]*[a-z]{3}[^, ]*)-", name)
+    if turned:  # an index entry, base name first
+        base, front = turned.groups()
+        return f"{front}-{base}" if base[0].isdigit() else front + base
+    turned = re.fullmatch(r"(hydroperoxide|peroxide), ([a-z]+)", name)
+    return f"{turned.group(2)} {turned.group(1)}" if turned else name
 
 
 def _clean(name: str, synonyms: list[str], forced: list[str]) -> list[str]:

@@ -12,6 +12,10 @@ ESTIMATES = {"JOBACK", "WILSON_JASPERSON", "FEDORS", "PSRK_EST"}
 """Group-contribution estimates, not taken: they were never meant for radicals or metal vapours."""
 
 
+HIGHEST_TC = 2000.0
+"""Above this a critical temperature, K, is an extrapolation (metals) and is not taken."""
+
+
 def critical_constants(d: Draft) -> tuple[float, float, float] | None:
     """Critical temperature K, pressure Pa and acentric factor, all three measured or none."""
     from chemicals import Pc, Pc_methods, Tc, Tc_methods, omega, omega_methods
@@ -23,7 +27,8 @@ def critical_constants(d: Draft) -> tuple[float, float, float] | None:
             return None
         found.append(x)
     t, p, w = found
-    return (t, p, w) if t > 0 and p > 0 and -0.6 < w < 2.0 else None
+    plausible = 3.0 < t < HIGHEST_TC and 1e5 < p < 5e7 and -0.6 < w < 2.0
+    return (t, p, w) if plausible else None
 
 
 def _first(value, methods, cas):  # type: ignore[no-untyped-def]

@@ -15,7 +15,7 @@ HERE = Path(__file__).parent
 COMMON = (
     "H2O CO CO2 H2 O2 N2 Ar NO NO2 N2O NH3 CH4 C2H2 C2H4 HCN CH2O OH H O N HO2 H2O2 SO2 SO3 SO "
     "H2S COS CS2 S2 HCl Cl2 Cl F2 HF F N2H4 O3 HNO3 COCl2 SiH4 PH3 NH NH2 CH3 CN C2N2 CCl4 "
-    "C(gr) Fe(s) Fe2O3(s) Fe3O4(s) CaO(s) MgO(s) Al2O3(s) Cu(s) NaCl(s) SiO2(quartz) S(l)"
+    "C(gr) Fe(s) Fe2O3(s) Fe3O4(s) CaO(s) MgO(s) Al2O3(s) Cu(s) NaCl(s) SiO2(quartz)"
 ).split()
 
 
@@ -44,46 +44,41 @@ JANAF = {
 @pytest.mark.parametrize("key", sorted(JANAF))
 def test_gas_against_janaf_row_by_row(lib, key):
     """NIST-JANAF 1998, tables of the package janaf; the records here are Burcat-Ruscic ones."""
-    try:
-        table = janaf_table(JANAF[key])
-    except ValueError:
-        names = [n for n in listing_names() if n.startswith(f"{key},")]
-        pytest.fail(f"no table {JANAF[key]!r}; there are {names}")
+    table = janaf_table(JANAF[key])
     sp = lib[key]
     rows = table[(table[:, 0] >= 298) & (table[:, 0] <= 3000)]
     assert len(rows) > 20
     T = rows[:, 0]
-    assert np.max(np.abs(sp.cp(T) - rows[:, 1])) < 0.35
-    assert np.max(np.abs(sp.s(T) - rows[:, 2])) < 0.15
-    assert np.max(np.abs(sp.h(T) - sp.h(298.15) - 1e3 * rows[:, 3])) < 400.0
-
-
-def listing_names() -> list[str]:
-    folder = Path(find_spec("janaf").origin).parent
-    return json.loads((folder / "janaf.json").read_text("utf-8"))["display"]
+    g = (sp.h(T) - T * sp.s(T)) / (R * T)
+    h298 = table[np.abs(table[:, 0] - 298.15) < 0.01][0, 4] * 1e3
+    g_janaf = (h298 + 1e3 * rows[:, 3] - T * rows[:, 2]) / (R * T)
+    # at 298 K the shift to ATcT shows (CO2 50 J/mol, 0.02), at 3000 K water's newer partition sum
+    assert np.max(np.abs(g - g_janaf)) < 0.03
+    assert np.max(np.abs(sp.cp(T) / rows[:, 1] - 1)) < 0.025
+    assert np.max(np.abs(sp.s(T) - rows[:, 2])) < 0.6
 
 
 def test_common_species_against_a_second_source(lib):
-    """cp, S and H at 298.15 K against `chemicals` (JANAF and CRC rows) for at least 40 species.
+    """H and S at 298.15 K against the rows of `chemicals` (ATcT, CRC, NIST-JANAF, WebBook).
 
-    What differs by more than a few kJ/mol is named in `KNOWN`, with both values in data.
+    Differences beyond the bounds are no faults of the table but of the older value: hydrogen
+    peroxide's entropy (NIST-JANAF 232.99, CRC 232.7; here 234.5, both torsional states), carbonyl
+    sulfide's enthalpy (CRC -142.0; here and NIST-JANAF -138.4) and phosphine's (CRC 5.4; here
+    ATcT or newer 11.8 kJ/mol).
     """
     from chemicals.reaction import Hfg, Hfs, S0g, S0s
 
-    known = {"HO2", "CH2O", "CN", "PH3", "NH", "HCN", "CCl4"}  # older JANAF enthalpies
     compared = 0
     for key in COMMON:
         sp = lib[key]
         heat, entropy = (Hfg, S0g) if sp.phase == "gas" else (Hfs, S0s)
-        if sp.phase == "liquid":
-            continue
         h, s = heat(sp.cas), entropy(sp.cas)
         if h is None or s is None or math.isnan(h) or math.isnan(s):
             continue
         compared += 1
-        assert sp.s(298.15) == pytest.approx(s, abs=0.7), key
-        if key not in known:
-            assert sp.h(298.15) == pytest.approx(h, abs=2600.0), key
+        assert sp.s(298.15) == pytest.approx(s, abs=2.0 if key == "H2O2" else 0.4), key
+        within = {"COS": 4000.0, "PH3": 7000.0}.get(key, 1500.0)
+        assert sp.h(298.15) == pytest.approx(h, abs=within), key
     assert compared >= 40
 
 
@@ -92,15 +87,19 @@ def test_pyromat_agrees(lib):
     pm = pytest.importorskip("pyromat")
     keys = "H2O CO CO2 H2 O2 N2 NO NO2 N2O NH3 CH4 C2H4 OH SO2 SO3 H2S HCl Cl2 HF O3".split()
     T = np.array([300.0, 500.0, 1000.0, 2000.0, 3000.0])
-    for key in keys:
+    known = [key for key in keys if f"ig.{key}" in pm.dat.data]
+    assert len(known) >= 15
+    for key in known:
         gas = pm.get(f"ig.{key}")
         mass = lib[key].molar_mass
         s = np.array([float(np.squeeze(gas.s(T=t, p=1.0))) for t in T]) * 1e3 * mass
         h = np.array([float(np.squeeze(gas.h(T=t, p=1.0))) for t in T]) * 1e3 * mass
         shift = lib[key].h(300.0) - h[0]
         assert abs(shift) < 2500.0, key
-        assert np.max(np.abs(lib[key].h(T) - h - shift)) < 1500.0, key
-        assert np.max(np.abs(lib[key].s(T) - s)) < 1.0, key
+        # methane there is the anharmonic one: 4 kJ/mol and 3 J/(mol K) off at 2000 K
+        upto = 3 if key == "CH4" else 5
+        assert np.max(np.abs(lib[key].h(T) - h - shift)[:upto]) < 1500.0, key
+        assert np.max(np.abs(lib[key].s(T) - s)[:upto]) < 1.0, key
 
 
 def test_codata_key_values(lib):
@@ -224,25 +223,30 @@ def test_melting_points_against_an_independent_list(lib, records):
 
 
 def test_boiling_points_against_an_independent_list(lib, records):
-    """Where liquid and ideal gas meet at 1 bar, against the boiling points in `chemicals`."""
+    """Where liquid and ideal gas meet at 1 bar, against the boiling points in `chemicals`.
+
+    Molecular liquids, which boil below 700 K. Left out: liquids whose vapour is not the gas of
+    their formula (halides that pair, phosphorus as P4), and acids and chlorides that decompose.
+    """
     from chemicals import Tb
 
+    other_vapour = set("AlBr3(l) AlCl3(l) AlI3(l) FeCl3(l) P(l) H2SO4(l) ICl(l)".split())
+    other_vapour |= {"CO(NH2)2(l)", "WBr5(l)"}
     gases = {s.cas: s for s in records if s.phase == "gas" and s.cas and not s.charge}
     misses = []
     for liquid in records:
         gas = gases.get(liquid.cas)
-        if liquid.phase != "liquid" or gas is None:
+        if liquid.phase != "liquid" or gas is None or liquid.key in other_vapour:
             continue
         listed = Tb(liquid.cas)
-        if listed is None or not (liquid.T_min - 30 < listed < liquid.T_max + 100):
+        if listed is None or listed > 700.0:
             continue
         T = np.arange(max(listed - 150, 100.0), listed + 150, 0.5)
         turn = np.where(np.diff(np.sign(liquid.g(T) - gas.g(T))) > 0)[0]
-        at = T[turn[np.argmin(np.abs(T[turn] - listed))]] if len(turn) else np.nan
-        misses.append((abs(at - listed), liquid.key, at, listed))
-    miss = np.array([m[0] for m in misses])
-    assert len(misses) > 120
-    assert np.nanmedian(miss) < 5.0
-    assert np.mean(miss < 15.0) > 0.85, sorted(misses, key=lambda m: -np.nan_to_num(m[0], nan=999))[
-        :20
-    ]
+        assert len(turn), liquid.key
+        misses.append((abs(T[turn[np.argmin(np.abs(T[turn] - listed))]] - listed), liquid.key))
+    miss = np.array([m for m, _ in misses])
+    assert len(misses) > 140
+    assert np.median(miss) < 3.0
+    assert np.percentile(miss, 90) < 10.0
+    assert miss.max() < 16.0, max(misses)

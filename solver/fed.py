@@ -68,9 +68,19 @@ def as_fed(feed: Mapping[Species, float], T: float, p: float, gas: str = "ideal"
         raise InputError("The feed is empty; give at least one amount.", "feed", 0.0, "above 0 mol")
     thermo = ThermoTable(species)
     is_gas = np.array([sp.phase == "gas" for sp in species])
-    g, h, _ = thermo.at(T)
-    state = totals(n, is_gas, np.array([condensed_volume(sp) for sp in species]), g, h, T, p, None)
-    return Fed(T=T, p=p, V=state.V, H=state.H, U=state.U, S=state.S, G=state.G)
+    at_T, at_p = np.array([T]), np.array([p])
+    g, h, _ = thermo.over(at_T)
+    volume = np.array([condensed_volume(sp) for sp in species])
+    state = totals(n[None, :], is_gas, volume, g, h, at_T, at_p, None)
+    return Fed(
+        T=T,
+        p=p,
+        V=float(state.V[0]),
+        H=float(state.H[0]),
+        U=float(state.U[0]),
+        S=float(state.S[0]),
+        G=float(state.G[0]),
+    )
 
 
 def check_gas(gas: str) -> None:

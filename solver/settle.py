@@ -9,12 +9,12 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
+import species_db
 from solver.core.basis import CHARGE, formula_vector
 from solver.core.cases import Feed
 from solver.core.minimise import NotHeld, Unsettled
-from solver.core.mixture import Held, Mixture, mixture_of
+from solver.core.mixture import Held, Mixture, R, mixture_of
 from solver.core.temperature import OutOfReach, Point, Search, find_temperature, point_at
-from solver.core.totals import Totals
 from solver.core.vessel import TooSmall
 from solver.endstate import PRESENT, EndState
 from solver.errors import InputError, NoEndState, NotProven
@@ -110,6 +110,7 @@ def _checked_feed(
     gathered: dict[Species, float] = {}
     for item, amount in feed.items():
         if isinstance(item, str):
+            item = _resolved(item, by_key)
             if item not in by_key:
                 raise InputError(
                     f"The feed holds {item}, which is not the key of a candidate; "
@@ -127,6 +128,17 @@ def _checked_feed(
             "The feed is empty; give at least one amount above zero.", "feed", 0.0, "above 0 mol"
         )
     return list(gathered), np.array(list(gathered.values()))
+
+
+def _resolved(text: str, by_key: Mapping[str, Species]) -> str:
+    """The key of the candidate that another name or spelling stands for, else the text."""
+    if text not in by_key:
+        try:
+            key = species_db.load()[text].key
+        except KeyError:
+            return text
+        return key if key in by_key else text
+    return text
 
 
 def _check_elements(mixture: Mixture, fed: Sequence[Species]) -> None:
@@ -209,7 +221,7 @@ def _end_state(
     T, p, n = point.T, point.p, point.n
     g, _, _ = mixture.thermo.at(T)
     closure, trace = element_residuals(mixture, n, feed.amounts[0], feed.vectors)
-    held_volume = point.totals.V if PAIRS[fixed.pair].holds_volume else None
+    held_volume = float(point.totals.V[0]) if PAIRS[fixed.pair].holds_volume else None
     gap, force = optimality_gap(mixture, n, feed.totals[0], point.potentials, g, T, p, held_volume)
     absent = {sp.key: 0.0 for sp in species if sp.phase != "gas"}
     for sp, amount, f in zip(mixture.species, n, force, strict=True):
@@ -221,7 +233,7 @@ def _end_state(
     proof = Proof(
         element_residual=closure,
         trace_residual=trace,
-        energy_residual=_energy_residual(fixed, point.totals, T, n, scale),
+        energy_residual=_energy_residual(fixed, point, n, scale),
         gap=gap,
         absent=MappingProxyType(absent),
     )
@@ -239,15 +251,14 @@ def _end_state(
     named = n > PRESENT * n.sum()
     thermo = mixture.thermo
     outside = named & ((thermo.T_min > T) | (thermo.T_max < T))
-    state = point.totals
     return EndState(
         T=T,
         p=p,
-        V=state.V / scale,
-        H=state.H / scale,
-        U=state.U / scale,
-        S=state.S / scale,
-        G=state.G / scale,
+        V=point.value("V") / scale,
+        H=point.value("H") / scale,
+        U=point.value("U") / scale,
+        S=point.value("S") / scale,
+        G=point.value("G") / scale,
         amounts=MappingProxyType(amounts),
         species=tuple(species),
         fixed=fixed,
@@ -257,9 +268,9 @@ def _end_state(
     )
 
 
-def _energy_residual(fixed: Fixed, state: Totals, T: float, n: Array, scale: float) -> float:
+def _energy_residual(fixed: Fixed, point: Point, n: Array, scale: float) -> float:
     variable = PAIRS[fixed.pair].searched
     if variable is None:
         return 0.0
-    unit = 8.314462618 * float(n.sum()) * (1.0 if variable == "S" else T)
-    return abs(float(getattr(state, variable)) - fixed.values[0] * scale) / unit
+    unit = R * float(n.sum()) * (1.0 if variable == "S" else point.T)
+    return abs(point.value(variable) - fixed.values[0] * scale) / unit

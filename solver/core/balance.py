@@ -111,6 +111,11 @@ class GasSolution:
     closed: NDArray[np.bool_]
     iterations: int
 
+    def put(self, index: NDArray[np.intp], state: _State) -> None:
+        """Fill in the cases that were iterated on."""
+        self.n[index], self.log_a[index] = state.n, state.log_a
+        self.nu[index], self.w[index] = state.nu, state.w
+
 
 def solve_balances(
     system: GasSystem,
@@ -139,68 +144,118 @@ def solve_balances(
         Where condensed phases share the volume.
     """
     cases, m = b.shape
-    reactions, weights, extra = system.reactions, system.weights, system.extra
-    unknowns, rows = m + extra, m + (1 if vessel is not None else 0)
-    b_up, b_down = np.maximum(-b, 0.0), np.maximum(b, 0.0)
-    log_a, nu = log_a.copy(), nu.copy()
-    w = vessel.w.copy() if vessel is not None else np.zeros(cases)
-    log_n = log_a @ reactions.T - kappa + nu[:, None]
-    if vessel is not None:
-        log_n += (w - 1.0 / vessel.unit)[:, None] * system.swelling
-    n = np.exp(np.clip(log_n, -_EXP_LIMIT, _EXP_LIMIT))
-    closed = np.zeros(cases, dtype=bool)
-    failed = np.zeros(cases, dtype=bool)
-    last = np.full(cases, np.inf)
-    merit_last = np.full(cases, np.inf)
-    too_large = np.zeros(cases, dtype=int)
-    step = np.zeros((cases, unknowns))
-    cut1, cut2 = 2 * rows, 2 * rows + rows * unknowns
-    cut3 = cut2 + rows * unknowns
+    state = _State(system, kappa, b, log_a, nu, nu_limit, vessel)
+    if m + system.extra == 0:
+        return state.solution(np.ones(cases, dtype=bool), 0)
+    whole = None  # results of all cases, once some have been set aside
+    index = np.arange(cases)
+    closed_all = np.zeros(cases, dtype=bool)
     iteration = 0
-    if unknowns == 0:
-        return GasSolution(n, log_a, nu, w, ~closed, 0)
     while iteration < _MAX_ITERATIONS:
         iteration += 1
-        sums = n @ weights
-        P, M = sums[:, :rows], sums[:, rows:cut1]
-        P[:, :m] += b_up
-        M[:, :m] += b_down
-        J = np.empty((cases, unknowns, unknowns))
-        F = np.empty((cases, unknowns))
+        closed, failed = state.evaluate()
+        closed_all[index] = closed & ~failed
+        going = ~(closed | failed)
+        count = int(going.sum())
+        if count == 0:
+            break
+        if count <= 0.7 * len(index):
+            if whole is None:
+                whole = state.solution(closed_all, iteration)
+            else:
+                whole.put(index, state)
+            state, index = state.part(going), index[going]
+        state.advance()
+    if whole is None:
+        return state.solution(closed_all, iteration)
+    whole.put(index, state)
+    return whole
+
+
+class _State:
+    """Unknowns, residuals and slopes of the cases that are still being iterated."""
+
+    def __init__(
+        self,
+        system: GasSystem,
+        kappa: Array,
+        b: Array,
+        log_a: Array,
+        nu: Array,
+        nu_limit: Array,
+        vessel: Vessel | None,
+    ) -> None:
+        cases, m = b.shape
+        self.system, self.vessel, self.b, self.nu_limit = system, vessel, b, nu_limit
+        self.m, self.rows = m, m + (1 if vessel is not None else 0)
+        self.unknowns = m + system.extra
+        self.b_up, self.b_down = np.maximum(-b, 0.0), np.maximum(b, 0.0)
+        self.log_a, self.nu = log_a.copy(), nu.copy()
+        self.w = vessel.w.copy() if vessel is not None else np.zeros(cases)
+        self.log_n = log_a @ system.reactions.T - kappa + nu[:, None]
         if vessel is not None:
-            free = np.exp(nu) * vessel.unit
+            self.log_n += (self.w - 1.0 / vessel.unit)[:, None] * system.swelling
+        self.n = np.exp(np.clip(self.log_n, -_EXP_LIMIT, _EXP_LIMIT))
+        self.last = np.full(cases, np.inf)
+        self.merit_last = np.full(cases, np.inf)
+        self.too_large = np.zeros(cases, dtype=int)
+        self.step = np.zeros((cases, self.unknowns))
+        self.back = np.zeros(cases, dtype=bool)
+        self.going = np.ones(cases, dtype=bool)
+
+    def evaluate(self) -> tuple[NDArray[np.bool_], NDArray[np.bool_]]:
+        """Residuals F and slopes J at the present amounts; which cases are closed or lost."""
+        m, rows, unknowns, vessel = self.m, self.rows, self.unknowns, self.vessel
+        cut1, cut2 = 2 * rows, 2 * rows + rows * unknowns
+        cut3 = cut2 + rows * unknowns
+        sums = self.n @ self.system.weights
+        P, M = sums[:, :rows], sums[:, rows:cut1]
+        P[:, :m] += self.b_up
+        M[:, :m] += self.b_down
+        J = np.empty((len(P), unknowns, unknowns))
+        F = np.empty((len(P), unknowns))
+        if vessel is not None:
+            free = np.exp(self.nu) * vessel.unit
             P[:, m] += np.maximum(vessel.left, 0.0)
             M[:, m] += np.maximum(-vessel.left, 0.0) + free
-        J[:, :rows] = sums[:, cut1:cut2].reshape(-1, rows, unknowns) / P[:, :, None]
-        J[:, :rows] -= sums[:, cut2:cut3].reshape(-1, rows, unknowns) / M[:, :, None]
-        F[:, :rows] = np.log(P / M)
-        if extra:
+        with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
+            J[:, :rows] = sums[:, cut1:cut2].reshape(-1, rows, unknowns) / P[:, :, None]
+            J[:, :rows] -= sums[:, cut2:cut3].reshape(-1, rows, unknowns) / M[:, :, None]
+            F[:, :rows] = np.log(P / M)
+        if self.system.extra:
             total = sums[:, -1:]
-            F[:, -1] = np.log(total[:, 0]) - nu
+            F[:, -1] = np.log(total[:, 0]) - self.nu
             J[:, -1] = sums[:, cut3:-1] / total
             J[:, -1, m] -= 1.0
-            too_large = np.where(nu > nu_limit, too_large + 1, 0)
+            self.too_large = np.where(self.nu > self.nu_limit, self.too_large + 1, 0)
         if vessel is not None:
             J[:, m, m] -= free / M[:, m]
-            F[:, -1] -= np.log(w * vessel.unit)
-            J[:, -1, -1] -= 1.0 / w
-        beyond = (np.maximum(P, M) < _FAINT) | (log_n.max(axis=1) > 300.0)[:, None]
-        beyond |= ~np.isfinite(F[:, :rows])
-        if vessel is None and beyond.any():
-            _rescale(system, log_n, b, nu, beyond, J, F)
+            F[:, -1] -= np.log(self.w * vessel.unit)
+            J[:, -1, -1] -= 1.0 / self.w
+        else:
+            beyond = (np.maximum(P, M) < _FAINT) | (self.log_n.max(axis=1) > 300.0)[:, None]
+            beyond |= ~np.isfinite(F[:, :rows])
+            if beyond.any():
+                _rescale(self.system, self.log_n, self.b, self.nu, beyond, J, F)
         worst = np.abs(F).max(axis=1)
-        closed = (worst <= _CLOSED) | ((worst <= 1e-11) & (worst >= 0.5 * last))
-        failed |= ~np.isfinite(worst) | (too_large > _PATIENCE)
-        active = ~(closed | failed)
-        if not active.any():
-            break
+        closed = (worst <= _CLOSED) | ((worst <= 1e-11) & (worst >= 0.5 * self.last))
+        failed = ~np.isfinite(worst) | (self.too_large > _PATIENCE)
         merit = (F**2).sum(axis=1)
-        back = active & (merit > merit_last) & (worst > 1e-8)
-        J[~np.isfinite(J)] = 0.0
-        F[~np.isfinite(F)] = 0.0
-        newton = step if back.all() else _newton_steps(J, F)
-        if vessel is not None:  # densities change by a factor of ten at most
-            fall = np.maximum(-newton[:, -1], newton[:, -1] / 9.0) / (0.9 * w)
+        self.back = (merit > self.merit_last) & (worst > 1e-8)
+        self.merit_last = np.where(self.back, self.merit_last, merit)
+        self.last = np.where(self.back, self.last, worst)
+        self.going = ~(closed | failed)
+        self.J, self.F = J, F
+        return closed, failed
+
+    def advance(self) -> None:
+        """One Newton step; where the last one made matters worse, back along it instead."""
+        m, back, step = self.m, self.back, self.step
+        self.J[~np.isfinite(self.J)] = 0.0
+        self.F[~np.isfinite(self.F)] = 0.0
+        newton = step if back.all() else _newton_steps(self.J, self.F)
+        if self.vessel is not None:  # densities change by a factor of ten at most
+            fall = np.maximum(-newton[:, -1], newton[:, -1] / 9.0) / (0.9 * self.w)
             newton = newton / np.maximum(fall, 1.0)[:, None]
         if back.any():
             # worse than before: return three quarters of the way, and try the rest again
@@ -208,22 +263,36 @@ def solve_balances(
             step = np.where(back[:, None], 0.25 * step, newton)
         else:
             move = step = newton
-        merit_last = np.where(back, merit_last, merit)
-        last = np.where(back, last, worst)
-        move[~active] = 0.0
+        move[~self.going] = 0.0
         size = np.abs(move[:, : m + 1]).max(axis=1)
         damp = np.where(back, 1.0, np.minimum(1.0, _MAX_STEP / np.maximum(size, 1e-300)))
         if (damp < 1.0).any():
             move = move * damp[:, None]
             step = np.where(back[:, None], step, step * damp[:, None])
-        log_a += move[:, :m]
-        log_n += move @ system.effect.T
-        if extra:
-            nu += move[:, m]
-        if vessel is not None:
-            w += move[:, -1]
-        n = np.exp(np.clip(log_n, -_EXP_LIMIT, _EXP_LIMIT))
-    return GasSolution(n, log_a, nu, w, closed & ~failed, iteration)
+        self.step = step
+        self.log_a += move[:, :m]
+        self.log_n += move @ self.system.effect.T
+        if self.system.extra:
+            self.nu += move[:, m]
+        if self.vessel is not None:
+            self.w += move[:, -1]
+        self.n = np.exp(np.clip(self.log_n, -_EXP_LIMIT, _EXP_LIMIT))
+
+    def part(self, keep: NDArray[np.bool_]) -> _State:
+        """The cases that go on."""
+        out = object.__new__(_State)
+        out.__dict__.update(self.__dict__)
+        for name, value in self.__dict__.items():
+            if isinstance(value, np.ndarray):
+                setattr(out, name, value[keep])
+        if self.vessel is not None:
+            vessel = self.vessel
+            out.vessel = Vessel(vessel.left[keep], vessel.unit[keep], vessel.w[keep])
+        return out
+
+    def solution(self, closed: NDArray[np.bool_], iterations: int) -> GasSolution:
+        """What has been reached."""
+        return GasSolution(self.n, self.log_a, self.nu, self.w, closed, iterations)
 
 
 def _newton_steps(J: Array, F: Array) -> Array:

@@ -17,7 +17,7 @@ from numpy.typing import NDArray
 from solver.core.cases import Feed
 from solver.core.minimise import Minimum, Present, minimise
 from solver.core.mixture import Held, Mixture, R
-from solver.core.response import amounts_by_log_T
+from solver.core.response import by_log_T
 from solver.core.totals import Totals, totals
 
 Array = NDArray[np.float64]
@@ -37,7 +37,7 @@ class OutOfReach(ArithmeticError):
 
 @dataclass(frozen=True)
 class Point:
-    """A minimum at one temperature with its state functions."""
+    """A minimum at one temperature with its state functions (each of shape (1,))."""
 
     T: float
     p: float
@@ -47,6 +47,10 @@ class Point:
     totals: Totals
     slope: float | None
     """d(value searched)/dT at the set of phases kept."""
+
+    def value(self, variable: str) -> float:
+        """One state function."""
+        return float(getattr(self.totals, variable)[0])
 
 
 @dataclass(frozen=True)
@@ -70,8 +74,11 @@ def point_at(
 ) -> Point:
     """Minimise at one temperature and evaluate the state."""
     minimum = minimise(mixture, feed, held, start)
-    g, h, cp = mixture.thermo.at(held.T)
-    state = totals(minimum.n, mixture.is_gas, mixture.volume, g, h, held.T, minimum.p, held.V)
+    T = np.array([held.T])
+    g, h, cp = mixture.thermo.over(T)
+    V = None if held.V is None else np.array([held.V])
+    n = minimum.n[None, :]
+    state = totals(n, mixture.is_gas, mixture.volume, g, h, T, np.array([minimum.p]), V)
     slope = _slope(mixture, minimum, held, h, cp) if variable else None
     if slope is not None and variable == "S":
         slope /= held.T
@@ -80,19 +87,31 @@ def point_at(
 
 def _slope(mixture: Mixture, minimum: Minimum, held: Held, h: Array, cp: Array) -> float | None:
     """dH/dT at fixed p or dU/dT at fixed V, J/K, along the minimum."""
-    dn = amounts_by_log_T(mixture, minimum, h, held.p is not None)
-    if dn is None:
-        return None
-    slope = R * (float(minimum.n @ cp) + float(dn @ h))
-    if held.p is None:
-        slope -= R * float(minimum.n[mixture.is_gas].sum() + dn[mixture.is_gas].sum())
+    n = minimum.n[None, :]
+    at_p = held.p is not None
+    dn, _, _ = by_log_T(mixture, minimum.basis, minimum.present.active, n, h, at_p)
+    slope = float(heat_capacity(mixture, n, dn, h, cp, at_p)[0])
     return slope if slope > 0.0 and np.isfinite(slope) else None
 
 
+def heat_capacity(
+    mixture: Mixture, n: Array, dn: Array, h: Array, cp: Array, holds_pressure: bool
+) -> Array:
+    """dH/dT at fixed p or dU/dT at fixed V, J/K (cases,), from dn/d(ln T)."""
+    slope = R * ((n * cp).sum(axis=1) + (dn * h).sum(axis=1))
+    if not holds_pressure:
+        slope -= R * (n[:, mixture.is_gas] + dn[:, mixture.is_gas]).sum(axis=1)
+    return np.asarray(slope)
+
+
 def find_temperature(
-    mixture: Mixture, feed: Feed, search: Search, start: Point | None = None
+    mixture: Mixture,
+    feed: Feed,
+    search: Search,
+    T: float = _FIRST_T,
+    present: Present | None = None,
 ) -> Point:
-    """The point that has the value searched.
+    """The point that has the value searched, sought from T.
 
     Raises
     ------
@@ -101,25 +120,25 @@ def find_temperature(
     """
     low: Point | None = None
     high: Point | None = None
-    T = start.T if start else min(max(_FIRST_T, search.T_low), search.T_high)
-    present = start.present if start else None
+    T = min(max(T, search.T_low), search.T_high)
     before_last = last = np.inf  # size of the two excesses before
-    creeps = 0
+    creeps = crossings = 0
     for _ in range(_MAX_EVALUATIONS):
         point = point_at(mixture, feed, search.held(T), present, search.variable)
         present = point.present
-        excess = getattr(point.totals, search.variable) - search.value
+        value = point.value(search.variable)
+        excess = value - search.value
         size = R * float(point.n.sum()) * (1.0 if search.variable == "S" else point.T)
         if abs(excess) <= _CLOSED * size:
             return point
         if excess < 0.0:
             low = point
             if T >= search.T_high:
-                raise OutOfReach("above", T, getattr(point.totals, search.variable))
+                raise OutOfReach("above", T, value)
         else:
             high = point
             if T <= search.T_low:
-                raise OutOfReach("below", T, getattr(point.totals, search.variable))
+                raise OutOfReach("below", T, value)
         step = -excess / point.slope if point.slope else (np.inf if excess < 0 else -np.inf)
         if abs(step) <= 2.0 * np.spacing(T) and abs(excess) <= 1e-11 * size:
             return point  # rounding decides
@@ -134,7 +153,8 @@ def find_temperature(
             proposal = T + step
             slow = abs(excess) > 0.5 * before_last
             if slow or not low.T < proposal < high.T:
-                proposal = 0.5 * (low.T + high.T)
+                proposal = _crossing(low, high, crossings)
+                crossings += 1
             T = float(proposal)
         before_last, last = last, abs(excess)
     assert low is not None
@@ -142,12 +162,39 @@ def find_temperature(
     return _split(search, low, high)
 
 
+def _crossing(low: Point, high: Point, tries: int) -> float:
+    """Where the free energies of the two ends, carried on with their entropies, are equal.
+
+    That is the temperature of a transition, found quadratically. Every third try halves the
+    bracket instead, and near an end the other side of it is taken, so that the bracket closes.
+    """
+    middle = 0.5 * (low.T + high.T)
+    if tries % 3 == 2:
+        return middle
+    S_low, S_high = low.value("S"), high.value("S")
+    free = "A" if low.p != high.p else "G"
+    F_low, F_high = (
+        end.value("G") if free == "G" else end.value("U") - end.T * end.value("S")
+        for end in (low, high)
+    )
+    if S_high <= S_low:
+        return middle
+    # measured from the middle, so that little is lost to rounding
+    T = middle + ((F_high + S_high * (high.T - middle)) - (F_low + S_low * (low.T - middle))) / (
+        S_high - S_low
+    )
+    reach = 2.0 ** (tries % 8) * np.spacing(middle)
+    if T <= low.T + reach:
+        T = low.T + reach
+    elif T >= high.T - reach:
+        T = high.T - reach
+    return float(T) if low.T < T < high.T else middle
+
+
 def _split(search: Search, low: Point, high: Point) -> Point:
     """The mixture of two minima at a transition that has the value searched."""
-    bottom = getattr(low.totals, search.variable)
-    top = getattr(high.totals, search.variable)
+    bottom, top = low.value(search.variable), high.value(search.variable)
     share = (search.value - bottom) / (top - bottom)
     n = (1.0 - share) * low.n + share * high.n
-    return Point(
-        high.T, high.p, n, high.potentials, high.present, low.totals.blend(high.totals, share), None
-    )
+    state = low.totals.blend(high.totals, share)
+    return Point(high.T, high.p, n, high.potentials, high.present, state, None)

@@ -57,12 +57,6 @@ class ThermoTable:
         powers = _powers(np.float64(T))
         return powers @ g, powers @ h, powers @ cp
 
-    def below(self, T: float) -> tuple[Array, Array, Array]:
-        """As `at`, but a join exactly at T is read from its lower side."""
-        g, h, cp = self._table(int(np.searchsorted(self._joins, T, side="left")))
-        powers = _powers(np.float64(T))
-        return powers @ g, powers @ h, powers @ cp
-
     def over(self, T: Array) -> tuple[Array, Array, Array]:
         """g/RT, h/RT and cp/R at 1 bar at temperatures T (cases,), each (cases, species)."""
         intervals = np.searchsorted(self._joins, T, side="right")

@@ -1,4 +1,4 @@
-"""State functions of a mixture of given amounts at given T and p."""
+"""State functions of mixtures of given amounts at given T and p."""
 
 from __future__ import annotations
 
@@ -14,16 +14,16 @@ Array = NDArray[np.float64]
 
 @dataclass(frozen=True, slots=True)
 class Totals:
-    """Extensive state functions, SI: V m3, H, U and G J, S J/K."""
+    """Extensive state functions (cases,), SI: V m3, H, U and G J, S J/K."""
 
-    V: float
-    H: float
-    U: float
-    S: float
-    G: float
+    V: Array
+    H: Array
+    U: Array
+    S: Array
+    G: Array
 
     def blend(self, other: Totals, share: float) -> Totals:
-        """The state with a share of `other` in it, at the same T and p."""
+        """The states with a share of `other` in them, at the same T and p."""
         return Totals(
             *(
                 (1.0 - share) * getattr(self, name) + share * getattr(other, name)
@@ -38,29 +38,34 @@ def totals(
     volume: Array,
     g: Array,
     h: Array,
-    T: float,
-    p: float,
-    V: float | None,
+    T: Array,
+    p: Array,
+    V: Array | None,
 ) -> Totals:
     """Ideal gas with pure condensed phases beside it.
 
     Parameters
     ----------
-    n, volume, g, h : ndarray, shape (species,)
-        Amounts (mol), molar volumes of condensed species (m3/mol), g/RT and h/RT at 1 bar.
-    T, p : float
+    n, g, h : ndarray, shape (cases, species)
+        Amounts (mol), g/RT and h/RT at 1 bar.
+    volume : ndarray, shape (species,)
+        Molar volumes of condensed species, m3/mol.
+    T, p : ndarray, shape (cases,)
         K, Pa.
-    V : float or None
+    V : ndarray, shape (cases,), or None
         The volume held, m3; None where the mixture takes what it needs.
     """
     RT = R * T
-    gas = n[is_gas]
-    N = float(gas.sum())
-    some = gas[gas > 0.0]
-    mixing = float(some @ np.log(some / N)) + N * np.log(p / P0) if N > 0.0 else 0.0
-    V_condensed = float(n @ volume)
-    H = RT * float(n @ h) + V_condensed * (p - P0)
-    S = R * (float(n @ (h - g)) - mixing)
+    gas = n[:, is_gas]
+    N = gas.sum(axis=1)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        logs = np.log(gas / N[:, None])
+        mixing = np.where(gas > 0.0, gas * logs, 0.0).sum(axis=1)
+        mixing += np.where(N > 0.0, N * np.log(p / P0), 0.0)
+        gas_volume = np.where(N > 0.0, N * RT / p, 0.0)
+    V_condensed = n @ volume
+    H = RT * (n * h).sum(axis=1) + V_condensed * (p - P0)
+    S = R * ((n * (h - g)).sum(axis=1) - mixing)
     if V is None:
-        V = N * RT / p + V_condensed
+        V = gas_volume + V_condensed
     return Totals(V=V, H=H, U=H - p * V, S=S, G=H - T * S)

@@ -1,0 +1,290 @@
+"""The minimum of many cases at fixed T and p or V, in few passes over arrays.
+
+A few well-spread cases are settled one by one. Every other case starts from the potentials
+of the nearest settled one, and all cases that share a set of phases and components are
+solved in one pass. A case whose set turns out wrong takes a phase in or lets one go and
+joins the cases of its new set. What a start from a neighbour cannot reach becomes one of the
+spread cases of the next pass, so that every case is settled with the same means and held to
+the same proof as a single one.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from solver.core.cases import Cases
+from solver.core.minimise import Minimum, NotHeld, Present, Unsettled, minimise
+from solver.core.mixture import Held
+from solver.core.phaseset import Solved, solve_set
+from solver.core.vessel import TooSmall
+
+Array = NDArray[np.float64]
+Indices = NDArray[np.intp]
+
+_MAX_ROUNDS = 12
+_SEEDS = 6
+_MAX_PASSES = 400
+
+_Set = tuple[tuple[int, ...], tuple[int, ...]]  # condensed phases, components
+
+
+@dataclass
+class Minima:
+    """Minima of many cases, filled in as they are found.
+
+    Attributes
+    ----------
+    n : ndarray, shape (cases, species)
+    potentials : ndarray, shape (cases, rows)
+    p : ndarray, shape (cases,)
+    found : ndarray of bool, shape (cases,)
+    why : dict of int to Exception
+        What stood in the way of a case that was not found.
+    sets, of : list and ndarray (cases,)
+        The sets of phases and components, and which of them each case has.
+    log_a : ndarray, shape (cases, components)
+    nu : ndarray, shape (cases,)
+    """
+
+    n: Array
+    potentials: Array
+    p: Array
+    found: NDArray[np.bool_]
+    why: dict[int, Exception]
+    sets: list[_Set]
+    of: Indices
+    log_a: Array
+    nu: Array
+
+    @classmethod
+    def none_of(cls, cases: Cases) -> Minima:
+        """Nothing found yet."""
+        count, species = cases.c.shape
+        mixture = cases.mixture
+        return cls(
+            n=np.full((count, species), np.nan),
+            potentials=np.full((count, mixture.A.shape[1]), np.nan),
+            p=np.full(count, np.nan),
+            found=np.zeros(count, dtype=bool),
+            why={},
+            sets=[],
+            of=np.full(count, -1),
+            log_a=np.zeros((count, mixture.rank)),
+            nu=np.zeros(count),
+        )
+
+    def number(self, chosen: _Set) -> int:
+        """Index of a set of phases and components."""
+        if chosen not in self.sets:
+            self.sets.append(chosen)
+        return self.sets.index(chosen)
+
+    def accept(self, which: Indices, solved: Solved, rows: Indices) -> None:
+        """Take the solution of some rows of a group as found."""
+        self.n[which] = solved.n[rows]
+        self.potentials[which] = solved.basis.potentials(solved.mu[rows])
+        self.p[which] = solved.p[rows]
+        self.log_a[which] = solved.log_a[rows]
+        self.nu[which] = solved.nu[rows]
+        self.found[which] = True
+
+    def put(self, i: int, minimum: Minimum) -> None:
+        """Take one case settled by itself."""
+        present = minimum.present
+        self.n[i], self.potentials[i], self.p[i] = minimum.n, minimum.potentials, minimum.p
+        self.log_a[i], self.nu[i] = present.log_a, present.nu
+        self.of[i] = self.number((present.active, present.members))
+        self.found[i] = True
+
+    def present(self, i: int) -> Present:
+        """The start that case i offers to a neighbour."""
+        active, members = self.sets[self.of[i]]
+        return Present(active, members, self.log_a[i], float(self.nu[i]))
+
+
+def minimise_many(cases: Cases, features: Array, start: Minima | None = None) -> Minima:
+    """Settle all cases.
+
+    Parameters
+    ----------
+    cases : Cases
+    features : ndarray, shape (cases, any)
+        Coordinates in which near cases have similar minima.
+    start : Minima, optional
+        Minima of the same cases at a slightly other temperature.
+    """
+    out = Minima.none_of(cases)
+    waiting = np.ones(len(cases), dtype=bool)
+    if start is not None:
+        out.sets = list(start.sets)
+        known = np.flatnonzero(start.found)
+        out.of[known], out.log_a[known], out.nu[known] = (
+            start.of[known],
+            start.log_a[known],
+            start.nu[known],
+        )
+        _exchange_all(cases, known, out)
+        waiting = ~out.found
+        waiting[list(out.why)] = False
+    first = start is None
+    for _ in range(_MAX_PASSES):
+        left = np.flatnonzero(waiting)
+        if not left.size:
+            break
+        seeds = _spread(features[left], _SEEDS if first else 3)
+        for i in left[seeds]:
+            _settle_one(cases, int(i), out, features)
+        waiting[left[seeds]] = False
+        settled = np.flatnonzero(out.found)
+        left = np.flatnonzero(waiting)
+        if not settled.size or not left.size:
+            continue
+        if first and left.size > 60:  # a coarse pass gives the rest nearer neighbours
+            coarse = left[:: max(int(np.sqrt(left.size) / 3), 2)]
+            _start_from(cases, coarse, settled, features, out)
+            _exchange_all(cases, coarse, out)
+            waiting[coarse] = ~out.found[coarse]
+            settled = np.flatnonzero(out.found)
+            left = np.flatnonzero(waiting)
+        first = False
+        _start_from(cases, left, settled, features, out)
+        _exchange_all(cases, left, out)
+        waiting[left] = ~out.found[left]
+    return out
+
+
+def _spread(features: Array, count: int) -> Indices:
+    """Well-spread rows: each next one is farthest from those before."""
+    count = min(count, len(features))
+    chosen = [int(np.argmin(np.abs(features - features.mean(axis=0)).sum(axis=1)))]
+    distance = ((features - features[chosen[0]]) ** 2).sum(axis=1)
+    while len(chosen) < count:
+        chosen.append(int(np.argmax(distance)))
+        distance = np.minimum(distance, ((features - features[chosen[-1]]) ** 2).sum(axis=1))
+    return np.unique(chosen)
+
+
+def _settle_one(cases: Cases, i: int, out: Minima, features: Array) -> None:
+    """Settle one case by itself, from the nearest settled one or cold."""
+    start = None
+    settled = np.flatnonzero(out.found)
+    if settled.size:
+        near = settled[np.argmin(((features[settled] - features[i]) ** 2).sum(axis=1))]
+        start = out.present(int(near))
+    held = Held(
+        float(cases.T[i]),
+        p=None if cases.p is None else float(cases.p[i]),
+        V=None if cases.V is None else float(cases.V[i]),
+    )
+    one = np.array([i])
+    try:
+        out.put(i, minimise(cases.mixture, cases.feed.of(one), held, start))
+    except (NotHeld, Unsettled, TooSmall, np.linalg.LinAlgError) as error:
+        out.why[i] = error
+
+
+def _start_from(
+    cases: Cases, which: Indices, settled: Indices, features: Array, out: Minima
+) -> None:
+    """Hand each case the set and the activities of its nearest settled neighbour."""
+    if not which.size:
+        return
+    from scipy.spatial import cKDTree
+
+    _, near = cKDTree(features[settled]).query(features[which])
+    source = settled[near]
+    out.of[which] = out.of[source]
+    out.log_a[which] = out.log_a[source]
+    out.nu[which] = out.nu[source] + np.log(cases.atoms[which] / cases.atoms[source])
+
+
+def _exchange_all(cases: Cases, which: Indices, out: Minima) -> None:
+    """Follow the sets of the given cases to their minima; what is lost stays unfound."""
+    going = which
+    for _ in range(_MAX_ROUNDS):
+        if not going.size:
+            return
+        onward: list[Indices] = []
+        numbers = out.of[going]
+        for number in np.unique(numbers):
+            group = going[numbers == number]
+            active, members = out.sets[number]
+            basis = cases.mixture.basis(members)
+            for rows, solved in solve_set(
+                cases, group, active, basis, out.log_a[group], out.nu[group]
+            ):
+                onward += _judge(cases, group[rows], active, solved, out)
+        going = np.concatenate(onward) if onward else np.zeros(0, dtype=np.intp)
+
+
+def _judge(
+    cases: Cases, which: Indices, active: tuple[int, ...], solved: Solved, out: Minima
+) -> list[Indices]:
+    """Accept the right ones; give the others their next set. Returns those that go on."""
+    onward: list[Indices] = []
+    rows = np.flatnonzero(solved.closed)
+    act = list(active)
+    if act:
+        worst = solved.n[np.ix_(rows, np.array(act, dtype=np.intp))].argmin(axis=1)
+        negative = solved.n[rows, np.array(act)[worst]] < 0.0
+        for k in np.unique(worst[negative]):
+            leaving = act[k]
+            some = rows[negative & (worst == k)]
+            rest = [i for i in act if i != leaving]
+            onward += _change(cases, which, some, rest, act, solved, out)
+        rows = rows[~negative]
+    absent = np.array([i for i in cases.condensed.tolist() if i not in set(act)], dtype=np.intp)
+    if absent.size and rows.size:
+        force = solved.force[np.ix_(rows, absent)]
+        best = force.argmax(axis=1)
+        forms = force[np.arange(len(rows)), best] > cases.force_tolerance[which[rows]]
+        for k in np.unique(best[forms]):
+            entering = int(absent[k])
+            row = solved.basis.reactions[entering]
+            if any(row[j] != 0.0 and m not in act for j, m in enumerate(solved.basis.members)):
+                some = rows[forms & (best == k)]
+                onward += _change(cases, which, some, [*act, entering], act, solved, out)
+        rows = rows[~forms]
+    poor = ~solved.well_based[rows]
+    if poor.any():
+        some = rows[poor]
+        changed = _change(cases, which, some, act, act, solved, out)
+        if changed:
+            onward += changed
+        else:  # no better components exist
+            poor[:] = False
+    rows = rows[~poor]
+    if rows.size:
+        out.accept(which[rows], solved, rows)
+    return onward
+
+
+def _change(
+    cases: Cases,
+    which: Indices,
+    rows: Indices,
+    active: list[int],
+    held: list[int],
+    solved: Solved,
+    out: Minima,
+) -> list[Indices]:
+    """Give some rows another set, its components chosen for the first of them.
+
+    Empty where that is the set they have `held`.
+    """
+    first = rows[0]
+    n, force = solved.n[first], solved.force[first]
+    scarce = np.exp(np.clip(force, -650.0, 650.0)) * 1e-40 * cases.scale[which[first]]
+    members = tuple(sorted(cases.members(active, np.where(n > 0.0, n, scarce))))
+    if members == solved.basis.members and set(active) == set(held):
+        return []
+    target = which[rows]
+    out.of[target] = out.number((tuple(sorted(active)), members))
+    out.log_a[target] = np.maximum(solved.force[np.ix_(rows, np.array(members))], -650.0)
+    gas = solved.n[rows][:, cases.gas].sum(axis=1)
+    with np.errstate(divide="ignore"):
+        out.nu[target] = np.where(gas > 0.0, np.log(gas), np.log(cases.scale[target]) - 30.0)
+    return [target]

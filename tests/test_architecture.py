@@ -23,6 +23,7 @@ TOP_LEVEL = {
     "DEVELOPERS.md",
     "LICENSE",
     "Makefile",
+    "NOTICE",
     "README.md",
     "gui",
     "locks",

@@ -12,6 +12,7 @@ import re
 from species_db.build.crc import handbook
 from species_db.build.draft import Draft, composition
 from species_db.build.places import chemicals_rows, number
+from species_db.build.poly import T0, g_at
 from species_db.build.uncertainty import KIND_ATCT
 from species_db.formula import parse_formula
 
@@ -19,6 +20,9 @@ LIMIT = 12e3
 LIMIT_ION = 6e3
 LIMIT_LIQUID = 6e3
 LIMIT_FOLLOW = 3e3
+VOLATILE = 15.0
+"""A condensed record follows its gas only while the gas is less than this above it in g/RT at
+298 K: a salt keeps the formation enthalpy that its own calorimetry gave it."""
 ELECTRON = 6197.0
 """Enthalpy of the electron between 0 and 298.15 K, 5/2 RT, J/mol."""
 TRUSTED = {
@@ -55,7 +59,9 @@ def move(drafts: list[Draft], everything: list[Draft]) -> list[str]:
             raw[(cas, "crc298")] = float(row["Hfg"])
     for d in drafts:
         if d.phase != "gas" and d.cas in final and len(d.elements) > 1:
-            follow = final[d.cas].h298 - raw.get((d.cas, d.origin), math.nan)
+            gas = final[d.cas]
+            volatile = g_at(gas.pieces, T0) - g_at(d.pieces, T0) < VOLATILE
+            follow = gas.h298 - raw.get((d.cas, d.origin), math.nan) if volatile else 0.0
             _move_condensed(d, liquids, follow)
     return refused
 

@@ -80,7 +80,7 @@ def _draft(b: Block) -> Draft:
     if name == "AIR" or name.startswith("JET-A"):
         raise Reject("mixture")
     elements, charge = _elements(b, flags)
-    if b.unreadable or name.startswith("KNO3"):
+    if b.unreadable or (name.startswith("KNO3") and b.phase != "G"):
         raise Reject("coefficient unreadable")
     if "D" in elements:
         raise Reject("deuterium compound")

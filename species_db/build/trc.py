@@ -51,8 +51,10 @@ def _draft(row: dict[str, str], identity: tuple[object, int]) -> Draft | str:
     source = next(iter(heats))
     flags = []
     others = [h for m, h in heats.items() if m != source]
-    if not others or min(abs(heats[source] - h) for h in others) > AGREE:
-        flags.append("doubtful: formation enthalpy from one source, or disputed")
+    if not others:
+        flags.append("formation enthalpy from one source")
+    elif min(abs(heats[source] - h) for h in others) > AGREE:
+        flags.append("doubtful: formation enthalpy disputed")
     a = [number(row[f"a{i}"]) for i in range(8)]
     I = number(row["I"])  # noqa: E741 - the table's own letter
     T = np.unique(
@@ -68,7 +70,7 @@ def _draft(row: dict[str, str], identity: tuple[object, int]) -> Draft | str:
     entropies = [x for m in ("CRC", "WEBBOOK") if (x := _entropy(cas, m)) is not None]
     s298 = float(s[T == T0][0])
     if entropies and min(abs(s298 - x) for x in entropies) > 2:
-        if flags:
+        if any("disputed" in f for f in flags):
             return "enthalpy and entropy both disputed"
         flags.append("entropy disputed")
     if not np.all(np.isfinite(cp)) or cp.min() <= 20 or np.any(np.diff(cp) < -0.02 * cp[:-1]):

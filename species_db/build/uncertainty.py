@@ -18,6 +18,8 @@ DEFAULTS = {
     "condensed": 4000.0,
     "doubtful": 20000.0,
 }
+DISPUTED = 15e3
+"""Two sources further apart than this, J/mol, put a record on the doubtful list."""
 KIND_ATCT, KIND_TEXT, KIND_SAME = "ATcT 95 % / 2", "stated, k = 1", "stated for the same value"
 KIND_DEFAULT, KIND_EXACT = "class default", "reference state"
 
@@ -49,6 +51,10 @@ def stated_in_text(texts: Iterable[str], h298: float) -> tuple[float, str]:
 
 def assign(drafts: list[Draft], everything: list[Draft]) -> None:
     """Give every chosen record an uncertainty and its kind; `everything` holds the stated ones."""
+    for d in drafts:
+        apart = d.second.h298 - d.h298 if d.second else 0.0
+        if abs(apart) > DISPUTED and d.u_kind != KIND_ATCT:
+            d.flags.append(f"doubtful: second source differs by {apart / 1000:+.0f} kJ/mol")
     stated: dict[tuple[object, str], list[tuple[float, float]]] = {}
     for d in everything:
         if d.u_kind in ("stated", KIND_TEXT):

@@ -1,15 +1,18 @@
 """Where a reacting mixture ends up: the minimiser, its proof and what is built upon them."""
 
 from solver.endstate import EndState
+from solver.endstates import EndStates
 from solver.errors import InputError, NoEndState, NotProven, SettleError
 from solver.fed import Fed, as_fed
 from solver.fixed import PAIRS, Fixed
 from solver.proof import Proof
 from solver.settle import settle
+from solver.settle_many import settle_many
 
 __all__ = [
     "PAIRS",
     "EndState",
+    "EndStates",
     "Fed",
     "Fixed",
     "InputError",
@@ -19,4 +22,5 @@ __all__ = [
     "SettleError",
     "as_fed",
     "settle",
+    "settle_many",
 ]

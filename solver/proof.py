@@ -14,6 +14,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from solver.core.cases import Feed
 from solver.core.mixture import P0, Mixture, R
 
 Array = NDArray[np.float64]
@@ -67,16 +68,23 @@ class Proof:
         )
 
 
-def element_residuals(
-    mixture: Mixture, n: Array, feed: Array, vectors: Array
-) -> tuple[float, float]:
-    """Worst element residual over the largest total, and over each element's own total."""
-    b = feed @ vectors
-    size = feed @ np.abs(vectors)
-    error = np.abs(n @ mixture.A - b)
-    largest = float(size.max())
-    own = np.where(size > 0.0, error / np.where(size > 0.0, size, 1.0), error / largest)
-    return float(error.max()) / largest, float(own.max())
+def element_residuals(mixture: Mixture, n: Array, feed: Feed) -> tuple[Array, Array]:
+    """Worst element residual over the largest total, and over each element's own total.
+
+    Parameters
+    ----------
+    n : ndarray, shape (cases, species)
+    feed : Feed
+
+    Returns
+    -------
+    two ndarray, shape (cases,)
+    """
+    size = feed.amounts @ np.abs(feed.vectors)
+    error = np.abs(n @ mixture.A - feed.totals)
+    largest = size.max(axis=1)
+    own = error / np.where(size > 0.0, size, largest[:, None])
+    return error.max(axis=1) / largest, own.max(axis=1)
 
 
 def optimality_gap(
@@ -85,56 +93,60 @@ def optimality_gap(
     b: Array,
     potentials: Array,
     g: Array,
-    T: float,
-    p: float,
-    V: float | None,
-) -> tuple[float, Array]:
-    """Rigorous gap over n R T, and ln activity of every candidate.
+    T: Array,
+    p: Array,
+    V: Array | None,
+) -> tuple[Array, Array]:
+    """Rigorous gaps over n R T, and ln activity of every candidate.
 
     Parameters
     ----------
     mixture : Mixture
-    n : ndarray, shape (species,)
+    n : ndarray, shape (cases, species)
         Amounts, mol.
-    b : ndarray, shape (rows,)
+    b : ndarray, shape (cases, rows)
         Element totals.
-    potentials : ndarray, shape (rows,)
+    potentials : ndarray, shape (cases, rows)
         Element potentials over RT.
-    g : ndarray, shape (species,)
+    g : ndarray, shape (cases, species)
         g/RT at 1 bar.
-    T, p : float
+    T, p : ndarray, shape (cases,)
         K, Pa; p may be zero in a held volume in which nothing evaporates.
-    V : float or None
+    V : ndarray, shape (cases,), or None
         The volume held, m3, or None where p is held. The bound on the Helmholtz energy is
         then b.lambda - pi V/RT for any pressure pi that the gas does not exceed.
+
+    Returns
+    -------
+    gap : ndarray, shape (cases,)
+    force : ndarray, shape (cases, species)
     """
-    is_gas = mixture.is_gas
-    force = mixture.A @ potentials - g - mixture.volume * ((p - P0) / (R * T))
+    is_gas, cases = mixture.is_gas, len(T)
+    force = potentials @ mixture.A.T - g - mixture.volume * ((p - P0) / (R * T))[:, None]
     atoms = mixture.A @ mixture.atoms
-    log_p = float(np.log(p / P0)) if p > 0.0 else -np.inf
-    log_sum = -np.inf
+    with np.errstate(divide="ignore"):
+        log_p = np.log(p / P0)
+    log_sum = np.full(cases, -np.inf)
     if is_gas.any():
-        top = float(force[is_gas].max())
-        log_sum = top + float(np.log(np.exp(force[is_gas] - top).sum()))
+        top = force[:, is_gas].max(axis=1)
+        log_sum = top + np.log(np.exp(force[:, is_gas] - top[:, None]).sum(axis=1))
     # move the potentials down until every condition holds: the bound is then rigorous
-    shift = 0.0
+    shift = np.zeros(cases)
     if not is_gas.all():
-        shift = max(shift, float((force[~is_gas] / atoms[~is_gas]).max()))
-    vessel = 0.0
+        shift = np.maximum(shift, (force[:, ~is_gas] / atoms[~is_gas]).max(axis=1))
+    vessel = np.zeros(cases)
     if V is not None:
         # pi may be as large as the gas asks for, at a cost of (pi - p) V
-        vessel = max(P0 * float(np.exp(log_sum)) - p, 0.0) * V / (R * T)
+        vessel = np.maximum(P0 * np.exp(log_sum) - p, 0.0) * V / (R * T)
     elif is_gas.any():
-        shift = max(shift, (log_sum - log_p) / min(float(atoms[is_gas].min()), 1.0))
-    if log_p > -np.inf:
-        force[is_gas] -= log_p
-    gas = n[is_gas]
-    N = float(gas.sum())
-    some = gas > 0.0
-    mixing = np.zeros(gas.size)
-    mixing[some] = np.log(gas[some] / N)
+        shift = np.maximum(shift, (log_sum - log_p) / min(float(atoms[is_gas].min()), 1.0))
+    force[:, is_gas] -= np.where(np.isfinite(log_p), log_p, 0.0)[:, None]
+    gas = n[:, is_gas]
+    N = gas.sum(axis=1, keepdims=True)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        mixing = np.where(gas > 0.0, np.log(gas / N), 0.0)
     excess = -force
-    excess[is_gas] += mixing
-    gap = float(n @ excess) + float((n @ mixture.A - b) @ potentials)
-    gap += shift * float(b @ mixture.atoms) + vessel
-    return gap / float(n.sum()), force
+    excess[:, is_gas] += mixing
+    gap = (n * excess).sum(axis=1) + ((n @ mixture.A - b) * potentials).sum(axis=1)
+    gap += shift * (b @ mixture.atoms) + vessel
+    return gap / n.sum(axis=1), force

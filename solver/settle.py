@@ -17,9 +17,9 @@ from solver.core.mixture import Held, Mixture, R, mixture_of
 from solver.core.temperature import OutOfReach, Point, Search, find_temperature, point_at
 from solver.core.vessel import TooSmall
 from solver.endstate import PRESENT, EndState
-from solver.errors import InputError, NoEndState, NotProven
+from solver.errors import InputError, NoEndState, NotProven, SettleError
 from solver.fed import check_gas, checked_amount
-from solver.fixed import PAIRS, T_HIGHEST, T_LOWEST, Fixed
+from solver.fixed import PAIRS, T_HIGHEST, T_LOWEST, Fixed, Pair
 from solver.proof import Proof, element_residuals, optimality_gap
 
 if TYPE_CHECKING:
@@ -67,32 +67,37 @@ def settle(
     check_gas(gas)
     fed, amounts = _checked_feed(species, feed)
     mixture = mixture_of(species, fed)
-    _check_elements(mixture, fed)
+    check_elements(mixture, fed)
     vectors = np.array([formula_vector(sp, mixture.rows) for sp in fed])
     # the minimiser works on totals near one; a power of two changes no digit
     scale = 2.0 ** -round(float(np.log2(np.abs(amounts @ vectors).max())))
     scaled = Feed((amounts * scale)[None, :], vectors)
     try:
         point = _find(mixture, scaled, fixed, scale)
-    except NotHeld as error:
-        raise _not_held(mixture, error) from None
-    except OutOfReach as error:
-        raise _out_of_reach(fixed, error) from None
-    except TooSmall as error:
-        raise _too_small(fixed, error, scale) from None
-    except (Unsettled, np.linalg.LinAlgError) as error:
-        raise NotProven(
-            f"No end state could be proven for this case ({error}); "
-            "leave out candidates that do not matter, or change the fixed values slightly.",
-            "fixed",
-            fixed,
-        ) from None
+    except LOST as error:
+        raise explained(mixture, PAIRS[fixed.pair], fixed.values, error, scale) from None
     return _end_state(mixture, species, scaled, point, fixed, gas, scale)
 
 
 def _checked_feed(
     species: Sequence[Species], feed: Mapping[Species | str, float]
 ) -> tuple[list[Species], Array]:
+    by_key = check_species(species)
+    gathered: dict[Species, float] = {}
+    for item, amount in feed.items():
+        sp = candidate_of(item, by_key)
+        number = checked_amount(sp.key, amount)
+        if number > 0.0:
+            gathered[sp] = gathered.get(sp, 0.0) + number
+    if not gathered:
+        raise InputError(
+            "The feed is empty; give at least one amount above zero.", "feed", 0.0, "above 0 mol"
+        )
+    return list(gathered), np.array(list(gathered.values()))
+
+
+def check_species(species: Sequence[Species]) -> dict[str, Species]:
+    """The candidates by key; refuses an empty list and a species listed twice."""
     if not species:
         raise InputError(
             "There are no candidates; choose at least one species that may be present.",
@@ -107,27 +112,23 @@ def _checked_feed(
         raise InputError(
             f"The candidate {twice} is listed twice; remove one.", "species", twice, "each once"
         )
-    gathered: dict[Species, float] = {}
-    for item, amount in feed.items():
-        if isinstance(item, str):
-            item = _resolved(item, by_key)
-            if item not in by_key:
-                raise InputError(
-                    f"The feed holds {item}, which is not the key of a candidate; "
-                    "add it to the candidates or give the Species itself.",
-                    f"feed[{item}]",
-                    item,
-                    "a candidate's key or a Species",
-                )
-            item = by_key[item]
-        number = checked_amount(item.key, amount)
-        if number > 0.0:
-            gathered[item] = gathered.get(item, 0.0) + number
-    if not gathered:
+    return by_key
+
+
+def candidate_of(item: Species | str, by_key: Mapping[str, Species]) -> Species:
+    """The species that an entry of a feed names."""
+    if not isinstance(item, str):
+        return item
+    key = _resolved(item, by_key)
+    if key not in by_key:
         raise InputError(
-            "The feed is empty; give at least one amount above zero.", "feed", 0.0, "above 0 mol"
+            f"The feed holds {item}, which is not the key of a candidate; "
+            "add it to the candidates or give the Species itself.",
+            f"feed[{item}]",
+            item,
+            "a candidate's key or a Species",
         )
-    return list(gathered), np.array(list(gathered.values()))
+    return by_key[key]
 
 
 def _resolved(text: str, by_key: Mapping[str, Species]) -> str:
@@ -141,7 +142,7 @@ def _resolved(text: str, by_key: Mapping[str, Species]) -> str:
     return text
 
 
-def _check_elements(mixture: Mixture, fed: Sequence[Species]) -> None:
+def check_elements(mixture: Mixture, fed: Sequence[Species]) -> None:
     """Every element fed must occur in a candidate that holds nothing else than is fed."""
     for name, row in mixture.rows.items():
         if name == CHARGE or np.any(mixture.A[:, row] > 0.0):
@@ -156,33 +157,46 @@ def _check_elements(mixture: Mixture, fed: Sequence[Species]) -> None:
         )
 
 
-def _not_held(mixture: Mixture, error: NotHeld) -> InputError:
-    names = list(mixture.rows)
-    open_rows = ", ".join(names[k] for k in error.rows)
-    return InputError(
-        "No mixture of the candidates has the elements of the feed in their proportion "
-        f"(the balance of {open_rows} stays open); add a candidate that can take up the rest.",
-        "species",
-        open_rows,
-        "candidates that can hold the feed",
+LOST = (NotHeld, OutOfReach, TooSmall, Unsettled, np.linalg.LinAlgError)
+"""What the search raises when a case has no end state or none is found."""
+
+
+def explained(
+    mixture: Mixture, pair: Pair, values: tuple[float, float], error: Exception, scale: float
+) -> SettleError:
+    """What the search came upon, in words and with the field to change."""
+    if isinstance(error, NotHeld):
+        names = list(mixture.rows)
+        open_rows = ", ".join(names[k] for k in error.rows)
+        return InputError(
+            "No mixture of the candidates has the elements of the feed in their proportion "
+            f"(the balance of {open_rows} stays open); add a candidate that can take up the rest.",
+            "species",
+            open_rows,
+            "candidates that can hold the feed",
+        )
+    if isinstance(error, TooSmall):
+        needed = error.needed / scale
+        return InputError(
+            f"The vessel of {values[1]:.6g} m3 is smaller than the liquids and solids that must "
+            f"stay in it ({needed:.6g} m3); enlarge V or feed less.",
+            "fixed.V",
+            values[1],
+            f"above {needed:.6g} m3",
+        )
+    if isinstance(error, OutOfReach):
+        return _out_of_reach(pair, values[0], error)
+    return NotProven(
+        f"No end state could be proven for this case ({error}); "
+        "leave out candidates that do not matter, or change the fixed values slightly.",
+        "fixed",
+        values,
     )
 
 
-def _too_small(fixed: Fixed, error: TooSmall, scale: float) -> InputError:
-    needed = error.needed / scale
-    return InputError(
-        f"The vessel of {fixed.V:.6g} m3 is smaller than the liquids and solids that must stay "
-        f"in it ({needed:.6g} m3); enlarge V or feed less.",
-        "fixed.V",
-        fixed.V,
-        f"above {needed:.6g} m3",
-    )
-
-
-def _out_of_reach(fixed: Fixed, error: OutOfReach) -> NoEndState:
-    variable = PAIRS[fixed.pair].variables[0]
+def _out_of_reach(pair: Pair, value: float, error: OutOfReach) -> NoEndState:
+    variable = pair.variables[0]
     word = _WORDS[variable]
-    value = fixed.values[0]
     if error.side == "below":
         text = (
             f"No end state above {T_LOWEST:g} K has so little {word} ({value:.6g}); "
@@ -219,10 +233,20 @@ def _end_state(
     scale: float,
 ) -> EndState:
     T, p, n = point.T, point.p, point.n
-    g, _, _ = mixture.thermo.at(T)
-    closure, trace = element_residuals(mixture, n, feed.amounts[0], feed.vectors)
-    held_volume = float(point.totals.V[0]) if PAIRS[fixed.pair].holds_volume else None
-    gap, force = optimality_gap(mixture, n, feed.totals[0], point.potentials, g, T, p, held_volume)
+    closures, traces = element_residuals(mixture, n[None, :], feed)
+    closure, trace = float(closures[0]), float(traces[0])
+    V = np.array([fixed.values[1] * scale]) if PAIRS[fixed.pair].holds_volume else None
+    gaps, forces = optimality_gap(
+        mixture,
+        n[None, :],
+        feed.totals,
+        point.potentials[None, :],
+        mixture.thermo.over(np.array([T]))[0],
+        np.array([T]),
+        np.array([p]),
+        V,
+    )
+    gap, force = float(gaps[0]), forces[0]
     absent = {sp.key: 0.0 for sp in species if sp.phase != "gas"}
     for sp, amount, f in zip(mixture.species, n, force, strict=True):
         if sp.phase != "gas":

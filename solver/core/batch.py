@@ -99,6 +99,20 @@ class Minima:
         self.of[i] = self.number((present.active, present.members))
         self.found[i] = True
 
+    def part(self, keep: NDArray[np.bool_]) -> Minima:
+        """The minima of some of the cases."""
+        return Minima(
+            n=self.n[keep],
+            potentials=self.potentials[keep],
+            p=self.p[keep],
+            found=self.found[keep],
+            why={},
+            sets=self.sets,
+            of=self.of[keep],
+            log_a=self.log_a[keep].copy(),
+            nu=self.nu[keep].copy(),
+        )
+
     def present(self, i: int) -> Present:
         """The start that case i offers to a neighbour."""
         active, members = self.sets[self.of[i]]
@@ -134,7 +148,7 @@ def minimise_many(cases: Cases, features: Array, start: Minima | None = None) ->
         left = np.flatnonzero(waiting)
         if not left.size:
             break
-        seeds = _spread(features[left], _SEEDS if first else 3)
+        seeds = spread(features[left], _SEEDS if first else 3)
         for i in left[seeds]:
             _settle_one(cases, int(i), out, features)
         waiting[left[seeds]] = False
@@ -156,7 +170,7 @@ def minimise_many(cases: Cases, features: Array, start: Minima | None = None) ->
     return out
 
 
-def _spread(features: Array, count: int) -> Indices:
+def spread(features: Array, count: int) -> Indices:
     """Well-spread rows: each next one is farthest from those before."""
     count = min(count, len(features))
     chosen = [int(np.argmin(np.abs(features - features.mean(axis=0)).sum(axis=1)))]

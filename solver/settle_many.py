@@ -1,0 +1,299 @@
+"""The public door for many cases: one batch with the guarantees of a single settling."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from types import MappingProxyType
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from solver.core.basis import formula_vector
+from solver.core.batch import minimise_many
+from solver.core.batch_temperature import Found, Searches, find_temperatures
+from solver.core.cases import Cases, Feed
+from solver.core.mixture import Mixture, R, mixture_of
+from solver.core.totals import totals
+from solver.endstates import EndStates
+from solver.errors import InputError, SettleError
+from solver.fed import MOST, check_gas
+from solver.fixed import PAIRS, T_HIGHEST, T_LOWEST, Pair, allowed_range, checked_value
+from solver.proof import (
+    ELEMENT_LIMIT,
+    ENERGY_LIMIT,
+    GAP_LIMIT,
+    TRACE_LIMIT,
+    element_residuals,
+    optimality_gap,
+)
+from solver.settle import candidate_of, check_elements, check_species, explained
+
+if TYPE_CHECKING:
+    from species_db import Species
+
+Array = NDArray[np.float64]
+
+_CHUNK_NUMBERS = 400_000  # cases x species worked on at once, so that memory stays bounded
+
+
+def settle_many(
+    species: Sequence[Species],
+    feeds: Mapping[Species | str, ArrayLike],
+    pair: str,
+    X: ArrayLike,
+    Y: ArrayLike,
+    *,
+    gas: str = "ideal",
+) -> EndStates:
+    """Compute the end states of many cases over one list of candidates.
+
+    Parameters
+    ----------
+    species : sequence of Species
+        The candidates.
+    feeds : mapping of Species or str to float or array_like, shape (cases,)
+        mol; a string is the key of a candidate.
+    pair : str
+        The fixed pair, e.g. ``"T,p"``.
+    X, Y : array_like, shape (cases,) or float
+        The values of the pair's two variables, in its order, SI.
+    gas : str
+        Gas model.
+
+    Returns
+    -------
+    EndStates
+        Cases that could not be settled are marked and say why; they hold NaN.
+
+    Raises
+    ------
+    InputError
+        What concerns all cases is wrong: the pair, the candidates, the lengths of arrays.
+    """
+    check_gas(gas)
+    check_species(species)
+    if pair not in PAIRS:
+        raise InputError(
+            f"The fixed pair {pair!r} is not known; choose one of {', '.join(PAIRS)}.",
+            "pair",
+            pair,
+            ", ".join(PAIRS),
+        )
+    fed, amounts, first, second = _aligned(species, feeds, X, Y)
+    count = len(first)
+    why: dict[int, str] = {}
+    _mark_faults(PAIRS[pair], fed, amounts, first, second, why)
+    columns = {sp.key: k for k, sp in enumerate(species)}
+    out = _Results(count, len(species))
+    good = np.array([i not in why for i in range(count)], dtype=bool)
+    # cases that feed the same species share a mixture
+    for presence in np.unique(amounts[good] > 0.0, axis=0):
+        same = good & ((amounts > 0.0) == presence).all(axis=1)
+        some = [sp for sp, there in zip(fed, presence, strict=True) if there]
+        mixture = mixture_of(species, some)
+        index = np.flatnonzero(same)
+        try:
+            check_elements(mixture, some)
+        except InputError as error:
+            why.update({int(i): str(error) for i in index})
+            continue
+        place = np.array([columns[sp.key] for sp in mixture.species], dtype=np.intp)
+        vectors = np.array([formula_vector(sp, mixture.rows) for sp in some])
+        size = max(_CHUNK_NUMBERS // max(len(species), 1), 50)
+        for begin in range(0, len(index), size):
+            rows = index[begin : begin + size]
+            _settle_chunk(
+                mixture,
+                Feed(amounts[rows][:, presence], vectors),
+                PAIRS[pair],
+                first[rows],
+                second[rows],
+                out,
+                rows,
+                place,
+                why,
+            )
+    return out.end_states(pair, tuple(columns), why)
+
+
+def _aligned(
+    species: Sequence[Species], feeds: Mapping[Species | str, ArrayLike], X: ArrayLike, Y: ArrayLike
+) -> tuple[list[Species], Array, Array, Array]:
+    """Species fed, amounts (cases, fed species), and the two values, all of one length."""
+    by_key = {sp.key: sp for sp in species}
+    given: dict[str, ArrayLike] = {"X": X, "Y": Y}
+    fed = [candidate_of(item, by_key) for item in feeds]
+    given.update({f"feeds[{item}]": value for item, value in feeds.items()})
+    arrays: dict[str, Array] = {}
+    for name, value in given.items():
+        try:
+            arrays[name] = np.atleast_1d(np.asarray(value, dtype=float))
+        except (TypeError, ValueError):
+            raise InputError(
+                f"{name} is not a number or an array of numbers.", name, value, "numbers"
+            ) from None
+        if arrays[name].ndim != 1:
+            raise InputError(
+                f"{name} has {arrays[name].ndim} dimensions; give one value a case.",
+                name,
+                value,
+                "shape (cases,)",
+            )
+    count = max(len(array) for array in arrays.values())
+    for name, array in arrays.items():
+        if len(array) not in (1, count):
+            raise InputError(
+                f"{name} has {len(array)} values where others have {count}; "
+                "give one value, or one a case.",
+                name,
+                len(array),
+                f"1 or {count} values",
+            )
+    wide = {name: np.broadcast_to(array, (count,)) for name, array in arrays.items()}
+    amounts = np.zeros((count, len({sp.key for sp in fed})))
+    unique = list({sp.key: sp for sp in fed}.values())
+    place = {sp.key: k for k, sp in enumerate(unique)}
+    for sp, array in zip(fed, list(wide.values())[2:], strict=True):
+        amounts[:, place[sp.key]] += array
+    if not unique:
+        raise InputError("The feed is empty; give at least one amount.", "feeds", {}, "above 0 mol")
+    return unique, amounts, wide["X"], wide["Y"]
+
+
+def _mark_faults(
+    pair: Pair,
+    fed: Sequence[Species],
+    amounts: Array,
+    first: Array,
+    second: Array,
+    why: dict[int, str],
+) -> None:
+    """Say of each case with impossible numbers what is wrong with it."""
+    for variable, values in zip(pair.variables, (first, second), strict=True):
+        low, high = allowed_range(variable)
+        for i in np.flatnonzero(~((values >= low) & (values <= high) & np.isfinite(values))):
+            try:
+                checked_value(variable, values[i])
+            except SettleError as error:
+                why.setdefault(int(i), str(error))
+    for i, k in zip(*np.nonzero(~((amounts >= 0.0) & (amounts <= MOST))), strict=True):
+        why.setdefault(
+            int(i),
+            f"The amount of {fed[k].key} is {amounts[i, k]}; "
+            f"give a number of moles from 0 to {MOST:.0e}.",
+        )
+    for i in np.flatnonzero(~(np.nan_to_num(amounts).sum(axis=1) > 0.0)):
+        why.setdefault(int(i), "The feed is empty; give at least one amount above zero.")
+
+
+class _Results:
+    """Arrays that the chunks fill."""
+
+    def __init__(self, count: int, species: int) -> None:
+        names = ("T", "p", "V", "H", "U", "S", "G", "element_residual", "energy_residual", "gap")
+        self.values = {name: np.full(count, np.nan) for name in names}
+        self.amounts = np.full((count, species), np.nan)
+        self.settled = np.zeros(count, dtype=bool)
+
+    def end_states(self, pair: str, keys: tuple[str, ...], why: dict[int, str]) -> EndStates:
+        """The public result, arrays read-only."""
+        for array in (*self.values.values(), self.amounts, self.settled):
+            array.flags.writeable = False
+        reasons = MappingProxyType(dict(sorted(why.items())))
+        return EndStates(
+            pair=pair,
+            keys=keys,
+            amounts=self.amounts,
+            settled=self.settled,
+            why=reasons,
+            **self.values,
+        )
+
+
+def _settle_chunk(
+    mixture: Mixture,
+    feed: Feed,
+    pair: Pair,
+    first: Array,
+    second: Array,
+    out: _Results,
+    rows: NDArray[np.intp],
+    place: NDArray[np.intp],
+    why: dict[int, str],
+) -> None:
+    # the minimiser works on totals near one; a power of two changes no digit
+    scale = 2.0 ** -np.round(np.log2(np.abs(feed.totals).max(axis=1)))
+    feed = Feed(feed.amounts * scale[:, None], feed.vectors)
+    p = None if pair.holds_volume else second
+    V = second * scale if pair.holds_volume else None
+    values = first if pair.searched is None else first * scale
+    features = _features(feed, pair, values, p, V)
+    if pair.searched is None:
+        found = _at_temperature(mixture, feed, first, p, V, features)
+    else:
+        search = Searches(pair.searched, values, p, V, T_LOWEST, T_HIGHEST)
+        found = find_temperatures(mixture, feed, search, features)
+    for i, error in found.why.items():
+        pair_values = (float(first[i]), float(second[i]))
+        why[int(rows[i])] = str(explained(mixture, pair, pair_values, error, float(scale[i])))
+    ok = found.found
+    some = np.flatnonzero(ok)
+    rows, first, values, scale = rows[some], first[some], values[some], scale[some]
+    feed, T, p, n = feed.of(some), found.T[some], found.p[some], found.n[some]
+    V = None if V is None else V[some]
+    g = mixture.thermo.over(T)[0]
+    closure, trace = element_residuals(mixture, n, feed)
+    gap, _ = optimality_gap(mixture, n, feed.totals, found.potentials[some], g, T, p, V)
+    energy = np.zeros(len(some))
+    if pair.searched is not None:
+        unit = R * n.sum(axis=1) * (1.0 if pair.searched == "S" else T)
+        energy = np.abs(found.functions[pair.searched][some] - values) / unit
+    ok = (closure <= ELEMENT_LIMIT) & (trace <= TRACE_LIMIT) & (energy <= ENERGY_LIMIT)
+    ok &= (np.abs(gap) <= GAP_LIMIT) & (n.min(axis=1) >= 0.0)
+    for k in np.flatnonzero(~ok):
+        why[int(rows[k])] = (
+            "An end state was found but its proof is not within the limits "
+            f"(elements {closure[k]:.1e}, energy {energy[k]:.1e}, gap {gap[k]:.1e})."
+        )
+    good = rows[ok]
+    out.settled[good] = True
+    for name, array in (("T", T), ("p", p), ("energy_residual", energy), ("gap", gap)):
+        out.values[name][good] = array[ok]
+    out.values["element_residual"][good] = closure[ok]
+    for name, function in found.functions.items():
+        out.values[name][good] = function[some][ok] / scale[ok]
+    out.amounts[good] = 0.0
+    out.amounts[np.ix_(good, place)] = n[ok] / scale[ok][:, None]
+
+
+def _features(feed: Feed, pair: Pair, values: Array, p: Array | None, V: Array | None) -> Array:
+    """Coordinates in which near cases have similar end states."""
+    totals = feed.totals
+    atoms = np.abs(totals).sum(axis=1, keepdims=True)
+    share = totals / atoms
+    size = atoms[:, 0]
+    held = np.log(p) if p is not None else np.log(size / V)
+    if pair.searched is None:
+        first = 6.0 * np.log(values)
+    else:  # a mole of atoms takes up about 20 J/K
+        first = values / size / (20.0 if pair.searched == "S" else 5000.0)
+    return np.column_stack([first, 0.3 * held, 6.0 * share])
+
+
+def _at_temperature(
+    mixture: Mixture, feed: Feed, T: Array, p: Array | None, V: Array | None, features: Array
+) -> Found:
+    """Cases whose temperature is held."""
+    cases = Cases(mixture, feed, T, p, V)
+    minima = minimise_many(cases, features)
+    state = totals(minima.n, mixture.is_gas, mixture.volume, cases.g, cases.h, T, minima.p, V)
+    return Found(
+        T=T,
+        p=minima.p,
+        n=minima.n,
+        potentials=minima.potentials,
+        functions={name: getattr(state, name) for name in ("V", "H", "U", "S", "G")},
+        found=minima.found,
+        why=minima.why,
+    )

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from pathlib import Path
 
-from PySide6.QtWidgets import QFileDialog, QWidget
+from PySide6.QtWidgets import QAbstractItemView, QApplication, QFileDialog, QLineEdit, QWidget
 
 from gui.dialogs.unsaved import Choice, ask_unsaved
 from gui.edits import blank_project
@@ -34,6 +34,7 @@ class Files:
 
     def may_leave(self) -> bool:
         """Whether the project may be replaced or the window closed."""
+        commit_typing()
         if not self._session.modified:
             return True
         answer = self.ask(self._window, self.name())
@@ -97,6 +98,7 @@ class Files:
 
     def write(self, path: Path) -> bool:
         """Write the project to `path`."""
+        commit_typing()
         from solver.project.file import write
 
         try:
@@ -108,3 +110,12 @@ class Files:
         self._preferences.remember(path)
         self._session.messages.note(f"Saved {path.name}.")
         return True
+
+
+def commit_typing() -> None:
+    """Take over what stands in a cell that is still open."""
+    line = QApplication.focusWidget()
+    above = line.parentWidget() if isinstance(line, QLineEdit) else None
+    view = above.parentWidget() if above is not None else None
+    if isinstance(view, QAbstractItemView):
+        view.commitData(line)

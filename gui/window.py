@@ -80,6 +80,7 @@ class Window(QMainWindow):
         column = QVBoxLayout(left)
         column.setContentsMargins(0, 0, 0, 0)
         column.setSpacing(GRID * 2)
+        self.going_in.setMinimumHeight(184)
         column.addWidget(self.going_in, 5)
         column.addWidget(self.held_fixed, 0)
         column.addWidget(self.may_form, 4)

@@ -18,7 +18,7 @@ from PySide6.QtWidgets import (
 
 from gui import edits
 from gui.fields.species_completer import SpeciesCompleter
-from gui.parts.card import Card, Label, Sentence, choice
+from gui.parts.card import Card, Label, Sentence, choice, link
 from gui.session import Session
 from gui.tables.candidates_model import CandidateRow, CandidatesModel
 from gui.tables.check_delegate import CheckDelegate
@@ -86,12 +86,18 @@ class MayForm(Card):
         for name, words in RULES:
             self.rule.addItem(words, name)
         second.addWidget(self.rule)
+        self.rule_link = link("rule", "Say the rule in words")
+        self.rule_link.setCheckable(True)
+        self.rule_link.setFont(sized(self.rule_link.font(), "small"))
+        second.addWidget(self.rule_link)
         second.addStretch(1)
         self.phases: dict[str, QToolButton] = {}
         for name, words in PHASES:
             self.phases[name] = choice(words, f"Allow {words} species")
             second.addWidget(self.phases[name])
         self.body.addLayout(second)
+        self.rule_sentence = Sentence("muted")
+        self.body.addWidget(self.rule_sentence)
         self.sentence = Sentence()
         self.body.addWidget(self.sentence)
         self.model = CandidatesModel(self)
@@ -108,7 +114,6 @@ class MayForm(Card):
         self.view.horizontalHeader().hide()
         self.view.horizontalHeader().setSectionResizeMode(1, QHeaderView.ResizeMode.Stretch)
         self.view.setColumnWidth(0, 124)
-        self.view.setColumnWidth(2, 146)
         self.view.setMinimumHeight(ROW_HEIGHT * 2)
         self.body.addWidget(self.view, 1)
         self.search = QLineEdit()
@@ -125,6 +130,7 @@ class MayForm(Card):
     def _connect(self) -> None:
         self.element.returnPressed.connect(self._add_element)
         self.rule.activated.connect(self._pick_rule)
+        self.rule_link.toggled.connect(lambda _: self.refresh())
         for name, button in self.phases.items():
             button.clicked.connect(lambda on, name=name: self._pick_phase(name, on))
         self.model.toggled.connect(self._toggle)
@@ -148,6 +154,7 @@ class MayForm(Card):
         wish = self._session.case.candidates
         self.rule.setCurrentIndex(self.rule.findData(wish.rule))
         self.rule.setToolTip(SENTENCES[wish.rule])
+        self.rule_sentence.say(SENTENCES[wish.rule] if self.rule_link.isChecked() else "")
         for name, button in self.phases.items():
             button.setChecked(name in wish.phases)
         self.show_answer()
@@ -191,6 +198,8 @@ class MayForm(Card):
     def _span(self) -> None:
         """A name without a remark beside it may run to the edge."""
         self.view.clearSpans()
+        width = self.view.fontMetrics().horizontalAdvance
+        self.view.setColumnWidth(2, max((width(r.remark) for r in self.model.rows), default=0) + 16)
         for i, row in enumerate(self.model.rows):
             if not row.remark:
                 self.view.setSpan(i, 1, 1, 2)

@@ -23,7 +23,7 @@ class ShareAxis(pg.AxisItem):
         """Whole decades in the logarithmic view."""
         if not self.decades:
             return few(super().tickValues(minVal, maxVal, size))
-        low, high = math.ceil(minVal - 1e-9), math.floor(maxVal + 1e-9)
+        low, high = math.ceil(minVal - 1e-9), min(math.floor(maxVal + 1e-9), 2)
         step = max(1, math.ceil((high - low) * 24 / max(size, 1)))
         return [(float(step), [float(v) for v in range(high, low - 1, -step)])]
 
@@ -31,7 +31,7 @@ class ShareAxis(pg.AxisItem):
         """Numbers without padding."""
         if self.decades:
             return [decade_text(round(v)) for v in values]
-        return [f"{v:g}".replace("-", "−") for v in values]
+        return [f"{v:g}".replace("-", "−") if v <= 100 else "" for v in values]
 
 
 class PlainAxis(pg.AxisItem):

@@ -219,7 +219,6 @@ class CompositionPlot(QWidget):
             labelOpts={
                 "position": 0.97,
                 "color": t.accent,
-                "fill": t.panel,
                 "anchors": [(0.0, 0.5), (1.0, 0.5)],
             },
         )
@@ -242,11 +241,11 @@ class CompositionPlot(QWidget):
         assert line is not None
         x = self._x(line.T)
         if self._log:
-            y = (FLOOR + 2.0, 2.0)
+            y = (FLOOR + 2.0, 2.6)  # room above 100 % for the label of the case
         else:
             at = [line.keys.index(k) for k in self._keys]
             top = float(np.nan_to_num(line.shares[:, at]).max()) * 100 if at else 1.0
-            y = (0.0, min(top * 1.06, 102.0) if top > 0 else 1.0)
+            y = (0.0, top * 1.12 if top > 0 else 1.0)
         item.getViewBox().setRange(xRange=(x[0], x[-1]), yRange=y, padding=0)
 
     # -- reading out

@@ -361,6 +361,20 @@ def test_saving_and_reopening_gives_the_same_window(make_window, qtbot, saved):
     assert "parsec" in other.held_fixed.rows["V"].sentence.text()
 
 
+def test_saving_takes_the_open_cell_along(make_window, qtbot, saved):
+    window = make_window(path=saved)
+    view = window.going_in.sections[0].view
+    window.activateWindow()
+    qtbot.waitUntil(view.isActiveWindow)
+    view.setFocus()
+    view.setCurrentIndex(view.model().index(0, SPECIES))
+    qtbot.keyClicks(view, "C")
+    qtbot.keyClicks(QApplication.focusWidget(), "2H6")
+    press(window, "save")
+    assert read(saved).cases[0].streams[0].amounts[0].species == "C2H6"
+    assert QApplication.focusWidget().text() == "C2H6"  # the cell stays open
+
+
 @pytest.mark.parametrize(
     ("content", "says"), [("{ not json", "line"), (json.dumps({"format": "other"}), "format")]
 )

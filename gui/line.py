@@ -18,7 +18,9 @@ from solver.project.wording import formula_text
 if TYPE_CHECKING:
     from solver.project.case import CaseAnswer
 
-POINTS = 61
+POINTS = 121
+PART = 41
+"""Points that are settled in one batch."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -54,38 +56,34 @@ def composition_line(
     progress: Callable[[float], None],
     should_stop: Callable[[], bool],
     points: int | None = None,
-    settle: Any = None,
+    settle_many: Any = None,
 ) -> Line:
     """Settle `answer`'s feed over temperatures from `low` to `high` (K).
 
     Pressure is that of the end state; where the case holds the volume, the volume is held.
+    The points go to the solver in parts, so that a long line tells of its progress and can stop.
     """
-    if settle is None:
-        from solver import settle
-    from solver import Fixed
-    from solver.errors import SettleError
-
+    if settle_many is None:
+        from solver import settle_many
     began = perf_counter()
     points = POINTS if points is None else points
     end = answer.end
     sealed = end.fixed.pair.endswith("V")
-    species = answer.prepared.candidates
+    pair, held = ("T,V", end.V) if sealed else ("T,p", end.p)
+    species = list(answer.prepared.candidates)
+    feed = dict(answer.prepared.feed)
     keys = tuple(sp.key for sp in species)
     T = np.linspace(low, high, points)
     shares = np.full((points, len(keys)), np.nan)
     failed = 0
-    for i, t in enumerate(T):
+    for start in range(0, points, PART):
         if should_stop():
             raise Stopped
-        held = Fixed("T,V", T=float(t), V=end.V) if sealed else Fixed("T,p", T=float(t), p=end.p)
-        try:
-            state = settle(species, answer.prepared.feed, held)
-        except SettleError:
-            failed += 1
-        else:
-            n = np.array([state.amounts[key] for key in keys])
-            shares[i] = n / n.sum()
-        progress((i + 1) / points)
+        part = slice(start, min(start + PART, points))
+        ends = settle_many(species, feed, pair, T[part], np.full(T[part].size, held))
+        shares[part] = ends.amounts / ends.amounts.sum(axis=1, keepdims=True)
+        failed += int((~ends.settled).sum())
+        progress(part.stop / points)
     condensed = tuple(sp.key for sp in species if sp.phase != "gas")
     return Line(
         T,
@@ -95,7 +93,7 @@ def composition_line(
         failed,
         perf_counter() - began,
         "V" if sealed else "p",
-        end.V if sealed else end.p,
+        held,
     )
 
 

@@ -7,6 +7,7 @@ from species_db.elements import ATOMIC_MASS, molar_mass
 from species_db.errors import UnknownSpecies
 from species_db.formula import parse_formula
 from species_db.library import Library, load
+from species_db.sources import sources
 from species_db.species import (
     P_STANDARD,
     SECOND_T,
@@ -33,4 +34,5 @@ __all__ = [
     "load",
     "molar_mass",
     "parse_formula",
+    "sources",
 ]

@@ -6,7 +6,7 @@ m3/mol; pressure in Pa.
 """
 
 from dataclasses import dataclass
-from importlib import resources
+from pathlib import Path
 
 from species_db.elements import molar_mass
 from species_db.species import SecondSource, Segment, Species, Transition
@@ -33,6 +33,7 @@ COLUMNS = (
     "flags",
     "segments",  # "T_low T_high a1 ... a7|..."
 )
+TABLE = Path(__file__).with_name("data") / "species.tsv"
 INDEXED = 7
 """So many leading columns are split when the file is read."""
 
@@ -59,7 +60,7 @@ class Entry:
 
 def read_entries() -> dict[str, Entry]:
     """Index of the built-in table: key -> row, in the order of the file."""
-    text = resources.files("species_db").joinpath("data/species.tsv").read_text("utf-8")
+    text = TABLE.read_text("utf-8")
     lines = text.split("\n")
     if tuple(lines[0].split("\t")) != COLUMNS:
         raise ValueError("species.tsv: the heading does not match this version of the program")

@@ -1,6 +1,5 @@
 """Ranking of search hits and close matches for a text that nothing answers to."""
 
-import difflib
 import re
 from collections.abc import Iterable, Mapping
 from typing import Protocol
@@ -66,6 +65,8 @@ def closest(
     text: str, names: Mapping[str, list[str]], keys: Iterable[str], limit: int = 5
 ) -> tuple[str, ...]:
     """Keys whose spelling or name comes closest to a text."""
+    import difflib  # needed for an unknown text alone
+
     near: list[str] = []
     size = len(text)
     same_size = [k for k in keys if abs(len(k) - size) <= 3]

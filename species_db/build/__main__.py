@@ -84,6 +84,7 @@ def main() -> None:
             d.molar_volume = molar_volume(d)
     write.species_table(drafts, keys.named_records(drafts), DATA / "species.tsv")
     reasons = write.left_out_table(out, DATA / "left_out.csv")
+    write.counts_table(drafts, reasons, DATA / "counts.csv")
     print(f"{len(drafts)} records", dict(Counter(_class(d) for d in drafts)))
     print("left out:", sum(reasons.values()))
     for reason, n in reasons.most_common():

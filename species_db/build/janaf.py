@@ -14,12 +14,14 @@ import numpy as np
 from species_db.build import chain
 from species_db.build.draft import Draft, LeftOut, composition
 from species_db.build.janaf_cas import REFERENCE_GASES, cas_of_compositions, cas_of_tables
-from species_db.build.janaf_read import CP, DH, HF, S, T, Table, read_tables
+from species_db.build.janaf_read import CP, DH, HF, S, T, Table, inconsistency, read_tables
 from species_db.build.poly import T0, Piece, fit
 from species_db.species import R
 
 T_LOW = 200.0
 POOR_FIT = 0.02
+MISPRINT = 0.05
+"""A table whose derived columns miss by more than this, kJ/mol, is flagged."""
 FORM = re.compile(
     r", (Alpha-Delta|Alpha|Beta|Gamma|Delta|Kappa|Rutile|Anatase|Quartz|Cristobalite|Red|Yellow|"
     r"White|Black|Pyrite|Marcasite|Andalusite|Kyanite|Sillimanite|Mullite|Orthorhombic|Monoclinic|I|II|III|IV|V)\b",
@@ -113,6 +115,9 @@ def janaf_drafts() -> tuple[list[Draft], list[LeftOut]]:
     for d in drafts:
         if d.error_g > POOR_FIT:
             d.flags.append(f"fit poor: {d.error_g:.3f} in g/RT")
+        miss = inconsistency(read_tables()[d.rid])
+        if miss > MISPRINT:
+            d.flags.append(f"table's formation columns miss its H and S by {miss:.2f} kJ/mol")
     return drafts, out
 
 

@@ -10,8 +10,9 @@ import numpy as np
 
 from species_db.build.places import package_dir
 
-T, CP, S, GEF, DH, HF = range(6)
-"""Columns: K, J/(mol K), J/(mol K), J/(mol K), H - H298 kJ/mol, formation enthalpy kJ/mol."""
+T, CP, S, GEF, DH, HF, GF = range(7)
+"""Columns: K, J/(mol K), J/(mol K), J/(mol K), H - H298 kJ/mol, formation enthalpy and Gibbs
+energy of formation kJ/mol."""
 
 
 @dataclass
@@ -30,9 +31,46 @@ class Table:
         found = np.where(np.abs(self.rows[:, T] - T_asked) < 1e-6)[0]
         return float(self.rows[found[0], column]) if len(found) else math.nan
 
+    def per_atom(self, T_asked: float, column: int) -> float:
+        """Tabulated value divided by the atoms of the formula."""
+        return self.at(T_asked, column) / (sum(self.elements.values()) or 1.0)
+
     def noted(self, pattern: str) -> list[float]:
         """Temperatures of the notes that a pattern finds."""
         return sorted({t for t, note in self.notes if re.search(pattern, note)})
+
+
+def inconsistency(table: Table) -> float:
+    """Largest miss of the table's own formation columns against its H, S and the elements, kJ/mol.
+
+    The derived columns are not used; a miss tells that the table holds a misprint somewhere.
+    """
+    parts = dict(table.elements)
+    if table.charge:
+        parts["e"] = -float(table.charge)
+    references = _references()
+    if any(e not in references for e in parts):
+        return 0.0
+    h298 = table.at(298.15, HF)
+    worst = 0.0
+    for row in table.rows:
+        if row[T] < 298 or not math.isfinite(row[GF]):
+            continue
+        h = h298 + row[DH] - sum(n * references[e].per_atom(row[T], DH) for e, n in parts.items())
+        s = row[S] - sum(n * references[e].per_atom(row[T], S) for e, n in parts.items())
+        miss = max(abs(h - row[T] * s / 1000 - row[GF]), abs(h - row[HF]))
+        worst = max(worst, miss) if math.isfinite(miss) else worst
+    return float(worst)
+
+
+@cache
+def _references() -> dict[str, Table]:
+    """Reference-state table of each element, graphite and the electron among them."""
+    out = {}
+    for table in read_tables().values():
+        if table.state == "ref" and len(table.elements) <= 1:
+            out[next(iter(table.elements), "e")] = table
+    return out
 
 
 @cache
@@ -53,7 +91,8 @@ def read_tables() -> dict[str, Table]:
                 continue
             extra = [c.strip() for c in cells[5:]]
             is_note = bool(extra and extra[0] and math.isnan(_number(extra[0])))
-            rows.append([*values, math.nan if is_note or not extra else _number(extra[0])])
+            formed = [_number(c) for c in extra[:2]] if extra and not is_note else []
+            rows.append([*values, *formed, *[math.nan] * (2 - len(formed))])
             if is_note:
                 notes.append((values[0], extra[0]))
         tables[index] = Table(

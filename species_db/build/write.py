@@ -72,6 +72,16 @@ def _second(s: Draft | None) -> str:
     return ";".join([s.source, s.reference.replace(";", ","), f"{s.h298:.7g}", f"{s.s298:.6g}", *g])
 
 
+def counts_table(drafts: list[Draft], reasons: Counter[str], path: Path) -> None:
+    """How many records were kept, by source and state, and left out, by reason."""
+    kept = Counter((d.source, "ion" if d.charge else d.phase) for d in drafts)
+    with path.open("w", encoding="utf-8", newline="") as f:
+        w = csv.writer(f, lineterminator="\n")
+        w.writerow(["what", "which", "records"])
+        w.writerows(("kept", f"{source} {state}", n) for (source, state), n in sorted(kept.items()))
+        w.writerows(("left out", reason, n) for reason, n in sorted(reasons.items()))
+
+
 def left_out_table(out: list[LeftOut], path: Path) -> Counter[str]:
     """What was left out and why; returns the count of each reason."""
     rows = sorted(set(out), key=lambda x: (x.source, x.reason, x.record))

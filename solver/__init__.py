@@ -6,6 +6,7 @@ from solver.errors import InputError, NoEndState, NotProven, SettleError
 from solver.fed import Fed, as_fed
 from solver.fixed import PAIRS, Fixed
 from solver.proof import Proof
+from solver.restrictions import FixedConversion, HeldApproach, Inert, NoExchange
 from solver.settle import settle
 from solver.settle_many import settle_many
 
@@ -15,8 +16,12 @@ __all__ = [
     "EndStates",
     "Fed",
     "Fixed",
+    "FixedConversion",
+    "HeldApproach",
+    "Inert",
     "InputError",
     "NoEndState",
+    "NoExchange",
     "NotProven",
     "Proof",
     "SettleError",

@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 
 from solver.core.cases import Feed
 from solver.core.mixture import P0, Mixture, R
+from solver.restrictions import Cost
 
 Array = NDArray[np.float64]
 
@@ -48,6 +49,8 @@ class Proof:
         Activity of each condensed candidate that did not form.
     model : str
         What was assumed of gas and condensed phases.
+    restrictions : tuple of Cost
+        What was held back, and what each costs in free energy.
     """
 
     element_residual: float
@@ -56,6 +59,7 @@ class Proof:
     gap: float
     absent: Mapping[str, float]
     model: str = MODEL
+    restrictions: tuple[Cost, ...] = ()
 
     @property
     def holds(self) -> bool:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 from types import MappingProxyType
 from typing import TYPE_CHECKING
 
@@ -10,17 +11,18 @@ import numpy as np
 from numpy.typing import NDArray
 
 import species_db
-from solver.core.basis import CHARGE, formula_vector
 from solver.core.cases import Feed
 from solver.core.minimise import NotHeld, Unsettled
-from solver.core.mixture import Held, Mixture, R, mixture_of
+from solver.core.mixture import Held, Mixture, R
 from solver.core.temperature import OutOfReach, Point, Search, find_temperature, point_at
 from solver.core.vessel import TooSmall
 from solver.endstate import PRESENT, EndState
 from solver.errors import InputError, NoEndState, NotProven, SettleError
 from solver.fed import check_gas, checked_amount
 from solver.fixed import PAIRS, T_HIGHEST, T_LOWEST, Fixed, Pair
+from solver.posed import Posed, pose
 from solver.proof import Proof, element_residuals, optimality_gap
+from solver.restrictions import Cost, Restriction
 
 if TYPE_CHECKING:
     from species_db import Species
@@ -36,6 +38,7 @@ def settle(
     fixed: Fixed,
     *,
     gas: str = "ideal",
+    restrictions: Sequence[Restriction] = (),
 ) -> EndState:
     """Compute where the feed ends up among the candidates.
 
@@ -49,6 +52,8 @@ def settle(
         The pair of state variables held.
     gas : str
         Gas model.
+    restrictions : sequence of Restriction
+        What keeps the mixture short of full equilibrium.
 
     Returns
     -------
@@ -66,17 +71,21 @@ def settle(
     """
     check_gas(gas)
     fed, amounts = _checked_feed(species, feed)
-    mixture = mixture_of(species, fed)
-    check_elements(mixture, fed)
-    vectors = np.array([formula_vector(sp, mixture.rows) for sp in fed])
+    held_back = tuple(restrictions)
+    posed = pose(species, fed, amounts[None, :], held_back)
+    mixture = posed.mixture
     # the minimiser works on totals near one; a power of two changes no digit
-    scale = 2.0 ** -round(float(np.log2(np.abs(amounts @ vectors).max())))
-    scaled = Feed((amounts * scale)[None, :], vectors)
+    scale = 2.0 ** -round(float(np.log2(np.abs(posed.feed.totals).max())))
+    scaled = Feed(posed.feed.amounts * scale, posed.feed.vectors)
     try:
         point = _find(mixture, scaled, fixed, scale)
     except LOST as error:
         raise explained(mixture, PAIRS[fixed.pair], fixed.values, error, scale) from None
-    return _end_state(mixture, species, scaled, point, fixed, gas, scale)
+    end = _end_state(posed, species, scaled, point, fixed, gas, scale)
+    if not held_back:
+        return end
+    costs = _costs(species, feed, end, gas, held_back)
+    return replace(end, proof=replace(end.proof, restrictions=costs))
 
 
 def _checked_feed(
@@ -140,21 +149,6 @@ def _resolved(text: str, by_key: Mapping[str, Species]) -> str:
             return text
         return key if key in by_key else text
     return text
-
-
-def check_elements(mixture: Mixture, fed: Sequence[Species]) -> None:
-    """Every element fed must occur in a candidate that holds nothing else than is fed."""
-    for name, row in mixture.rows.items():
-        if name == CHARGE or np.any(mixture.A[:, row] > 0.0):
-            continue
-        source = next(sp.key for sp in fed if name in sp.elements)
-        raise InputError(
-            f"No candidate holds {name}, which the feed brings in as {source}; "
-            f"add a species with {name} to the candidates, made of elements that are fed.",
-            "species",
-            name,
-            f"a candidate with {name}",
-        )
 
 
 LOST = (NotHeld, OutOfReach, TooSmall, Unsettled, np.linalg.LinAlgError)
@@ -223,8 +217,33 @@ def _find(mixture: Mixture, feed: Feed, fixed: Fixed, scale: float) -> Point:
     return find_temperature(mixture, feed, search)
 
 
+def _costs(
+    species: Sequence[Species],
+    feed: Mapping[Species | str, float],
+    end: EndState,
+    gas: str,
+    restrictions: tuple[Restriction, ...],
+) -> tuple[Cost, ...]:
+    """How much lower the free energy would lie without each restriction, at the T reached."""
+    holds_volume = PAIRS[end.fixed.pair].holds_volume
+    fixed = Fixed("T,V", T=end.T, V=end.V) if holds_volume else Fixed("T,p", T=end.T, p=end.p)
+    out = []
+    for restriction in restrictions:
+        rest = tuple(r for r in restrictions if r is not restriction)
+        try:
+            free = settle(species, feed, fixed, gas=gas, restrictions=rest)
+        except SettleError:
+            out.append(Cost(str(restriction), float("nan")))
+            continue
+        energy = end.G - free.G
+        if holds_volume:
+            energy = (end.U - end.T * end.S) - (free.U - free.T * free.S)
+        out.append(Cost(str(restriction), energy))
+    return tuple(out)
+
+
 def _end_state(
-    mixture: Mixture,
+    posed: Posed,
     species: Sequence[Species],
     feed: Feed,
     point: Point,
@@ -232,7 +251,7 @@ def _end_state(
     gas: str,
     scale: float,
 ) -> EndState:
-    T, p, n = point.T, point.p, point.n
+    T, p, n, mixture = point.T, point.p, point.n, posed.mixture
     closures, traces = element_residuals(mixture, n[None, :], feed)
     closure, trace = float(closures[0]), float(traces[0])
     V = np.array([fixed.values[1] * scale]) if PAIRS[fixed.pair].holds_volume else None
@@ -241,7 +260,7 @@ def _end_state(
         n[None, :],
         feed.totals,
         point.potentials[None, :],
-        mixture.thermo.over(np.array([T]))[0],
+        mixture.thermo.over(np.array([T]))[0] + mixture.shifted(np.array([T])),
         np.array([T]),
         np.array([p]),
         V,
@@ -251,8 +270,8 @@ def _end_state(
     for sp, amount, f in zip(mixture.species, n, force, strict=True):
         if sp.phase != "gas":
             if amount > 0.0:
-                del absent[sp.key]
-            else:
+                absent.pop(sp.key, None)
+            elif sp.key in absent:
                 absent[sp.key] = float(np.exp(min(f, 0.0)))
     proof = Proof(
         element_residual=closure,
@@ -271,7 +290,7 @@ def _end_state(
         )
     amounts = {sp.key: 0.0 for sp in species}
     for sp, amount in zip(mixture.species, n, strict=True):
-        amounts[sp.key] = float(amount / scale)
+        amounts[sp.key] += float(amount / scale)
     named = n > PRESENT * n.sum()
     thermo = mixture.thermo
     outside = named & ((thermo.T_min > T) | (thermo.T_max < T))

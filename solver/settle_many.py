@@ -9,16 +9,16 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from solver.core.basis import formula_vector
 from solver.core.batch import minimise_many
 from solver.core.batch_temperature import Found, Searches, find_temperatures
 from solver.core.cases import Cases, Feed
-from solver.core.mixture import Mixture, R, mixture_of
+from solver.core.mixture import Mixture, R
 from solver.core.totals import totals
 from solver.endstates import EndStates
 from solver.errors import InputError, SettleError
 from solver.fed import MOST, check_gas
 from solver.fixed import PAIRS, T_HIGHEST, T_LOWEST, Pair, allowed_range, checked_value
+from solver.posed import Posed, pose
 from solver.proof import (
     ELEMENT_LIMIT,
     ENERGY_LIMIT,
@@ -27,7 +27,8 @@ from solver.proof import (
     element_residuals,
     optimality_gap,
 )
-from solver.settle import candidate_of, check_elements, check_species, explained
+from solver.restrictions import Restriction
+from solver.settle import candidate_of, check_species, explained
 
 if TYPE_CHECKING:
     from species_db import Species
@@ -45,6 +46,7 @@ def settle_many(
     Y: ArrayLike,
     *,
     gas: str = "ideal",
+    restrictions: Sequence[Restriction] = (),
 ) -> EndStates:
     """Compute the end states of many cases over one list of candidates.
 
@@ -60,6 +62,8 @@ def settle_many(
         The values of the pair's two variables, in its order, SI.
     gas : str
         Gas model.
+    restrictions : sequence of Restriction
+        What keeps the mixtures short of full equilibrium, the same for all cases.
 
     Returns
     -------
@@ -91,29 +95,18 @@ def settle_many(
     for presence in np.unique(amounts[good] > 0.0, axis=0):
         same = good & ((amounts > 0.0) == presence).all(axis=1)
         some = [sp for sp, there in zip(fed, presence, strict=True) if there]
-        mixture = mixture_of(species, some)
         index = np.flatnonzero(same)
         try:
-            check_elements(mixture, some)
+            posed = pose(species, some, amounts[index][:, presence], tuple(restrictions))
         except InputError as error:
             why.update({int(i): str(error) for i in index})
             continue
-        place = np.array([columns[sp.key] for sp in mixture.species], dtype=np.intp)
-        vectors = np.array([formula_vector(sp, mixture.rows) for sp in some])
         size = max(_CHUNK_NUMBERS // max(len(species), 1), 50)
         for begin in range(0, len(index), size):
-            rows = index[begin : begin + size]
-            _settle_chunk(
-                mixture,
-                Feed(amounts[rows][:, presence], vectors),
-                PAIRS[pair],
-                first[rows],
-                second[rows],
-                out,
-                rows,
-                place,
-                why,
-            )
+            part = np.arange(begin, min(begin + size, len(index)))
+            rows = index[part]
+            chunk = Posed(posed.mixture, posed.feed.of(part), posed.place)
+            _settle_chunk(chunk, PAIRS[pair], first[rows], second[rows], out, rows, why)
     return out.end_states(pair, tuple(columns), why)
 
 
@@ -212,16 +205,15 @@ class _Results:
 
 
 def _settle_chunk(
-    mixture: Mixture,
-    feed: Feed,
+    posed: Posed,
     pair: Pair,
     first: Array,
     second: Array,
     out: _Results,
     rows: NDArray[np.intp],
-    place: NDArray[np.intp],
     why: dict[int, str],
 ) -> None:
+    mixture, feed = posed.mixture, posed.feed
     # the minimiser works on totals near one; a power of two changes no digit
     scale = 2.0 ** -np.round(np.log2(np.abs(feed.totals).max(axis=1)))
     feed = Feed(feed.amounts * scale[:, None], feed.vectors)
@@ -242,7 +234,7 @@ def _settle_chunk(
     rows, first, values, scale = rows[some], first[some], values[some], scale[some]
     feed, T, p, n = feed.of(some), found.T[some], found.p[some], found.n[some]
     V = None if V is None else V[some]
-    g = mixture.thermo.over(T)[0]
+    g = mixture.thermo.over(T)[0] + mixture.shifted(T)
     closure, trace = element_residuals(mixture, n, feed)
     gap, _ = optimality_gap(mixture, n, feed.totals, found.potentials[some], g, T, p, V)
     energy = np.zeros(len(some))
@@ -264,7 +256,8 @@ def _settle_chunk(
     for name, function in found.functions.items():
         out.values[name][good] = function[some][ok] / scale[ok]
     out.amounts[good] = 0.0
-    out.amounts[np.ix_(good, place)] = n[ok] / scale[ok][:, None]
+    for j, column in enumerate(posed.place.tolist()):  # an inert part adds to its species
+        out.amounts[good, column] += n[ok, j] / scale[ok]
 
 
 def _features(feed: Feed, pair: Pair, values: Array, p: Array | None, V: Array | None) -> Array:
@@ -287,7 +280,9 @@ def _at_temperature(
     """Cases whose temperature is held."""
     cases = Cases(mixture, feed, T, p, V)
     minima = minimise_many(cases, features)
-    state = totals(minima.n, mixture.is_gas, mixture.volume, cases.g, cases.h, T, minima.p, V)
+    state = totals(
+        minima.n, mixture.is_gas, mixture.volume, cases.g, cases.h, T, minima.p, V, mixture.twins
+    )
     return Found(
         T=T,
         p=minima.p,

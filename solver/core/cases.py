@@ -65,7 +65,7 @@ class Cases:
         totals = np.abs(feed.totals)
         self.scale = totals.max(axis=1)
         self.atoms = totals.sum(axis=1)
-        self.c = self.g.copy()
+        self.c = self.g + mixture.shifted(T) if mixture.shifts else self.g.copy()
         self.nu_fixed = np.zeros(len(T))
         if p is not None:
             self.c[:, self.gas] += np.log(p / P0)[:, None]

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
-from solver.core.basis import Basis, balance_rows, formula_vector, make_basis
+from solver.core.basis import CHARGE, Basis, balance_rows, formula_vector, make_basis
 from solver.core.thermo import ThermoTable
 
 if TYPE_CHECKING:
@@ -19,6 +19,23 @@ Array = NDArray[np.float64]
 
 R = 8.314462618
 P0 = 1.0e5  # Pa, standard pressure
+
+
+@dataclass(frozen=True, eq=False)
+class Shift:
+    """A reaction whose K is taken at T + dT, carried by the g of one species.
+
+    Attributes
+    ----------
+    numbers : ndarray, shape (species,)
+        Stoichiometric numbers, products positive.
+    key : int
+        Index of the species that carries the shift.
+    """
+
+    numbers: Array
+    dT: float
+    key: int
 
 
 @dataclass(frozen=True, eq=False)
@@ -45,7 +62,26 @@ class Mixture:
     condensed: NDArray[np.intp]
     rank: int
     """Number of independent balances among the candidates."""
+    shifts: tuple[Shift, ...] = ()
+    twins: tuple[tuple[int, int], ...] = ()
+    """Pairs of a species and its inert part, which are one in the entropy of mixing."""
     _bases: dict[tuple[int, ...], Basis] = field(default_factory=dict)
+
+    def shifted(self, T: Array) -> Array:
+        """What is added to g/RT of each species (cases, species) by reactions held apart."""
+        out = np.zeros((len(T), len(self.species)))
+        if self.shifts:
+            at_T = self.thermo.over(T)[0]
+            numbers = np.array([shift.numbers for shift in self.shifts])  # (reactions, species)
+            keys = [shift.key for shift in self.shifts]
+            wanted = np.column_stack(
+                [
+                    (self.thermo.over(T + shift.dT)[0] - at_T) @ shift.numbers
+                    for shift in self.shifts
+                ]
+            )
+            out[:, keys] = np.linalg.solve(numbers[:, keys], wanted.T).T
+        return out
 
     def basis(self, members: Sequence[int]) -> Basis:
         """The balances over the given components, kept for the next case that asks."""
@@ -64,14 +100,15 @@ def condensed_volume(species: Species) -> float:
     return float(species.molar_volume)
 
 
-def make_mixture(species: Sequence[Species], rows: Mapping[str, int]) -> Mixture:
-    """Gather the arrays of candidates whose elements all have a row."""
-    A = np.array([formula_vector(sp, rows) for sp in species]).reshape(-1, len(rows))
-    atoms = np.array([0.0 if name == "charge" else 1.0 for name in rows])
-    if "charge" in rows:
-        # an electron has no atom: let the charge row carry a small negative weight
-        most = max((sp.charge for sp in species), default=1)
-        atoms[rows["charge"]] = -1.0 / (2.0 * max(most, 1))
+def make_mixture(
+    species: Sequence[Species],
+    rows: Mapping[str, int],
+    A: Array,
+    atoms: Array,
+    shifts: tuple[Shift, ...] = (),
+    twins: tuple[tuple[int, int], ...] = (),
+) -> Mixture:
+    """Gather the arrays of candidates over given balances."""
     is_gas = np.array([sp.phase == "gas" for sp in species], dtype=bool)
     return Mixture(
         species=tuple(species),
@@ -84,7 +121,15 @@ def make_mixture(species: Sequence[Species], rows: Mapping[str, int]) -> Mixture
         thermo=ThermoTable(species),
         volume=np.array([condensed_volume(sp) for sp in species]),
         atoms=atoms,
+        shifts=shifts,
+        twins=twins,
     )
+
+
+def charge_weight(species: Sequence[Species]) -> float:
+    """Weight of the charge row in `atoms`: an electron has no atom, so it gets a little."""
+    most = max((sp.charge for sp in species), default=1)
+    return -1.0 / (2.0 * max(most, 1))
 
 
 _KEPT: dict[tuple[int, ...], tuple[tuple[Species, ...], Mixture]] = {}
@@ -99,10 +144,12 @@ def mixture_of(species: Sequence[Species], fed: Sequence[Species]) -> Mixture:
     if key in _KEPT:
         return _KEPT[key][1]
     rows = balance_rows(fed)
-    if any(sp.charge for sp in species) and "charge" not in rows:
-        rows["charge"] = len(rows)
+    if any(sp.charge for sp in species) and CHARGE not in rows:
+        rows[CHARGE] = len(rows)
     held = [sp for sp in species if all(element in rows for element in sp.elements)]
-    mixture = make_mixture(held, rows)
+    A = np.array([formula_vector(sp, rows) for sp in held]).reshape(-1, len(rows))
+    atoms = np.array([charge_weight(held) if name == CHARGE else 1.0 for name in rows])
+    mixture = make_mixture(held, rows, A, atoms)
     if len(_KEPT) > 64:
         _KEPT.clear()
     _KEPT[key] = ((*species, *fed), mixture)  # the species stay alive, so do their ids

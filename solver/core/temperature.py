@@ -78,7 +78,9 @@ def point_at(
     g, h, cp = mixture.thermo.over(T)
     V = None if held.V is None else np.array([held.V])
     n = minimum.n[None, :]
-    state = totals(n, mixture.is_gas, mixture.volume, g, h, T, np.array([minimum.p]), V)
+    state = totals(
+        n, mixture.is_gas, mixture.volume, g, h, T, np.array([minimum.p]), V, mixture.twins
+    )
     slope = _slope(mixture, minimum, held, h, cp) if variable else None
     if slope is not None and variable == "S":
         slope /= held.T

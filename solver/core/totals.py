@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -41,6 +42,7 @@ def totals(
     T: Array,
     p: Array,
     V: Array | None,
+    twins: Sequence[tuple[int, int]] = (),
 ) -> Totals:
     """Ideal gas with pure condensed phases beside it.
 
@@ -54,9 +56,17 @@ def totals(
         K, Pa.
     V : ndarray, shape (cases,), or None
         The volume held, m3; None where the mixture takes what it needs.
+    twins : sequence of (int, int)
+        Species that stand twice (the second is the inert part of the first): they mix as one.
     """
     RT = R * T
-    gas = n[:, is_gas]
+    mixed = n
+    if twins:
+        mixed = n.copy()
+        for first, second in twins:
+            mixed[:, first] += mixed[:, second]
+            mixed[:, second] = 0.0
+    gas = mixed[:, is_gas]
     N = gas.sum(axis=1)
     with np.errstate(divide="ignore", invalid="ignore"):
         logs = np.log(gas / N[:, None])

@@ -123,14 +123,14 @@ def test_random_mixture_obeys_the_laws(seed: int):
 
 
 @random_seeds
-@pytest.mark.parametrize("pair", ["H,p", "U,V"])
-def test_random_energy_leads_back(seed: int, pair: str):
-    """T and p come back from the energies, as closely as rounding of the energy allows."""
+@pytest.mark.parametrize("pair", sorted(set(solver.PAIRS) - {"T,p"}))
+def test_random_state_comes_back_from_any_pair(seed: int, pair: str):
+    """Whichever two variables of an end state are held, its T and p come back."""
     problem = random_problem(seed)
     species = list(problem.species)
     end = settle_Tp(species, problem.feed, problem.T, problem.p)
     n_gas = end.phase_amounts.get("gas", 0.0)
-    if pair == "U,V" and n_gas < 1e-9 * sum(end.amounts.values()):
+    if pair.endswith("V") and n_gas < 1e-9 * sum(end.amounts.values()):
         pytest.skip("without gas no volume")
     held = {name: getattr(end, name) for name in pair.split(",")}
     back = solver.settle(species, problem.feed, solver.Fixed(pair, **held))

@@ -67,6 +67,11 @@ def notes(found: dict) -> str:
     for pair in ("H,p", "U,V"):
         stats = runs[f"test_settle_energy[{pair}]"]["stats"]
         lines.append(f"| {pair} | {stats['min'] * 1e3:.3g} | {stats['median'] * 1e3:.3g} |")
+    lines += ["", "| 1000 unordered cases in one call | fastest, us a case | median, us a case |"]
+    lines += ["| --- | ---: | ---: |"]
+    for problem in ("gas", "gas and graphite"):
+        stats = runs[f"test_settle_many[{problem}]"]["stats"]
+        lines.append(f"| {problem} | {stats['min'] * 1e3:.3g} | {stats['median'] * 1e3:.3g} |")
     return "\n".join(lines) + "\n"
 
 

@@ -83,3 +83,25 @@ def test_settle_energy(benchmark, pair: str, values: tuple[str, str]):
     fixed = solver.Fixed(pair, **{name: getattr(fed, name) for name in values})
     end = benchmark(lambda: solver.settle(list(problem.species), problem.feed, fixed))
     assert end.proof.energy_residual <= 1e-10
+
+
+BATCHES = {"gas": False, "gas and graphite": True}
+
+
+@pytest.mark.parametrize("name", BATCHES)
+@pytest.mark.benchmark(warmup=True, warmup_iterations=1, min_rounds=3, max_time=3.0)
+def test_settle_many(benchmark, name: str):
+    """A thousand unordered cases in one call: random temperature and feed."""
+    problem = mixture(BATCHES[name])
+    species, cases = list(problem.species), 1000
+    rng = np.random.default_rng(11)
+    T = rng.uniform(700.0, 2500.0, cases)
+    p = np.full(cases, problem.p)
+    feeds = {s: n * rng.uniform(0.3, 1.0, cases) for s, n in problem.feed.items()}
+    ends = benchmark(lambda: solver.settle_many(species, feeds, "T,p", T, p))
+    assert ends.settled.all()
+    for i in range(0, cases, 97):
+        one = solver.settle(
+            species, {s: n[i] for s, n in feeds.items()}, solver.Fixed("T,p", T=T[i], p=p[i])
+        )
+        assert ends.G[i] == pytest.approx(one.G, rel=1e-9)

@@ -52,8 +52,8 @@ class Transition:
 class SecondSource:
     """What another source says of the same species, kept for comparison.
 
-    h298 in J/mol, s298 in J/(mol K), g in J/mol at the temperatures `SECOND_T` (nan where
-    that source ends), all at 1 bar and on the same datum.
+    h298 in J/mol, s298 in J/(mol K), g in J/mol at the temperatures `SECOND_T` (each nan where
+    that source has no data), all at 1 bar and on the same datum.
     """
 
     source: str

@@ -56,6 +56,10 @@ def collect() -> tuple[list[Draft], list[LeftOut], list[str]]:
     )  # fmt: skip
     for d in everything:
         d.h_as_read = d.h298
+    taken = {d.identity for d in hand if d.phase == "gas"}
+    burcat_has = {d.identity for d in burcat_gas + janaf_gas} & taken
+    if burcat_has:
+        raise SystemExit(f"hand_entries.toml: a gas that another source has: {burcat_has}")
     gases = choose.gases([d for d in everything if d.phase == "gas"], out)
     condensed = choose.condensed([d for d in everything if d.phase != "gas"], out)
     chosen = gases + condensed

@@ -100,17 +100,17 @@ def composition_of(cas: str, row: dict[str, float | str], state: str) -> Identit
     T S, so the row's figures tell: the listed composition, or else the same without hydrogen, is
     taken if they agree with it. Organic compounds, which mostly carry no G, are taken as listed.
     """
+    given = parse_formula(FORMULA_BY_CAS.get(cas, ""))
     entry = known(cas)
-    if not entry or entry.identity[1] or any(e not in ATOMIC_MASS for e, _ in entry.identity[0]):
+    listed = given or (entry.identity if entry else None)
+    if listed is None or listed[1] or any(e not in ATOMIC_MASS for e, _ in listed[0]):
         return None
-    symbols = {e for e, _ in entry.identity[0]}
+    symbols = {e for e, _ in listed[0]}
     h, g, s = (float(row[c + state]) for c in ("Hf", "Gf", "S0"))
     if not math.isfinite(g):
         organic = "C" in symbols and symbols <= set("C H N O S F Cl Br I P".split())
-        return entry.identity if organic or len(symbols) == 1 else None
-    bare = _bare(entry.identity)
-    given = parse_formula(FORMULA_BY_CAS.get(cas, ""))
-    for elements in dict.fromkeys((given[0] if given else bare, entry.identity[0], bare)):
+        return listed if organic or len(symbols) == 1 else None
+    for elements in dict.fromkeys((listed[0], _bare(listed))):
         if any(e not in element_entropies() for e, _ in elements) or not elements:
             continue
         total = sum(element_entropies()[e] * n for e, n in elements)

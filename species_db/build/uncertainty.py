@@ -52,7 +52,8 @@ def stated_in_text(texts: Iterable[str], h298: float) -> tuple[float, str]:
 def assign(drafts: list[Draft], everything: list[Draft]) -> None:
     """Give every chosen record an uncertainty and its kind; `everything` holds the stated ones."""
     for d in drafts:
-        apart = d.second.h298 - d.h298 if d.second else 0.0
+        both = d.second is not None and max(d.T_min, d.second.T_min) < 300.0
+        apart = d.second.h298 - d.h298 if d.second and both else 0.0
         if abs(apart) > DISPUTED and d.u_kind != KIND_ATCT:
             d.flags.append(f"doubtful: second source differs by {apart / 1000:+.0f} kJ/mol")
     stated: dict[tuple[object, str], list[tuple[float, float]]] = {}

@@ -69,7 +69,8 @@ def _second(s: Draft | None) -> str:
     g = [
         f"{g_at(s.pieces, t) * R * t:.7g}" if s.T_min - 2 <= t <= s.T_max else "" for t in SECOND_T
     ]
-    return ";".join([s.source, s.reference.replace(";", ","), f"{s.h298:.7g}", f"{s.s298:.6g}", *g])
+    at_298 = [f"{s.h298:.7g}", f"{s.s298:.6g}"] if s.T_min < 300 else ["nan", "nan"]
+    return ";".join([s.source, s.reference.replace(";", ","), *at_298, *g])
 
 
 def counts_table(drafts: list[Draft], reasons: Counter[str], path: Path) -> None:

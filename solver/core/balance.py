@@ -26,6 +26,7 @@ _CLOSED = 2e-14
 _EXP_LIMIT = 690.0
 _FAINT = 1e-250
 _WILD = 1e4
+_STALE = 14  # steps forward without halving the sum of squares
 _PATIENCE = 6  # iterations that a gas may be larger than its feed
 
 
@@ -199,6 +200,8 @@ class _State:
         self.last = np.full(cases, np.inf)
         self.merit_last = np.full(cases, np.inf)
         self.too_large = np.zeros(cases, dtype=int)
+        self.best = np.full(cases, np.inf)
+        self.stale = np.zeros(cases, dtype=int)
         self.step = np.zeros((cases, self.unknowns))
         self.back = np.zeros(cases, dtype=bool)
         self.going = np.ones(cases, dtype=bool)
@@ -242,6 +245,10 @@ class _State:
         failed = ~np.isfinite(worst) | (self.too_large > _PATIENCE)
         merit = (F**2).sum(axis=1)
         self.back = (merit > self.merit_last) & (worst > 1e-8)
+        better = merit < 0.5 * self.best
+        self.stale = np.where(better, 0, self.stale + ~self.back)
+        self.best = np.where(better, merit, self.best)
+        failed |= (self.stale > _STALE) & (worst > 1e-8)
         self.merit_last = np.where(self.back, self.merit_last, merit)
         self.last = np.where(self.back, self.last, worst)
         self.going = ~(closed | failed)

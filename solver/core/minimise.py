@@ -219,8 +219,22 @@ def _exchange(
     case: Cases, active: list[int], basis: Basis, log_a: Array, nu: float, n: Array | None
 ) -> Minimum:
     """Follow the active set from feasible amounts n (None: not known) to the minimum."""
+    scale = float(case.scale[0])
+    before: Solved | None = None  # the set before the last phase came in
     for _ in range(_MAX_ROUNDS):
-        solved = _with_good_components(case, active, basis, log_a, nu)
+        try:
+            solved = _with_good_components(case, active, basis, log_a, nu)
+        except _Stuck:
+            # one phase too many: the newcomer takes the place of what it uses up first
+            leaving = _used_first(before, active) if before is not None else None
+            if before is None or leaving is None:
+                raise
+            active = [i for i in active if i != leaving]
+            n = before.n[0].copy()
+            n[leaving] = 0.0
+            basis, log_a, nu = restart(case, active, n, before.force[0], scale)
+            before = None
+            continue
         new, force = solved.n[0], solved.force[0]
         negative = [i for i in active if new[i] < 0.0]
         if negative:
@@ -231,16 +245,30 @@ def _exchange(
             n[leaving] = 0.0
             active = [i for i in active if i != leaving]
             basis, log_a, nu = restart(
-                case, active, np.where(n > 0.0, n, np.abs(new)), force, float(case.scale[0])
+                case, active, np.where(n > 0.0, n, np.abs(new)), force, scale
             )
+            before = None
             continue
         n = new
         entering = leading(case, active, force)
         if entering is None or force[entering] <= case.force_tolerance[0]:
             return _finish(active, solved)
+        before = solved
         active, n = _enter(entering, active, n, solved.basis)
-        basis, log_a, nu = restart(case, active, n, force, float(case.scale[0]))
+        basis, log_a, nu = restart(case, active, n, force, scale)
     raise Unsettled("no end of the exchange of phases")
+
+
+def _used_first(before: Solved, active: Sequence[int]) -> int | None:
+    """The phase that the newcomer of `active` uses up first, in the set solved before it."""
+    row = before.basis.reactions[active[-1]]
+    taken = set(active)
+    uses = [
+        (before.n[0, m] / row[k], m)
+        for k, m in enumerate(before.basis.members)
+        if row[k] > 0.0 and m in taken
+    ]
+    return min(uses)[1] if uses else None
 
 
 def leading(case: Cases, active: Sequence[int], force: Array) -> int | None:

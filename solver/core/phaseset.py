@@ -20,7 +20,7 @@ Indices = NDArray[np.intp]
 Flags = NDArray[np.bool_]
 
 _EPS = float(np.finfo(float).eps)
-_DOMINANCE = 1e3  # a component this much scarcer than a species it builds is a poor component
+_DOMINANCE = 1e6  # a component this much scarcer than a species it builds is a poor component
 _ABSENT = -50.0  # ln activity at most, of a species that the balances force to zero
 
 

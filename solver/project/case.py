@@ -20,9 +20,17 @@ from solver.fed import as_fed
 from solver.fixed import PAIRS, T_HIGHEST, T_LOWEST, Fixed
 from solver.project import units
 from solver.project.candidates import choose
+from solver.project.case_names import CaseNames
 from solver.project.held import check_fixed, read_fixed
 from solver.project.model import Case
+from solver.project.restrictions import (
+    read_reactions,
+    read_restrictions,
+    restriction_at_fault,
+)
 from solver.project.streams import Basis, ReadStream, read_stream
+from solver.reactions import Reaction, ReactionsView, reactions_at
+from solver.restrictions import Restriction
 from solver.settle import settle
 
 if TYPE_CHECKING:
@@ -70,7 +78,9 @@ class Prepared:
     """A case in the solver's words.
 
     `feed` maps species to mol (mol/s on a flow basis), summed over the streams. `heat` is what
-    is added, J or W. `messages` are remarks that do not stop the answer.
+    is added, J or W. `restrictions` are those of the solver, `restriction_fields` their paths in
+    the case; `reactions` is the engineer's own set, empty where one is to be chosen. `messages`
+    are remarks that do not stop the answer.
     """
 
     feed: Mapping[Species, float]
@@ -81,6 +91,9 @@ class Prepared:
     gas: str
     heat: float = 0.0
     messages: tuple[str, ...] = ()
+    restrictions: tuple[Restriction, ...] = ()
+    restriction_fields: tuple[str, ...] = ()
+    reactions: tuple[Reaction, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -159,10 +172,13 @@ def prepare(case: Case, library: Library | None = None) -> Prepared:
     faults += more
     if case.gas != "ideal":
         faults.append(InputError(f"The gas model {case.gas!r} is not known.", "gas", case.gas))
-    if faults:
+    basis = streams[0].basis if not faults else None
+    names = CaseNames(candidates, library)
+    restrictions, fields = read_restrictions(case, names, feed, basis, faults)
+    reactions = read_reactions(case, names, faults)
+    if faults or basis is None:
         check_fixed(case, faults)
         raise CaseFaults(faults)
-    basis = streams[0].basis
     live = [stream for stream in streams if stream.feed]
     fed = _totals(live, case.gas)
     fixed, heat, notes = read_fixed(case, fed, basis, faults)
@@ -178,7 +194,10 @@ def prepare(case: Case, library: Library | None = None) -> Prepared:
         basis,
         case.gas,
         heat,
-        (*messages, *notes),
+        (*messages, *notes, *names.remarks),
+        tuple(restrictions),
+        tuple(fields),
+        reactions,
     )
 
 
@@ -199,20 +218,44 @@ def settle_prepared(prepared: Prepared) -> CaseAnswer:
     """Settle what `prepare` made; the slow half, free of texts."""
     fixed = prepared.fixed
     try:
-        end = settle(prepared.candidates, dict(prepared.feed.items()), fixed, gas=prepared.gas)
+        end = settle(
+            prepared.candidates,
+            dict(prepared.feed.items()),
+            fixed,
+            gas=prepared.gas,
+            restrictions=prepared.restrictions,
+        )
     except NoEndState as error:
         if prepared.heat == 0:
             raise
         raise _too_much_heat(prepared, error) from None
     except InputError as error:
         # The solver speaks of its own arguments; here they are parts of a case.
-        place = {"species": "candidates", "feed": "streams"}.get(error.field.partition("[")[0])
+        place = restriction_at_fault(error, prepared.restrictions, prepared.restriction_fields)
+        if place is None:
+            place = {"species": "candidates", "feed": "streams"}.get(error.field.partition("[")[0])
         raise InputError(str(error), place or error.field, error.value, error.allowed) from None
     fed = prepared.fed
     at_volume = PAIRS[fixed.pair].holds_volume
     heat = end.U - fed.U if at_volume else end.H - fed.H
     messages = prepared.messages + tuple(_end_out_of_range(end))
     return CaseAnswer(end, fed, heat, prepared.basis, prepared, messages)
+
+
+def reactions_of(answer: CaseAnswer) -> ReactionsView:
+    """The reactions behind an answer: the engineer's own set, or a readable one.
+
+    Extents are in mol, on a flow basis in mol/s. Not part of settling, because it takes longer
+    than a keystroke should.
+
+    Raises
+    ------
+    InputError
+        The end state was computed with a gas model that reactions are not made for.
+    """
+    prepared = answer.prepared
+    feed: dict[Species | str, float] = dict(prepared.feed.items())
+    return reactions_at(answer.end, feed, prepared.reactions or None)
 
 
 def _too_much_heat(prepared: Prepared, error: NoEndState) -> NoEndState:

@@ -226,6 +226,7 @@ _FAULTS: Final = {
     "model_type": "must be a group of fields",
     "model_attributes_type": "must be a group of fields",
     "too_short": "must not be empty",
+    "union_tag_not_found": "does not say its kind (inert, conversion, approach or no exchange)",
 }
 
 
@@ -235,7 +236,7 @@ def _invalid(error: ValidationError, name: str) -> ProjectFileError:
     # A list whose only member is wrong is reported as too short besides.
     faults = [f for f in every if f["type"] != "too_short"] or every
     first = faults[0]
-    loc = first["loc"]
+    loc = _place_in(first["loc"])
     fault = _FAULTS.get(first["type"], "is not allowed")
     if loc and loc[-1] in ("float", "str"):  # the two faces of a number field
         loc = loc[:-1]
@@ -245,11 +246,22 @@ def _invalid(error: ValidationError, name: str) -> ProjectFileError:
     allowed = str(first.get("ctx", {}).get("expected", ""))
     if first["type"] == "literal_error":
         fault = f"must be {allowed}, not {first['input']!r}"
+    if first["type"] == "union_tag_invalid":
+        allowed = str(first["ctx"]["expected_tags"])
+        loc, fault = (*loc, "kind"), f"must be one of {allowed}, not {first['ctx']['tag']!r}"
     places = {f["loc"][:-1] if f["loc"][-1] in ("float", "str") else f["loc"] for f in faults}
     others = len(places) - 1
     more = f" (and {others} more fault{'s' if others > 1 else ''})" if others else ""
     path = path_text(loc) or "the project"
     return ProjectFileError(f"{name}, {path}: {fault}{more}.", path, first["input"], allowed)
+
+
+def _place_in(loc: tuple[int | str, ...]) -> tuple[int | str, ...]:
+    """The place without the kind of a restriction, which the checker puts into the path."""
+    if "restrictions" not in loc:
+        return loc
+    at = loc.index("restrictions") + 2
+    return (*loc[:at], *loc[at + 1 :])
 
 
 def _system(error: OSError) -> str:

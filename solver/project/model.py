@@ -89,6 +89,53 @@ class Candidates(_Frozen):
     excluded: tuple[str, ...] = ()
 
 
+class InertPart(_Frozen):
+    """A fed species, or a part of it, that takes no part in any reaction.
+
+    `part` is a share of what is fed ("%") or an amount (on a flow basis a flow). None or empty
+    text: the whole, which then is neither used up nor formed.
+    """
+
+    kind: Literal["inert"] = "inert"
+    species: str = ""
+    part: Quantity | None = None
+
+
+class HeldConversion(_Frozen):
+    """A fed species of which a given share, in %, is used up: no more and no less."""
+
+    kind: Literal["conversion"] = "conversion"
+    species: str = ""
+    conversion: Quantity = Quantity(value="", unit="%")
+
+
+class HeldApproach(_Frozen):
+    """A reaction whose equilibrium constant is taken at T + dT.
+
+    dT is negative for an endothermic reaction that stays behind, such as methane reforming, and
+    positive for an exothermic one. `key` names the species of the reaction that carries the
+    shift; empty text leaves the choice to the solver.
+    """
+
+    kind: Literal["approach"] = "approach"
+    reaction: str = ""
+    dT: Quantity = Quantity(value="", unit="K")
+    key: str = ""
+
+
+class SeparateGroup(_Frozen):
+    """Species that exchange no element with the others."""
+
+    kind: Literal["no exchange"] = "no exchange"
+    species: tuple[str, ...] = ()
+
+
+Restriction = Annotated[
+    InertPart | HeldConversion | HeldApproach | SeparateGroup, Field(discriminator="kind")
+]
+"""What keeps a mixture short of full equilibrium; an empty one counts as not written."""
+
+
 class TemperaturePlot(_Frozen):
     """The range of the composition plot; no part of the answer."""
 
@@ -104,6 +151,9 @@ class Case(_Frozen):
     streams: tuple[Stream, ...] = ()
     fixed: FixedPair = FixedPair()
     candidates: Candidates = Candidates()
+    restrictions: tuple[Restriction, ...] = ()
+    reactions: tuple[str, ...] = ()
+    """The engineer's own reaction set, for the view of reactions; empty: one is chosen."""
     gas: Literal["ideal"] = "ideal"
     plot: TemperaturePlot = TemperaturePlot()
     notes: str = ""

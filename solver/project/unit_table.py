@@ -108,6 +108,16 @@ UNIONS: Final[dict[str, tuple[str, ...]]] = {
         "normal_volume_flow",
         "volume_flow",
     ),
+    # How much of a fed species is meant: a share of it, or an amount.
+    "part": (
+        "share",
+        "amount",
+        "mass",
+        "normal_volume",
+        "amount_flow",
+        "mass_flow",
+        "normal_volume_flow",
+    ),
     # Extensive values of a batch or of a steady flow: the streams say which is meant.
     "heat": ("energy", "power"),
     "vessel": ("volume", "volume_flow"),

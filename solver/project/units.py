@@ -243,7 +243,8 @@ def find(unit: str, kind: str, field: str = "") -> Unit:
         why = found
     else:
         why = f"is a unit of {KINDS[other.kind].words}"
-    near = _near(squeezed, kind)
+    # Of another kind on purpose: what is spelled alike would only mislead.
+    near = _near(squeezed, kind) if other is None or squeezed == "%" else _usual(kind)
     raise UnitError(
         f"The unit {unit.strip()!r} {why}; {_words(kind)} is written in "
         + ", ".join(near[:-1])
@@ -262,14 +263,20 @@ def _near(squeezed: str, kind: str) -> list[str]:
     close = [s for s in folded if squeezed == "%" and s.endswith("%") and len(s) > 1]
     close += get_close_matches(squeezed.lower(), folded, n=4, cutoff=0.5)
     names = list(dict.fromkeys(folded[c] for c in close))
+    return names[:5] or _usual(kind)
+
+
+def _usual(kind: str) -> list[str]:
+    """Up to five units of a kind, one of each kind of a union first."""
     usual = [KINDS[k].default for k in UNIONS.get(kind, (kind,))]
-    return (names or list(dict.fromkeys([*usual, *units_of(kind)])))[:5]
+    return list(dict.fromkeys([*usual, *units_of(kind)]))[:5]
 
 
 def _words(kind: str) -> str:
     return {
         "feed": "an amount, a flow or a share",
         "total": "an amount or a flow",
+        "part": "a share or an amount",
         "heat": "heat or heat flow",
         "vessel": "a volume",
         "disorder": "an entropy",

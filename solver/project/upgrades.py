@@ -1,9 +1,9 @@
 """Steps that bring a project file of an older version up to the present one.
 
 One pure function per version number: step N takes the document of version N, as read from
-JSON, and returns that of version N + 1. Any change of what a file may hold raises `VERSION`,
-even a new optional field, because an older program refuses what it does not know; it then
-needs a step here and a file of the old version in ``tests/files/``.
+JSON, and returns that of version N + 1. From the first release on, any change of what a file may
+hold raises `VERSION`, even a new optional field, because an older program refuses what it does
+not know; it then needs a step here and a file of the old version in ``tests/files/``.
 """
 
 from __future__ import annotations

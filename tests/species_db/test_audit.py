@@ -135,3 +135,9 @@ def test_audit_finds_planted_faults():
     heavy = Species("X", "x", elements, 0, "gas", broken.segments[:1], 0.033, reference="planted")
     assert any("molar mass" in f.what for f in audit.check(heavy))
     assert R == pytest.approx(8.314462618, abs=1e-12)
+
+
+def test_fits_follow_their_tables(records):
+    """Fits poorer than 0.02 in g/RT are flagged: four tables, all with misprints or cp peaks."""
+    poor = {s.key for s in records if any(f.startswith("fit poor") for f in s.flags)}
+    assert poor == {"K2B4O7(l)", "Hf(l)", "Cr2O3(s)", "PbF2(s)"}

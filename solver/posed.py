@@ -63,7 +63,7 @@ def pose(
     columns = {sp.key: k for k, sp in enumerate(species)}
     if not restrictions:
         mixture = mixture_of(species, fed)
-        _check_elements(mixture, fed)
+        _check_elements(mixture, species, fed)
         vectors = np.array([formula_vector(sp, mixture.rows) for sp in fed])
         place = np.array([columns[sp.key] for sp in mixture.species], dtype=np.intp)
         return Posed(mixture, Feed(amounts, vectors), place)
@@ -146,7 +146,7 @@ def _restricted(
         if keys.count(key) == 2
     )
     mixture = make_mixture(held, rows, A, atoms, _shifts(approaches, held), twins)
-    _check_elements(mixture, fed)
+    _check_elements(mixture, species, fed)
     place = np.array([columns[sp.key] for sp in held], dtype=np.intp)
     return Posed(mixture, Feed(np.column_stack(fed_amounts), vectors), place)
 
@@ -211,17 +211,23 @@ def _shifts(approaches: list[HeldApproach], held: list[Species]) -> tuple[Shift,
     return tuple(shifts)
 
 
-def _check_elements(mixture: Mixture, fed: Sequence[Species]) -> None:
+def _check_elements(mixture: Mixture, species: Sequence[Species], fed: Sequence[Species]) -> None:
     """Every element fed must occur in a candidate that holds nothing else than is fed."""
-    for name, k in mixture.rows.items():
-        if name == CHARGE or np.any(mixture.A[:, k] > 0.0):
-            continue
-        element = name.split(" ")[0]
-        source = next((sp.key for sp in fed if element in sp.elements), "the feed")
-        raise InputError(
-            f"No candidate holds {name}, which the feed brings in as {source}; "
-            f"add a species with {element} to the candidates, made of elements that are fed.",
-            "species",
-            element,
-            f"a candidate with {name}",
-        )
+    missing = [
+        name
+        for name, k in mixture.rows.items()
+        if name != CHARGE and not np.any(mixture.A[:, k] > 0.0)
+    ]
+    if not missing:
+        return
+    known = {element for sp in species for element in sp.elements}
+    name = min(missing, key=lambda name: name.split(" ")[0] in known)  # the plainest first
+    element = name.split(" ")[0]
+    source = next((sp.key for sp in fed if element in sp.elements), "the feed")
+    raise InputError(
+        f"No candidate holds {name}, which the feed brings in as {source}; "
+        f"add a species with {element} to the candidates, made of elements that are fed.",
+        "species",
+        element,
+        f"a candidate with {name}",
+    )

@@ -162,9 +162,11 @@ def explained(
     if isinstance(error, NotHeld):
         names = list(mixture.rows)
         open_rows = ", ".join(names[k] for k in error.rows)
+        loosen = " or loosen the restrictions" if any(" " in name for name in names) else ""
         return InputError(
             "No mixture of the candidates has the elements of the feed in their proportion "
-            f"(the balance of {open_rows} stays open); add a candidate that can take up the rest.",
+            f"(the balance of {open_rows} stays open); "
+            f"add a candidate that can take up the rest{loosen}.",
             "species",
             open_rows,
             "candidates that can hold the feed",

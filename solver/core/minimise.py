@@ -27,6 +27,8 @@ Array = NDArray[np.float64]
 
 _MAX_ROUNDS = 80
 _VACUUM = 1e-20  # Pa; no gas feels it
+# Pa; liquids of fixed volume and an ideal gas say nothing of a vessel pressed together so far
+_CRUSHING, _CALM = 1e9, 1e7
 _FIRST = np.zeros(1, dtype=np.intp)
 
 
@@ -99,6 +101,14 @@ def minimise(mixture: Mixture, feed: Feed, held: Held, start: Present | None = N
     """
     if held.V is not None and not mixture.gas.size:
         return _without_gas(mixture, feed, held)
+    found = _found(mixture, feed, held, start)
+    if held.V is not None and found.p > _CRUSHING and found.n @ mixture.volume > 0.5 * held.V:
+        calm = minimise(mixture, feed, Held(held.T, p=_CALM))
+        raise TooSmall(float(calm.n @ mixture.volume))
+    return found
+
+
+def _found(mixture: Mixture, feed: Feed, held: Held, start: Present | None) -> Minimum:
     case = Cases(
         mixture,
         feed,

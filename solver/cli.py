@@ -21,6 +21,7 @@ from solver.errors import InputError, SettleError
 if TYPE_CHECKING:
     from solver.project.case import CaseAnswer
     from solver.project.model import Case, Project
+    from solver.reactions import ReactionsView
 
 OK, BAD_INPUT, NO_END_STATE = 0, 2, 3
 
@@ -41,21 +42,27 @@ def settle(
     as_json: Annotated[
         bool, typer.Option("--json", help="Write JSON in SI units with every digit.")
     ] = False,
+    with_reactions: Annotated[
+        bool,
+        typer.Option("--reactions", help="Add an independent reaction set, or that of the case."),
+    ] = False,
 ) -> None:
     """Settle every case of a project and print where each ends up.
 
-    The table gives T, p, V and heat, what is present, what did not form and the proof.
+    The table gives T, p, V and heat, what is present, what did not form, what each restriction
+    costs, and the proof. With --reactions: extents, ln K, Q/K, heats and temperature approaches.
     Exit code 0: all settled. 2: the file or a field is wrong. 3: no such end state exists, or none
     could be proven.
 
     \b
     Examples:
       thalweg settle samples/reformer-outlet.thalweg
+      thalweg settle samples/reformer-outlet.thalweg --reactions
       thalweg settle samples/lime-kiln.thalweg --json
       thalweg settle plant.thalweg --json > answer.json
     """
     from solver.project import file as project_file
-    from solver.project.case import settle_case
+    from solver.project.case import reactions_of, settle_case
 
     try:
         project = project_file.read(file)
@@ -64,22 +71,27 @@ def settle(
         raise typer.Exit(BAD_INPUT) from None
     code = OK
     results: list[tuple[Case, CaseAnswer | SettleError]] = []
+    views: list[ReactionsView | None] = []
     for case in project.cases:
+        view = None
         try:
-            results.append((case, settle_case(case)))
+            found = settle_case(case)
+            view = reactions_of(found) if with_reactions else None
+            results.append((case, found))
         except SettleError as error:
             code = max(code, _tell(file, project, case, error), key=_rank)
             results.append((case, error))
+        views.append(view)
     with _reader_may_leave():
         if as_json:
             from solver.project.answer_json import answers
 
-            document = answers(project, results)
+            document = answers(project, results, views)
             sys.stdout.write(json.dumps(document, indent=2, ensure_ascii=False) + "\n")
         else:
             from solver.project.answer_table import print_answers
 
-            print_answers(project, results)
+            print_answers(project, results, views)
     raise typer.Exit(code)
 
 

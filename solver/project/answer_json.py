@@ -12,9 +12,19 @@ Top level: ``format`` ("thalweg-answer"), ``version``, ``title``, ``cases``. Eac
 - ``amounts``: mol of every candidate by key; ``fractions``: mole fraction in its phase;
 - ``phases``: mol of the gas and of each condensed species present;
 - ``proof``: ``element_residual``, ``energy_residual``, ``gap`` (all relative), ``absent``
-  (activity of each condensed candidate that did not form), ``model``;
+  (activity of each condensed candidate that did not form), ``model``, and ``restrictions``: for
+  each its ``field`` in the project, ``text``, and ``cost``: J by which the free energy would lie
+  lower without it (null where that could not be settled), of ``cost_is`` "Gibbs energy" at the T
+  and p reached, or "Helmholtz energy" at the T and V;
 - ``outside_range``: species present whose data do not reach the end temperature;
-- ``messages``, ``cautions``: sentences.
+- ``messages``, ``cautions``: sentences;
+- ``reactions``, only where asked for: ``own`` (whether the set is that of the project), ``list``,
+  ``missing`` (how many more independent reactions the species present allow), ``unexplained`` (mol
+  of each species that the set does not account for) and ``left_out`` (mol of each species present
+  in traces only). Each of the list has ``equation``, ``numbers`` (stoichiometric, products
+  positive), ``extent`` mol, ``ln_k`` and ``ln_q`` (1 bar), ``q_over_k``, ``dh`` ``dg`` J/mol and
+  ``ds`` ``dcp`` J/(mol K) at T, ``dh298`` ``dg298`` ``ds298``, ``t_eq`` K (where K equals Q),
+  ``approach`` K (T less t_eq) and ``notes``; null where there is no such figure.
 
 ``error`` has ``kind`` ("input", "no end state", "not proven") and ``faults``, each with
 ``field``, ``text``, ``value``, ``allowed``.
@@ -22,21 +32,37 @@ Top level: ``format`` ("thalweg-answer"), ``version``, ``title``, ``cases``. Eac
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from typing import Any, Final
 
 from solver.errors import InputError, NoEndState, SettleError
+from solver.fixed import PAIRS
 from solver.project.case import CaseAnswer
 from solver.project.cautions import cautions
 from solver.project.model import Case, Project
+from solver.reactions import Figures, ReactionsView
 
 VERSION: Final = 1
 
 
 def answers(
-    project: Project, results: Sequence[tuple[Case, CaseAnswer | SettleError]]
+    project: Project,
+    results: Sequence[tuple[Case, CaseAnswer | SettleError]],
+    reactions: Sequence[ReactionsView | None] | None = None,
 ) -> dict[str, Any]:
-    """The whole document, made of plain Python values."""
+    """The whole document, made of plain Python values.
+
+    Parameters
+    ----------
+    project
+        Where the cases are from.
+    results
+        Each case with its answer, or with what stood in the way.
+    reactions
+        One for each case, or None where there is none; left out where they were not asked for.
+    """
+    views = [None] * len(results) if reactions is None else reactions
     return {
         "format": "thalweg-answer",
         "version": VERSION,
@@ -46,8 +72,9 @@ def answers(
                 "name": case.name,
                 "pair": case.fixed.pair,
                 **(_error(found) if isinstance(found, SettleError) else _answer(found)),
+                **({} if view is None else {"reactions": _reactions(found, view)}),
             }
-            for case, found in results
+            for (case, found), view in zip(results, views, strict=True)
         ],
     }
 
@@ -114,8 +141,65 @@ def _answer(answer: CaseAnswer) -> dict[str, Any]:
             "gap": proof.gap,
             "absent": dict(proof.absent),
             "model": proof.model,
+            "restrictions": [
+                {
+                    "field": field,
+                    "text": cost.restriction,
+                    "cost": _finite(cost.energy),
+                    "cost_is": cost_is(answer),
+                }
+                for field, cost in zip(
+                    answer.prepared.restriction_fields, proof.restrictions, strict=True
+                )
+            ],
         },
         "outside_range": list(end.outside_range),
         "messages": list(answer.messages),
         "cautions": list(cautions(end.fixed.pair)),
     }
+
+
+def cost_is(answer: CaseAnswer) -> str:
+    """Which free energy a restriction costs: that of the state held."""
+    held = PAIRS[answer.end.fixed.pair]
+    return "Helmholtz energy" if held.holds_volume else "Gibbs energy"
+
+
+def _reactions(answer: CaseAnswer | SettleError, view: ReactionsView) -> dict[str, Any]:
+    return {
+        "own": isinstance(answer, CaseAnswer) and bool(answer.prepared.reactions),
+        "list": [_figures(figures) for figures in view.figures],
+        "missing": view.extents.missing,
+        "unexplained": {sp.key: n for sp, n in view.extents.unexplained.items()},
+        "left_out": dict(view.left_out),
+    }
+
+
+def _figures(figures: Figures) -> dict[str, Any]:
+    numbers = {
+        "extent": figures.extent,
+        "ln_k": figures.ln_k,
+        "ln_q": figures.ln_q,
+        "q_over_k": figures.q_over_k,
+        "dh": figures.dh,
+        "ds": figures.ds,
+        "dg": figures.dg,
+        "dcp": figures.dcp,
+        "dh298": figures.dh298,
+        "ds298": figures.ds298,
+        "dg298": figures.dg298,
+        "t_eq": figures.approach.T_eq,
+        "approach": figures.approach.approach,
+    }
+    reason = (figures.approach.reason,) if figures.approach.reason else ()
+    return {
+        "equation": figures.reaction.text,
+        "numbers": {sp.key: float(nu) for sp, nu in figures.reaction.terms},
+        **{key: _finite(value) for key, value in numbers.items()},
+        "notes": list(dict.fromkeys([*figures.notes, *reason])),
+    }
+
+
+def _finite(value: float | None) -> float | None:
+    """JSON knows no infinity."""
+    return value if value is not None and math.isfinite(value) else None

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import sys
 from collections.abc import Sequence
 from typing import Final
@@ -12,10 +13,13 @@ from rich.table import Table
 
 from solver.errors import SettleError
 from solver.project import units
+from solver.project.answer_json import cost_is
 from solver.project.case import CaseAnswer
 from solver.project.cautions import cautions
 from solver.project.model import Case, Project
-from solver.project.wording import one_line
+from solver.project.reaction_table import print_reactions
+from solver.project.wording import one_line, typeset
+from solver.reactions import ReactionsView
 
 SHOWN: Final = 1e-6
 """Share of its phase from which a gas is printed; the rest is counted in one line."""
@@ -38,23 +42,29 @@ def console() -> Console:
 
 
 def print_answers(
-    project: Project, results: Sequence[tuple[Case, CaseAnswer | SettleError]]
+    project: Project,
+    results: Sequence[tuple[Case, CaseAnswer | SettleError]],
+    reactions: Sequence[ReactionsView | None] | None = None,
 ) -> None:
-    """Print every case that settled; the faults of the others are on standard error."""
+    """Print every case that settled, with its reactions where they are given.
+
+    The faults of the others are on standard error.
+    """
+    views = [None] * len(results) if reactions is None else reactions
     out = console()
     if any(isinstance(found, CaseAnswer) for _, found in results) and project.title:
         out.print(one_line(project.title), style="bold")
     pairs = []
-    for case, found in results:
+    for (case, found), view in zip(results, views, strict=True):
         if isinstance(found, CaseAnswer):
-            _print(out, case, found)
+            _print(out, case, found, view)
             pairs.append(case.fixed.pair)
     sentences = dict.fromkeys(sentence for pair in pairs for sentence in cautions(pair))
     for sentence in sorted(sentences, key=lambda s: s == cautions("T,p")[-1]):
         out.print(sentence, style="dim")
 
 
-def _print(out: Console, case: Case, answer: CaseAnswer) -> None:
+def _print(out: Console, case: Case, answer: CaseAnswer, view: ReactionsView | None) -> None:
     end = answer.end
     flow = answer.basis == "flow"
     amount_unit, amount_factor = ("kmol/h", 3.6) if flow else ("mol", 1.0)
@@ -77,14 +87,17 @@ def _print(out: Console, case: Case, answer: CaseAnswer) -> None:
         + ", ".join(f"{key} {number(n * amount_factor)} {amount_unit}" for key, n in phases.items())
     )
     _print_absent(out, answer)
+    _print_restrictions(out, answer)
     proof = end.proof
     out.print(
         f"  proof   elements {_small(proof.element_residual)}, energy "
         f"{_small(proof.energy_residual)}, gap {_small(proof.gap)} (relative)"
     )
-    out.print(f"  model   {proof.model}")
+    out.print(f"  model   {typeset(proof.model)}")
     for message in answer.messages:
         out.print(f"  note    {one_line(message)}")
+    if view is not None:
+        print_reactions(out, answer, view)
     out.print()
 
 
@@ -142,3 +155,18 @@ def _print_absent(out: Console, answer: CaseAnswer) -> None:
     if len(near) < len(absent):
         rest = len(absent) - len(near)
         out.print(f"          {rest} {'more ' if near else ''}condensed below {NEAR:g}")
+
+
+def _print_restrictions(out: Console, answer: CaseAnswer) -> None:
+    """What is held back and how much lower the free energy would lie without it."""
+    unit = "kW" if answer.basis == "flow" else "kJ"
+    # Differences of two end states: what is below their own rounding is none.
+    rounding = 1e-10 * (abs(answer.end.G) + abs(answer.end.U))
+    for cost in answer.end.proof.restrictions:
+        if math.isnan(cost.energy):
+            price = "its cost could not be settled"
+        elif abs(cost.energy) <= rounding:
+            price = "costs nothing: it does not bind"
+        else:
+            price = f"costs {units.quantity_text(cost.energy / 1e3, unit)} of {cost_is(answer)}"
+        out.print(f"  held    {typeset(one_line(cost.restriction))}; {price}")

@@ -15,19 +15,20 @@ from typing import TYPE_CHECKING, Literal
 
 import species_db
 from solver.endstate import EndState
-from solver.errors import InputError, NoEndState
+from solver.errors import InputError, SettleError
 from solver.fed import as_fed
-from solver.fixed import PAIRS, T_HIGHEST, T_LOWEST, Fixed
+from solver.fixed import PAIRS, Fixed
 from solver.project import units
 from solver.project.candidates import choose
 from solver.project.case_names import CaseNames
 from solver.project.held import check_fixed, read_fixed
 from solver.project.model import Case
 from solver.project.restrictions import (
+    check_approaches,
     read_reactions,
     read_restrictions,
-    restriction_at_fault,
 )
+from solver.project.reworded import in_terms_of_case
 from solver.project.streams import Basis, ReadStream, read_stream
 from solver.reactions import Reaction, ReactionsView, reactions_at
 from solver.restrictions import Restriction
@@ -182,6 +183,8 @@ def prepare(case: Case, library: Library | None = None) -> Prepared:
     live = [stream for stream in streams if stream.feed]
     fed = _totals(live, case.gas)
     fixed, heat, notes = read_fixed(case, fed, basis, faults)
+    if fixed is not None:
+        check_approaches(restrictions, fields, fixed, faults)
     if faults or fixed is None:
         raise CaseFaults(faults)
     messages = [m for stream in streams for m in stream.messages]
@@ -225,16 +228,8 @@ def settle_prepared(prepared: Prepared) -> CaseAnswer:
             gas=prepared.gas,
             restrictions=prepared.restrictions,
         )
-    except NoEndState as error:
-        if prepared.heat == 0:
-            raise
-        raise _too_much_heat(prepared, error) from None
-    except InputError as error:
-        # The solver speaks of its own arguments; here they are parts of a case.
-        place = restriction_at_fault(error, prepared.restrictions, prepared.restriction_fields)
-        if place is None:
-            place = {"species": "candidates", "feed": "streams"}.get(error.field.partition("[")[0])
-        raise InputError(str(error), place or error.field, error.value, error.allowed) from None
+    except SettleError as error:
+        raise in_terms_of_case(prepared, error) from None
     fed = prepared.fed
     at_volume = PAIRS[fixed.pair].holds_volume
     heat = end.U - fed.U if at_volume else end.H - fed.H
@@ -256,25 +251,6 @@ def reactions_of(answer: CaseAnswer) -> ReactionsView:
     prepared = answer.prepared
     feed: dict[Species | str, float] = dict(prepared.feed.items())
     return reactions_at(answer.end, feed, prepared.reactions or None)
-
-
-def _too_much_heat(prepared: Prepared, error: NoEndState) -> NoEndState:
-    """No temperature has the energy left by the heat: say so in terms of the heat."""
-    unit = "kW" if prepared.basis == "flow" else "kJ"
-    size = units.quantity_text(abs(prepared.heat) / 1e3, unit)
-    words = {"H": "enthalpy", "U": "internal energy"}
-    energy = words[PAIRS[prepared.fixed.pair].variables[0]]
-    if prepared.heat < 0:
-        text = (
-            f"Taking away {size} leaves less {energy} than any end state above {T_LOWEST:g} K "
-            "has; take away less heat."
-        )
-    else:
-        text = (
-            f"Adding {size} gives more {energy} than any end state below {T_HIGHEST:g} K has; "
-            "add less heat."
-        )
-    return NoEndState(text, "fixed.heat", prepared.heat, error.allowed)
 
 
 def _streams(case: Case, library: Library, faults: list[InputError]) -> list[ReadStream]:

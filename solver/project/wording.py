@@ -71,6 +71,21 @@ def one_line(text: str) -> str:
     return " ".join("".join(c if c.isprintable() else " " for c in text).split())
 
 
+_BARE_POWER = re.compile(r"(?<![\w.])(-?)(\d+(?:\.\d+)?)e([+-]?\d+)(?![\w.]*\w)")
+
+
+def typeset(text: str) -> str:
+    """A sentence of the solver as people read it: powers of ten and minus signs typeset.
+
+    ``(-1.5e-09)`` becomes (−1.5 × 10⁻⁹), ``T - 8 K`` T − 8 K, ``m3`` m³.
+    """
+    text = _BARE_POWER.sub(
+        lambda m: f"{MINUS if m[1] else ''}{m[2]} × 10{str(int(m[3])).translate(_UP)}", text
+    )
+    text = re.sub(r"(?<=\s)-(?=\s)|(?<=[\s(])-(?=\d)", MINUS, text)
+    return re.sub(r"(?<=[\d⁰¹²³⁴⁵⁶⁷⁸⁹] )m3\b", "m³", text)
+
+
 _FORMULA = re.compile(r"(?<=[A-Za-z)\]])(\d+(?:\.\d+)?)")
 
 

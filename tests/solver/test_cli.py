@@ -79,7 +79,7 @@ def test_json_has_the_keys_it_promises(capsys):
     assert case["H"] - case["fed"]["H"] == pytest.approx(case["heat"])
     assert sum(case["phases"].values()) == pytest.approx(sum(case["amounts"].values()))
     assert set(case["proof"]) == {
-        "element_residual", "energy_residual", "gap", "absent", "model",
+        "element_residual", "energy_residual", "gap", "absent", "model", "restrictions",
     }  # fmt: skip
     assert case["proof"]["absent"]["C(gr)"] < 1
 

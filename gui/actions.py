@@ -28,11 +28,12 @@ ACTIONS = (
     ActionRow("quit", "Quit", ("Ctrl+Q",), "Project"),
     ActionRow("undo", "Undo", ("Ctrl+Z",), "Edit"),
     ActionRow("redo", "Redo", ("Ctrl+Shift+Z", "Ctrl+Y"), "Edit"),
-    ActionRow("copy_composition", "Copy the composition", ("Ctrl+Shift+C",), "Edit"),
-    ActionRow("add_stream", "Add a stream", ("Ctrl+Shift+A",), "Streams"),
-    ActionRow("remove_stream", "Remove the stream", ("Ctrl+Shift+R",), "Streams"),
-    ActionRow("stream_up", "Move the stream up", ("Alt+Shift+Up",), "Streams"),
-    ActionRow("stream_down", "Move the stream down", ("Alt+Shift+Down",), "Streams"),
+    ActionRow("copy_view", "Copy the view of the end state", ("Ctrl+Shift+C",), "Edit"),
+    ActionRow("add_stream", "Add a stream", ("Ctrl+Shift+A",), "Input"),
+    ActionRow("remove_stream", "Remove the stream", ("Ctrl+Shift+R",), "Input"),
+    ActionRow("stream_up", "Move the stream up", ("Alt+Shift+Up",), "Input"),
+    ActionRow("stream_down", "Move the stream down", ("Alt+Shift+Down",), "Input"),
+    ActionRow("add_restriction", "Add a restriction", ("Ctrl+Shift+H",), "Input"),
     ActionRow("add_case", "Add a case", ("Ctrl+Shift+N",), "Case"),
     ActionRow("duplicate_case", "Duplicate the case", ("Ctrl+D",), "Case"),
     ActionRow("rename_case", "Rename the case …", ("Ctrl+R",), "Case"),
@@ -46,8 +47,9 @@ ACTIONS = (
     ActionRow("go_what_if", "Go to What if", ("Alt+5",), "View"),
     ActionRow("tab_composition", "Composition", ("Ctrl+1",), "View"),
     ActionRow("tab_phases", "Phases", ("Ctrl+2",), "View"),
-    ActionRow("tab_energy", "Energy", ("Ctrl+3",), "View"),
-    ActionRow("tab_proof", "Proof", ("Ctrl+4",), "View"),
+    ActionRow("tab_reactions", "Reactions", ("Ctrl+3",), "View"),
+    ActionRow("tab_energy", "Energy", ("Ctrl+4",), "View"),
+    ActionRow("tab_proof", "Proof", ("Ctrl+5",), "View"),
     ActionRow("log_plot", "Logarithmic plot", ("Ctrl+L",), "View"),
     ActionRow("log_bars", "Logarithmic bars", ("Ctrl+Shift+L",), "View"),
     ActionRow("theme", "Light, dark or as the system", ("Ctrl+Shift+T",), "View"),
@@ -56,7 +58,7 @@ ACTIONS = (
     ActionRow("keys", "Keyboard", ("F1",), "Help"),
     ActionRow("about", "About Thalweg", ("Shift+F1",), "Help"),
 )
-SECTIONS = ("Project", "Edit", "Streams", "Case", "View", "Help")
+SECTIONS = ("Project", "Edit", "Input", "Case", "View", "Help")
 
 TABLE_KEYS = (
     ("In a table: edit the cell", "Enter or type"),

@@ -81,5 +81,5 @@ _NO_PLOT = TemperaturePlot()
 
 
 def physics(case: Case) -> Case:
-    """What the end state depends on: the case without its name, notes and plot."""
-    return replaced(case, name="", notes="", plot=_NO_PLOT)
+    """What the end state depends on: the case without its name, notes, plot and own reactions."""
+    return replaced(case, name="", notes="", plot=_NO_PLOT, reactions=())

@@ -60,7 +60,8 @@ def composition_line(
 ) -> Line:
     """Settle `answer`'s feed over temperatures from `low` to `high` (K).
 
-    Pressure is that of the end state; where the case holds the volume, the volume is held.
+    Pressure is that of the end state; where the case holds the volume, the volume is held. What
+    the case holds back is held back all along the line.
     The points go to the solver in parts, so that a long line tells of its progress and can stop.
     """
     if settle_many is None:
@@ -80,7 +81,14 @@ def composition_line(
         if should_stop():
             raise Stopped
         part = slice(start, min(start + PART, points))
-        ends = settle_many(species, feed, pair, T[part], np.full(T[part].size, held))
+        ends = settle_many(
+            species,
+            feed,
+            pair,
+            T[part],
+            np.full(T[part].size, held),
+            restrictions=answer.prepared.restrictions,
+        )
         shares[part] = ends.amounts / ends.amounts.sum(axis=1, keepdims=True)
         failed += int((~ends.settled).sum())
         progress(part.stop / points)

@@ -84,6 +84,7 @@ QMenu::separator { height: 1px; background: {line}; margin: 4px 0; }
 
 QTableView { background: transparent; border: 0; outline: 0; gridline-color: {faint};
              selection-background-color: {accent_wash}; selection-color: {text}; }
+QAbstractScrollArea::corner { background: transparent; border: 0; }
 QTableView::item { padding: 0 4px; border: 0; }
 QHeaderView { background: transparent; border: 0; }
 QHeaderView::section { background: {panel}; color: {muted}; border: 0;
@@ -107,7 +108,11 @@ QScrollBar::add-page, QScrollBar::sub-page { background: transparent; }
 
 QFrame#notice { background: {faint}; border: 1px solid {muted}; border-radius: 3px; }
 QFrame#notice[level="warning"] { background: {warning_wash}; }
-QPlainTextEdit { background: {panel}; border: 1px solid {line}; }
+QPlainTextEdit { background: {panel}; border: 1px solid {line}; border-radius: 3px;
+            padding: 1px 3px; selection-background-color: {accent_wash};
+            selection-color: {text}; }
+QPlainTextEdit:focus { border-color: {accent}; }
+QPlainTextEdit[faulty="true"] { border-color: {error}; }
 """
 
 

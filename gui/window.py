@@ -20,7 +20,7 @@ from PySide6.QtWidgets import (
 from gui import actions, edits, icons
 from gui.dialogs.report import AboutDialog, BugReport, KeysDialog
 from gui.files import Files
-from gui.panels.ends_up import EndsUp
+from gui.panels.ends_up import TABS, EndsUp
 from gui.panels.going_in import GoingIn
 from gui.panels.header import Header
 from gui.panels.held_fixed import HeldFixed
@@ -29,7 +29,6 @@ from gui.panels.notice import Notice
 from gui.panels.what_if import WhatIf
 from gui.preferences import Preferences
 from gui.session import Session
-from gui.tables import clipboard
 from gui.theme import GRID, Theme
 
 LEFT_WIDTH = 412
@@ -48,13 +47,13 @@ class Window(QMainWindow):
         self.setAcceptDrops(True)
         self.setMinimumSize(1000, 620)
         self._painted = False
-        self.actions_by_name = actions.build(self, self._callbacks())
-        self.header = Header(session, theme, self.actions_by_name)
         self.going_in = GoingIn(session, theme)
         self.held_fixed = HeldFixed(session)
         self.may_form = MayForm(session, theme)
         self.ends_up = EndsUp(session, theme)
         self.what_if = WhatIf(session, theme)
+        self.actions_by_name = actions.build(self, self._callbacks())
+        self.header = Header(session, theme, self.actions_by_name)
         self._place()
         self._connect()
         self._retitle()
@@ -105,7 +104,7 @@ class Window(QMainWindow):
         stack = session.undo_stack
         stack.indexChanged.connect(lambda _: self._follow_stack())
         self.header.recent.aboutToShow.connect(lambda: self._fill_recent(self.header.recent))
-        self.ends_up.copy_button.clicked.connect(self.copy_composition)
+        self.ends_up.copy_button.clicked.connect(self.copy_view)
 
     def _callbacks(self):  # type: ignore[no-untyped-def]
         session, files = self.session, self.files
@@ -118,11 +117,12 @@ class Window(QMainWindow):
             "quit": self.close,
             "undo": session.undo_stack.undo,
             "redo": session.undo_stack.redo,
-            "copy_composition": self.copy_composition,
+            "copy_view": self.copy_view,
             "add_stream": lambda: self.going_in.add_stream(),
             "remove_stream": lambda: self._stream("remove"),
             "stream_up": lambda: self._stream("move", -1),
             "stream_down": lambda: self._stream("move", 1),
+            "add_restriction": self.held_fixed.restrictions.add_line,
             "add_case": lambda: session.edit(edits.add_case(session.document), "add case"),
             "duplicate_case": lambda: session.edit(
                 edits.duplicate_case(session.document), "duplicate case"
@@ -138,6 +138,7 @@ class Window(QMainWindow):
             "go_what_if": lambda: self.what_if.T_from.setFocus(),
             "tab_composition": lambda: self.ends_up.show_tab("Composition"),
             "tab_phases": lambda: self.ends_up.show_tab("Phases"),
+            "tab_reactions": lambda: self.ends_up.show_tab("Reactions"),
             "tab_energy": lambda: self.ends_up.show_tab("Energy"),
             "tab_proof": lambda: self.ends_up.show_tab("Proof"),
             "log_plot": lambda: self.what_if.set_logarithmic(not session.case.plot.logarithmic),
@@ -169,12 +170,11 @@ class Window(QMainWindow):
             document = edits.rename_case(self.session.document, name.strip())
             self.session.edit(document, "rename case")
 
-    def copy_composition(self) -> None:
-        """Put the whole composition on the clipboard."""
-        table = self.ends_up.composition.table
-        table.clearSelection()
-        clipboard.copy(table)
-        self.session.messages.note("The composition is on the clipboard.")
+    def copy_view(self) -> None:
+        """Put the view of the end state that is looked at on the clipboard."""
+        self.ends_up.copy()
+        title = TABS[self.ends_up.tabs.currentIndex()]
+        self.session.messages.note(f"{title}: copied, ready for a spreadsheet.")
 
     def next_theme(self) -> None:
         """As the system, light, dark, and round again."""

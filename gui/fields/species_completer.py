@@ -57,6 +57,7 @@ class SpeciesCompleter(QCompleter):
         self._offers = QStandardItemModel(0, 1)
         super().__init__(self._offers, parent)
         self._search = search
+        self.enabled = True
         self.setCompletionMode(QCompleter.CompletionMode.UnfilteredPopupCompletion)
         self.setCompletionRole(Qt.ItemDataRole.UserRole)
         self.setCaseSensitivity(Qt.CaseSensitivity.CaseSensitive)
@@ -76,7 +77,7 @@ class SpeciesCompleter(QCompleter):
 
     def _offer(self, text: str) -> None:
         self._offers.clear()
-        if not text.strip():
+        if not text.strip() or not self.enabled:
             self.popup().hide()
             return
         for sp in self._search(text.strip(), LIMIT):

@@ -17,12 +17,14 @@ from gui.parts.card import Card, Label, Sentence, choice, link, rule
 from gui.parts.composition_view import CompositionView
 from gui.parts.figures_view import EnergyView, PhasesView
 from gui.parts.proof_view import ProofView
+from gui.parts.reactions_view import ReactionsView
 from gui.session import Session
+from gui.tables import clipboard
 from gui.theme import GRID, Theme, sized
 from solver.fixed import PAIRS
 from solver.project.cautions import JUDGEMENT, LIMIT, SEALED
 
-TABS = ("Composition", "Phases", "Energy", "Proof")
+TABS = ("Composition", "Phases", "Reactions", "Energy", "Proof")
 
 
 class EndsUp(Card):
@@ -67,17 +69,20 @@ class EndsUp(Card):
             group.addButton(button)
             scale.addWidget(button)
         self.linear.setChecked(True)
-        self.copy_button = link("copy", "Copy the composition to a spreadsheet (Ctrl+Shift+C)")
+        self.copy_button = link("copy", "Copy what is shown to a spreadsheet (Ctrl+Shift+C)")
         self.copy_button.setFont(sized(self.copy_button.font(), "small"))
-        scale.addWidget(self.copy_button)
+        self.reactions = ReactionsView(session, theme)
         bar.addWidget(self._bars)
+        bar.addWidget(self.reactions.corner)
+        bar.addWidget(self.copy_button)
+        self.reactions.corner.hide()
         self.body.addLayout(bar)
         self.composition = CompositionView(theme, session.colours)
         self.phases = PhasesView(theme)
         self.energy = EnergyView(theme)
         self.proof = ProofView(theme)
         self.pages = QStackedWidget()
-        for page in (self.composition, self.phases, self.energy, self.proof):
+        for page in (self.composition, self.phases, self.reactions, self.energy, self.proof):
             self.pages.addWidget(page)
         self.body.addWidget(self.pages, 1)
         self.notes = Sentence("warning")
@@ -96,7 +101,8 @@ class EndsUp(Card):
 
     def _turn(self, page: int) -> None:
         self.pages.setCurrentIndex(page)
-        self._bars.setVisible(page == 0)
+        self._bars.setVisible(TABS[page] == "Composition")
+        self.reactions.corner.setVisible(TABS[page] == "Reactions")
         self._fill()
 
     def _slow(self, slow: bool) -> None:
@@ -125,10 +131,11 @@ class EndsUp(Card):
             self._shown = None
             self.line.clear()
             self.composition.model.clear()
-            for table in (self.phases, self.energy, self.proof.figures, self.proof.absent):
+            for table in (self.phases, self.energy):
                 table.model.show((), [], False)
                 table.note.say("")
-            self.proof.model_line.say("")
+            self.proof.clear()
+            self.reactions.clear()
             self.notes.say("")
             return
         if not stale:
@@ -150,6 +157,8 @@ class EndsUp(Card):
             self.composition.show_end(answer.value.end, units, stale)
         elif page is self.phases:
             self.phases.show_answer(answer.value, units, stale)
+        elif page is self.reactions:
+            self.reactions.show_answer(answer.value, units, stale)
         elif page is self.energy:
             self.energy.show_answer(answer.value, units, stale)
         else:
@@ -173,6 +182,18 @@ class EndsUp(Card):
         """The table that is looked at, to copy from or to focus."""
         page = self.pages.currentWidget()
         return page.figures.table if page is self.proof else page.table
+
+    def copy(self) -> None:
+        """Put the view that is looked at on the clipboard."""
+        page = self.pages.currentWidget()
+        if page is self.reactions:
+            self.reactions.copy()
+        elif page is self.proof:
+            self.proof.copy()
+        else:
+            table = page.table
+            table.clearSelection()
+            clipboard.copy(table)
 
     def toggle_bars(self) -> None:
         """Linear bars to logarithmic ones and back."""

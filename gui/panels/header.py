@@ -120,7 +120,7 @@ class Header(QWidget):
         answer = self._session.answer
         if answer.state == "settled" and answer.value is not None:
             gap = gap_text(answer.value.end.proof.gap)
-            self._set_pill("good", f"proven: gap {gap}", "Look at the proof (Ctrl+4)")
+            self._set_pill("good", f"proven: gap {gap}", "Look at the proof (Ctrl+5)")
         elif answer.state == "settling":
             self._set_pill("wait", "settling", "")
         elif answer.faults:

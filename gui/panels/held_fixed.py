@@ -1,4 +1,4 @@
-"""What is held fixed: the pair, its two values, and the heat that crosses the wall."""
+"""What is held fixed: the pair, its two values, the heat that crosses the wall, restrictions."""
 
 from __future__ import annotations
 
@@ -11,6 +11,7 @@ from PySide6.QtWidgets import QComboBox, QGridLayout, QWidget
 from gui import edits, pairs, readings
 from gui.fields.quantity_field import QuantityField
 from gui.parts.card import Card, Label, Sentence, link
+from gui.parts.restrictions_section import RestrictionsSection
 from gui.session import Session
 from gui.theme import GRID
 from solver.project.model import Quantity
@@ -89,6 +90,9 @@ class HeldFixed(Card):
         self.body.addLayout(grid)
         self.sentence = Sentence()
         self.body.addWidget(self.sentence)
+        self.restrictions = RestrictionsSection(session)
+        self.body.addWidget(self.restrictions)
+        self.head.insertWidget(self.head.count() - 1, self.restrictions.add)
         for row in (*self.rows.values(), self.heat):
             row.field.left.connect(session.end_visit)
         # Tab goes down the fields in the order they stand in.
@@ -145,7 +149,9 @@ class HeldFixed(Card):
             row.echo.setText("" if found else self._echo(symbol, settled))
         found = session.faults_at("fixed.heat")
         self.heat.show_fault(found[0].text if found else "")
-        own = [f for f in session.answer.faults if f.field in ("fixed", "fixed.pair")]
+        own = [
+            f for f in session.answer.faults if f.field in ("fixed", "fixed.pair", "restrictions")
+        ]
         self.sentence.say("\n".join(f.text for f in own))
         self.heat.echo.setText(
             "" if session.case.fixed.heat is not None or settled is None else "adiabatic"

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from PySide6.QtCore import Qt, QTimer
+from PySide6.QtCore import QEvent, Qt, QTimer, Signal
 from PySide6.QtWidgets import QFrame, QHBoxLayout, QLabel, QToolButton, QVBoxLayout, QWidget
 
 from gui.theme import CARD_PADDING, GRID, sized
@@ -42,6 +42,7 @@ class Sentence(Label):
     that comes and goes with each key would make the panel jump.
     """
 
+    shown_or_hidden = Signal()
     DELAY = 350
     """Milliseconds."""
 
@@ -53,6 +54,13 @@ class Sentence(Label):
         self._timer = QTimer(self, singleShot=True, interval=self.DELAY)
         self._timer.timeout.connect(self.show)
         self.hide()
+
+    def event(self, event: QEvent) -> bool:
+        """Tell when it comes and goes."""
+        done = super().event(event)
+        if event.type() in (QEvent.Type.ShowToParent, QEvent.Type.HideToParent):
+            self.shown_or_hidden.emit()
+        return done
 
     def say(self, text: str) -> None:
         """Show `text`; "" hides the sentence."""

@@ -11,19 +11,27 @@ from gui.tables.delegates import CellDelegate, FigureDelegate
 from gui.tables.figures_model import Cell, FiguresModel
 from gui.theme import GRID, Theme
 from solver.project.units import from_si
-from solver.project.wording import formula_text, quantity_text, unit_text
+from solver.project.wording import SIGNIFICANT, formula_text, quantity_text, unit_text
 
 
 class FiguresTable(QWidget):
     """A table of figures with a sentence beneath."""
 
-    def __init__(self, theme: Theme, name: str, first_width: int = 190) -> None:
+    def __init__(
+        self,
+        theme: Theme,
+        name: str,
+        first_width: int = 190,
+        width: int = 118,
+        decimals: str = ".00000",
+        digits: int = SIGNIFICANT,
+    ) -> None:
         super().__init__()
-        self.model = FiguresModel(self)
+        self.model = FiguresModel(self, digits)
         self.table = plain_table(self.model, name, self)
-        self._first = first_width
+        self._first, self._width = first_width, width
         self._cells = CellDelegate(theme, self)
-        self._figures = FigureDelegate(theme, parent=self)
+        self._figures = FigureDelegate(theme, decimals, parent=self)
         self.table.setItemDelegate(self._figures)
         self.table.setItemDelegateForColumn(0, self._cells)
         self.note = Sentence("muted")
@@ -38,7 +46,7 @@ class FiguresTable(QWidget):
         header = self.table.horizontalHeader()
         for column in range(self.model.columnCount()):
             header.setSectionResizeMode(column, QHeaderView.ResizeMode.Fixed)
-            self.table.setColumnWidth(column, 118)
+            self.table.setColumnWidth(column, self._width)
         self.table.setColumnWidth(0, self._first)
 
     def text_column(self, column: int, stretch: bool = True) -> None:

@@ -1,14 +1,19 @@
-"""The view "Proof": each figure with its limit and what it means, and the absent phases."""
+"""The view "Proof": each figure with its limit, what is held back, and what is absent."""
 
 from __future__ import annotations
 
-from PySide6.QtWidgets import QVBoxLayout, QWidget
+from PySide6.QtGui import QGuiApplication
+from PySide6.QtWidgets import QScrollArea, QVBoxLayout, QWidget
 
+from gui import readings
 from gui.parts.answer_line import gap_text
 from gui.parts.card import Sentence
 from gui.parts.figures_view import FiguresTable
-from gui.tables.figures_model import Cell
-from gui.theme import GRID, Theme
+from gui.reaction_rows import formulas
+from gui.tables import clipboard
+from gui.tables.figures_model import Cell, Words
+from gui.theme import GRID, ROW_HEIGHT, Theme
+from solver.fixed import PAIRS
 from solver.project.wording import formula_text, number_text
 
 MEANING = {
@@ -18,64 +23,47 @@ MEANING = {
     "energy closure": "Distance of the energy or entropy from the value held, over nRT.",
     "gap": "No mixture of the candidates lies lower in Gibbs energy by more than this, over nRT.",
 }
+_HEADER = 26
 
 
-class ProofView(QWidget):
-    """Figures, absent phases, and the model they rest on."""
+class ProofView(QScrollArea):
+    """Figures, restrictions with their costs, absent phases, and the model they rest on."""
 
     def __init__(self, theme: Theme) -> None:
         super().__init__()
+        self.setWidgetResizable(True)
+        self.setFocusPolicy(self.focusPolicy().NoFocus)
         self.figures = FiguresTable(theme, "proof of the end state", 120)
+        self.held_back = FiguresTable(theme, "restrictions and what each costs", 430, 150)
         self.absent = FiguresTable(theme, "condensed candidates that did not form", 250)
-        layout = QVBoxLayout(self)
-        layout.setContentsMargins(0, 0, 0, 0)
+        self.absent.setMinimumHeight(_HEADER + 3 * ROW_HEIGHT)
+        page = QWidget()
+        layout = QVBoxLayout(page)
+        layout.setContentsMargins(0, 0, GRID // 2, 0)
         layout.setSpacing(GRID)
-        layout.addWidget(self.figures)
+        for table in (self.figures, self.held_back):
+            layout.addWidget(table)
         layout.addWidget(self.absent, 1)
         self.model_line = Sentence("muted")
         layout.addWidget(self.model_line)
+        layout.addStretch(0)
+        self.setWidget(page)
 
     def show_answer(self, answer, stale: bool) -> None:  # type: ignore[no-untyped-def]
         """Show the proof of an answer."""
-        from solver import proof as limits
-
-        end = answer.end
-        proof = end.proof
-        energy = end.fixed.pair[0] in "HUS"
-        rows: list[tuple[Cell, ...]] = [
-            (
-                "element closure",
-                _small(proof.element_residual),
-                _limit(limits.ELEMENT_LIMIT),
-                MEANING["element closure"],
-            ),
-            (
-                "trace closure",
-                _small(proof.trace_residual),
-                _limit(limits.TRACE_LIMIT),
-                MEANING["trace closure"],
-            ),
-            (
-                "energy closure",
-                _small(proof.energy_residual) if energy else "none held",
-                _limit(limits.ENERGY_LIMIT),
-                MEANING["energy closure"],
-            ),
-            ("gap", gap_text(proof.gap), _limit(limits.GAP_LIMIT), MEANING["gap"]),
-        ]
-        figures = self.figures
-        figures.model.show(("figure", "value", "limit", "what it means"), rows, stale)
-        for column in (1, 2, 3):
-            figures.text_column(column, stretch=column == 3)
-        figures.table.setColumnWidth(1, 104)
-        figures.table.setColumnWidth(2, 74)
-        figures.table.setFixedHeight(24 + 26 * len(rows) + 2)
-        names = {sp.key: sp.name for sp in end.species}
+        proof = answer.end.proof
+        self._show_figures(answer.end, stale)
+        self._show_costs(answer, stale)
+        names = {sp.key: sp.name for sp in answer.end.species}
         near = sorted(proof.absent.items(), key=lambda item: -item[1])
         self.absent.model.show(
             ("condensed, did not form", "activity", "margin, %"),
             [
-                (f"{formula_text(k)}  {names.get(k, '')}", float(a), 100.0 * (1.0 - a))
+                (
+                    Words(f"{formula_text(k)}  {names.get(k, '')}", k),
+                    float(a),
+                    100.0 * (1.0 - a),
+                )
                 for k, a in near
             ],
             stale,
@@ -85,6 +73,75 @@ class ProofView(QWidget):
             proof.model + " The gap is a bound by weak duality, whatever way the state was found."
             " A condensed candidate forms where its activity would reach 1."
         )
+
+    def clear(self) -> None:
+        """Show nothing."""
+        for table in (self.figures, self.held_back, self.absent):
+            table.model.show((), [], False)
+            table.note.say("")
+        self.held_back.hide()
+        self.model_line.say("")
+
+    def _show_figures(self, end, stale: bool) -> None:  # type: ignore[no-untyped-def]
+        from solver import proof as limits
+
+        proof = end.proof
+        energy = end.fixed.pair[0] in "HUS"
+        values = (
+            (
+                "element closure",
+                _small(proof.element_residual),
+                limits.ELEMENT_LIMIT,
+            ),
+            ("trace closure", _small(proof.trace_residual), limits.TRACE_LIMIT),
+            (
+                "energy closure",
+                _small(proof.energy_residual) if energy else "none held",
+                limits.ENERGY_LIMIT,
+            ),
+            ("gap", gap_text(proof.gap), limits.GAP_LIMIT),
+        )
+        rows: list[tuple[Cell, ...]] = [
+            (name, value, _limit(limit), MEANING[name]) for name, value, limit in values
+        ]
+        figures = self.figures
+        figures.model.show(("figure", "value", "limit", "what it means"), rows, stale)
+        for column in (1, 2, 3):
+            figures.text_column(column, stretch=column == 3)
+        figures.table.setColumnWidth(1, 104)
+        figures.table.setColumnWidth(2, 74)
+        figures.table.setFixedHeight(_HEADER + ROW_HEIGHT * len(rows))
+
+    def _show_costs(self, answer, stale: bool) -> None:  # type: ignore[no-untyped-def]
+        costs = getattr(answer.end.proof, "restrictions", ())
+        self.held_back.setVisible(bool(costs))
+        if not costs:
+            self.held_back.model.show((), [], False)
+            return
+        flow = answer.basis == "flow"
+        sealed = PAIRS[answer.end.fixed.pair].holds_volume
+        largest = max((cost.energy for cost in costs), key=abs)
+        value, unit = readings.energy(largest, flow)
+        factor = value / largest if largest else 1.0
+        rows: list[tuple[Cell, ...]] = [
+            (Words(formulas(cost.restriction), cost.restriction), float(cost.energy * factor))
+            for cost in costs
+        ]
+        self.held_back.model.show(("held back", f"costs, {unit}"), rows, stale)
+        self.held_back.table.setFixedHeight(_HEADER + ROW_HEIGHT * len(rows))
+        which, where = ("Helmholtz", "T and V") if sealed else ("Gibbs", "T and p")
+        self.held_back.note.say(
+            f"Costs: how much lower in {which} energy the same matter would lie at the same "
+            f"{where} without that restriction."
+        )
+
+    def copy(self) -> None:
+        """Put all tables on the clipboard."""
+        shown = [t for t in (self.figures, self.held_back, self.absent) if t.model.rowCount()]
+        for table in shown:
+            table.table.clearSelection()
+        texts = [clipboard.as_text(table.table) for table in shown]
+        QGuiApplication.clipboard().setText("\n\n".join([*texts, self.model_line.text()]))
 
 
 def _small(value: float) -> str:

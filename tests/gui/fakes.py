@@ -54,7 +54,13 @@ def answer(amounts=None, T=1500.0, absent=None):
     )
     fed = SimpleNamespace(T=298.15, p=1e5, V=0.1, H=-2e5, U=-2e5, S=1e3, mass=0.1, amount=4.0)
     prepared = SimpleNamespace(
-        feed={H2: 1.0, N2: 3.0}, candidates=species, fixed=end.fixed, fed=fed, basis="batch"
+        feed={H2: 1.0, N2: 3.0},
+        candidates=species,
+        fixed=end.fixed,
+        fed=fed,
+        basis="batch",
+        restrictions=(),
+        reactions=(),
     )
     return SimpleNamespace(
         end=end, fed=fed, heat=1e5, basis="batch", prepared=prepared, messages=()

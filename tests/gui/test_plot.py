@@ -135,8 +135,8 @@ def test_a_sealed_case_keeps_its_volume():
     case = settle_case(burner(fixed=FixedPair(pair="U,V")))
     seen = []
 
-    def settle_many(*args):
-        seen.append(solver.settle_many(*args))
+    def settle_many(*args, **more):
+        seen.append(solver.settle_many(*args, **more))
         return seen[-1]
 
     got = composition_line(
@@ -151,7 +151,7 @@ def test_a_sealed_case_keeps_its_volume():
 def test_a_line_that_is_told_to_stop_stops():
     with pytest.raises(Stopped):
         composition_line(
-            answer(), 1000.0, 2000.0, lambda s: None, lambda: True, settle_many=lambda *a: None
+            answer(), 1000.0, 2000.0, lambda s: None, lambda: True, settle_many=lambda *a, **k: None
         )
 
 

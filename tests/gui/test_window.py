@@ -239,7 +239,7 @@ def test_paste_and_copy_with_a_spreadsheet(window, qtbot):
     assert rows == [("CH4", 93.5, "kmol/h"), ("C2H6", 4.0, "kmol/h"), ("N2", 2.5, "kmol/h")]
     press(window, "undo")
     settled(qtbot, window)
-    press(window, "copy_composition")
+    press(window, "copy_view")
     lines = QGuiApplication.clipboard().text().split("\n")
     assert lines[0].split("\t") == ["species", "name", "", "mol %", "mol", "mass %"]
     first = lines[1].split("\t")
@@ -438,7 +438,7 @@ def test_every_action_has_a_key_of_its_own(window):
 
 
 def test_views_of_the_end_state(window, qtbot):
-    for title in ("Phases", "Energy", "Proof", "Composition"):
+    for title in ("Phases", "Reactions", "Energy", "Proof", "Composition"):
         press(window, f"tab_{title.lower()}")
         assert window.ends_up.current_table().model().rowCount() > 0
     press(window, "tab_proof")

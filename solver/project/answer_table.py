@@ -162,11 +162,12 @@ def _print_restrictions(out: Console, answer: CaseAnswer) -> None:
     unit = "kW" if answer.basis == "flow" else "kJ"
     # Differences of two end states: what is below their own rounding is none.
     rounding = 1e-10 * (abs(answer.end.G) + abs(answer.end.U))
-    for cost in answer.end.proof.restrictions:
+    costs = answer.end.proof.restrictions
+    for cost in costs:
         if math.isnan(cost.energy):
             price = "its cost could not be settled"
         elif abs(cost.energy) <= rounding:
-            price = "costs nothing: it does not bind"
+            price = "costs nothing" + (" while the others hold" if len(costs) > 1 else "")
         else:
             price = f"costs {units.quantity_text(cost.energy / 1e3, unit)} of {cost_is(answer)}"
         out.print(f"  held    {typeset(one_line(cost.restriction))}; {price}")

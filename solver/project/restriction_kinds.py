@@ -84,8 +84,8 @@ def _inert(
         return None
     kind = units.unit_kind(part.unit, "part", f"{field}.part")
     if kind == "share":
-        _check_share(value, part, "inert share", f"{field}.part", faults)
-        return None if sp is None else solver_side.Inert(sp.key, share=value)
+        good = _check_share(value, part, "inert share", f"{field}.part", faults)
+        return solver_side.Inert(sp.key, share=value) if good and sp is not None else None
     if value < 0:
         faults.append(
             InputError(

@@ -111,23 +111,6 @@ def check_approaches(
                 )
 
 
-def restriction_at_fault(
-    error: InputError, restrictions: Sequence[solver_side.Restriction], fields: Sequence[str]
-) -> str | None:
-    """Path of the restriction whose balance the solver could not close, if it was one."""
-    open_rows = str(error.value).split(", ")
-    for restriction, field in zip(restrictions, fields, strict=True):
-        if isinstance(restriction, solver_side.Inert):
-            row = f"inert {restriction.species}"
-        elif isinstance(restriction, solver_side.FixedConversion):
-            row = f"conversion of {restriction.species}"
-        else:
-            continue
-        if row in open_rows:
-            return field
-    return None
-
-
 def _consistent(
     read: Sequence[solver_side.Restriction],
     fields: Sequence[str],

@@ -7,11 +7,12 @@ from typing import TYPE_CHECKING
 from solver.errors import InputError, NoEndState, NotProven, SettleError
 from solver.fixed import PAIRS, T_HIGHEST, T_LOWEST
 from solver.project import units
-from solver.project.restrictions import restriction_at_fault
 from solver.project.wording import typeset
+from solver.settle import settle
 
 if TYPE_CHECKING:
     from solver.project.case import Prepared
+    from solver.restrictions import Restriction
 
 _PLACES = {"species": "candidates", "feed": "streams"}
 
@@ -23,9 +24,9 @@ def in_terms_of_case(prepared: Prepared, error: SettleError) -> SettleError:
     text, allowed = typeset(str(error)), typeset(error.allowed)
     if not isinstance(error, InputError):
         return NotProven(text, error.field, error.value, allowed)
-    place = restriction_at_fault(error, prepared.restrictions, prepared.restriction_fields)
-    if place is None:
-        place = _PLACES.get(error.field.partition("[")[0], error.field)
+    place = _PLACES.get(error.field.partition("[")[0], error.field)
+    if error.field == "species" and prepared.restrictions:
+        place = _restriction_at_fault(prepared) or place
     return InputError(text, place, error.value, allowed)
 
 
@@ -61,3 +62,26 @@ def _out_of_reach(prepared: Prepared, error: NoEndState) -> NoEndState:
     else:
         text = f"No end state below {T_HIGHEST:g} K has so much {word} ({size}); lower {variable}."
     return NoEndState(text, f"fixed.{variable}", value, typeset(error.allowed))
+
+
+def _restriction_at_fault(prepared: Prepared) -> str | None:
+    """The last restriction without which the case settles; all of them where it takes more."""
+    every = prepared.restrictions
+    for i in reversed(range(len(every))):
+        if _settles(prepared, every[:i] + every[i + 1 :]):
+            return prepared.restriction_fields[i]
+    return "restrictions" if len(every) > 1 and _settles(prepared, ()) else None
+
+
+def _settles(prepared: Prepared, restrictions: tuple[Restriction, ...]) -> bool:
+    try:
+        settle(
+            prepared.candidates,
+            dict(prepared.feed.items()),
+            prepared.fixed,
+            gas=prepared.gas,
+            restrictions=restrictions,
+        )
+    except SettleError:
+        return False
+    return True

@@ -54,9 +54,11 @@ def test_settle_prints_every_case(path, capsys):
     assert (code, err) == (0, "")
     for case in file.read(path).cases:
         assert case.name in out
-    for word in ("T  ", "p  ", "V  ", "heat", "mol % of phase", "phases", "proof", "limit and not"):
+    pairs = {case.fixed.pair for case in file.read(path).cases}
+    assert ("  work  " if pairs == {"S,p"} else "  heat  ") in out
+    for word in ("T  ", "p  ", "V  ", "mol % of phase", "phases", "proof", "limit and not"):
         assert word in out
-    sealed = any(case.fixed.pair.endswith("V") for case in file.read(path).cases)
+    sealed = any(pair.endswith("V") for pair in pairs)
     assert ("no design basis" in out) is sealed
     assert out.rstrip().endswith("Local codes and a licensed engineer decide.")
     assert "e-0" not in out
@@ -82,6 +84,54 @@ def test_json_has_the_keys_it_promises(capsys):
         "element_residual", "energy_residual", "gap", "absent", "model", "restrictions",
     }  # fmt: skip
     assert case["proof"]["absent"]["C(gr)"] < 1
+
+
+def test_restrictions_and_reactions_are_told_with_their_figures(capsys):
+    path = str(ROOT / "samples/aged-reformer.thalweg")
+    code, out, err = run(capsys, "settle", path, "--reactions")
+    assert (code, err) == (0, "")
+    held = [line for line in out.splitlines() if line.startswith("  held")]
+    assert len(held) == 5
+    assert "K(T − 38 K); costs 30.35 kW of Gibbs energy" in held[-1]
+    assert "the set of the case" in out
+    for word in ("extent, kmol/h", "ln K", "Q/K", "ΔH(T), kJ/mol", "ΔG(T), kJ/mol", "38.00"):
+        assert word in out
+    assert "CH4 + H2O = CO + 3 H2  " in out
+    code, plain, _ = run(capsys, "settle", path)
+    assert "extent" not in plain
+    assert [line for line in plain.splitlines() if line.startswith("  held")] == held
+
+
+def test_reactions_are_part_of_the_json_where_asked_for(capsys):
+    path = str(ROOT / "samples/aged-reformer.thalweg")
+    _, out, _ = run(capsys, "settle", path, "--json", "--reactions")
+    last = json.loads(out)["cases"][-1]
+    inert, approach = last["proof"]["restrictions"]
+    assert set(inert) == {"field", "text", "cost", "cost_is"}
+    assert inert["field"] == "restrictions[0]"
+    assert approach["cost"] > inert["cost"] > 0
+    assert approach["cost_is"] == "Gibbs energy"
+    view = last["reactions"]
+    assert set(view) == {"own", "list", "missing", "unexplained", "left_out"}
+    assert view["own"] is True
+    first = view["list"][0]
+    assert set(first) == {
+        "equation", "numbers", "extent", "ln_k", "ln_q", "q_over_k", "dh", "ds", "dg", "dcp",
+        "dh298", "ds298", "dg298", "t_eq", "approach", "notes",
+    }  # fmt: skip
+    assert first["numbers"] == {"CH4": -1, "H2O": -1, "CO": 1, "H2": 3}
+    assert first["approach"] == pytest.approx(38.0, abs=1e-6)
+    assert first["t_eq"] == pytest.approx(last["T"] - 38.0, abs=1e-6)
+
+
+def test_json_holds_no_infinity_and_the_table_no_gap_where_nothing_can_react(save, capsys):
+    path = save(project(T=q(300, "K")))
+    _, out, _ = run(capsys, "settle", path, "--json", "--reactions")
+    assert "Infinity" not in out
+    assert "NaN" not in out
+    code, out, _ = run(capsys, "settle", path, "--reactions")
+    assert code == 0
+    assert "none: nothing that is there can turn into another" in out
 
 
 def test_a_wrong_field_is_named_on_one_line_each(save, capsys):

@@ -29,6 +29,7 @@ from solver.proof import (
 )
 from solver.restrictions import Restriction
 from solver.settle import candidate_of, check_species, explained
+from solver.threads import one_thread
 
 if TYPE_CHECKING:
     from species_db import Species
@@ -88,8 +89,26 @@ def settle_many(
     count = len(first)
     why: dict[int, str] = {}
     _mark_faults(PAIRS[pair], fed, amounts, first, second, why)
-    columns = {sp.key: k for k, sp in enumerate(species)}
     out = _Results(count, len(species))
+    with one_thread():
+        _settle_all(
+            species, fed, amounts, PAIRS[pair], first, second, tuple(restrictions), out, why
+        )
+    return out.end_states(pair, tuple(sp.key for sp in species), why)
+
+
+def _settle_all(
+    species: Sequence[Species],
+    fed: Sequence[Species],
+    amounts: Array,
+    pair: Pair,
+    first: Array,
+    second: Array,
+    restrictions: tuple[Restriction, ...],
+    out: _Results,
+    why: dict[int, str],
+) -> None:
+    count = len(first)
     good = np.array([i not in why for i in range(count)], dtype=bool)
     # cases that feed the same species share a mixture
     for presence in np.unique(amounts[good] > 0.0, axis=0):
@@ -97,7 +116,7 @@ def settle_many(
         some = [sp for sp, there in zip(fed, presence, strict=True) if there]
         index = np.flatnonzero(same)
         try:
-            posed = pose(species, some, amounts[index][:, presence], tuple(restrictions))
+            posed = pose(species, some, amounts[index][:, presence], restrictions)
         except InputError as error:
             why.update({int(i): str(error) for i in index})
             continue
@@ -106,8 +125,7 @@ def settle_many(
             part = np.arange(begin, min(begin + size, len(index)))
             rows = index[part]
             chunk = Posed(posed.mixture, posed.feed.of(part), posed.place)
-            _settle_chunk(chunk, PAIRS[pair], first[rows], second[rows], out, rows, why)
-    return out.end_states(pair, tuple(columns), why)
+            _settle_chunk(chunk, pair, first[rows], second[rows], out, rows, why)
 
 
 def _aligned(
@@ -255,9 +273,13 @@ def _settle_chunk(
     out.values["element_residual"][good] = closure[ok]
     for name, function in found.functions.items():
         out.values[name][good] = function[some][ok] / scale[ok]
-    out.amounts[good] = 0.0
-    for j, column in enumerate(posed.place.tolist()):  # an inert part adds to its species
-        out.amounts[good, column] += n[ok, j] / scale[ok]
+    amounts = np.zeros((len(good), out.amounts.shape[1]))
+    amounts[:, posed.place] = n[ok] / scale[ok][:, None]
+    for first_place, second_place in mixture.twins:  # an inert part adds to its species
+        amounts[:, posed.place[first_place]] = (n[ok, first_place] + n[ok, second_place]) / scale[
+            ok
+        ]
+    out.amounts[good] = amounts
 
 
 def _features(feed: Feed, pair: Pair, values: Array, p: Array | None, V: Array | None) -> Array:

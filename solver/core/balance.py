@@ -18,6 +18,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from solver.core.extremes import newton_steps, rescale, shortest, wild
+
 Array = NDArray[np.float64]
 
 _MAX_ITERATIONS = 80
@@ -25,8 +27,10 @@ _MAX_STEP = 300.0  # largest change of a component's ln activity in one step
 _CLOSED = 2e-14
 _EXP_LIMIT = 690.0
 _FAINT = 1e-250
-_WILD = 1e4
+_CERTAIN = 3e-9  # a last step this small leaves an error of its square
 _STALE = 14  # steps forward without halving the sum of squares
+# of many cases, the last few are left: they get a nearer start from their neighbours
+_TOGETHER, _STRAGGLERS = 7, 0.08
 _PATIENCE = 6  # iterations that a gas may be larger than its feed
 
 
@@ -148,6 +152,11 @@ def solve_balances(
     state = _State(system, kappa, b, log_a, nu, nu_limit, vessel)
     if m + system.extra == 0:
         return state.solution(np.ones(cases, dtype=bool), 0)
+    with np.errstate(all="ignore"):  # infinities are looked for, and mended or given up
+        return _iterate(state, cases)
+
+
+def _iterate(state: _State, cases: int) -> GasSolution:
     whole = None  # results of all cases, once some have been set aside
     index = np.arange(cases)
     closed_all = np.zeros(cases, dtype=bool)
@@ -156,9 +165,9 @@ def solve_balances(
         iteration += 1
         closed, failed = state.evaluate()
         closed_all[index] = closed & ~failed
-        going = ~(closed | failed)
+        going = state.going
         count = int(going.sum())
-        if count == 0:
+        if count == 0 or (iteration > _TOGETHER and count < _STRAGGLERS * cases):
             break
         if count <= 0.7 * len(index):
             if whole is None:
@@ -166,7 +175,9 @@ def solve_balances(
             else:
                 whole.put(index, state)
             state, index = state.part(going), index[going]
-        state.advance()
+        closed_all[index] |= state.advance()
+        if closed_all[index].all():
+            break
     if whole is None:
         return state.solution(closed_all, iteration)
     whole.put(index, state)
@@ -205,6 +216,10 @@ class _State:
         self.step = np.zeros((cases, self.unknowns))
         self.back = np.zeros(cases, dtype=bool)
         self.going = np.ones(cases, dtype=bool)
+        self.J = self.F = np.zeros((cases, 0))
+        self.settled = np.zeros(cases, dtype=bool)  # by a step small enough
+        self.many = cases > 1
+        self.lost = np.zeros(cases, dtype=bool)
 
     def evaluate(self) -> tuple[NDArray[np.bool_], NDArray[np.bool_]]:
         """Residuals F and slopes J at the present amounts; which cases are closed or lost."""
@@ -221,50 +236,77 @@ class _State:
             free = np.exp(self.nu) * vessel.unit
             P[:, m] += np.maximum(vessel.left, 0.0)
             M[:, m] += np.maximum(-vessel.left, 0.0) + free
-        with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
-            J[:, :rows] = sums[:, cut1:cut2].reshape(-1, rows, unknowns) / P[:, :, None]
-            J[:, :rows] -= sums[:, cut2:cut3].reshape(-1, rows, unknowns) / M[:, :, None]
-            F[:, :rows] = np.log(P / M)
+        J[:, :rows] = sums[:, cut1:cut2].reshape(-1, rows, unknowns) / P[:, :, None]
+        J[:, :rows] -= sums[:, cut2:cut3].reshape(-1, rows, unknowns) / M[:, :, None]
+        F[:, :rows] = np.log(P / M)
         if self.system.extra:
             total = sums[:, -1:]
             F[:, -1] = np.log(total[:, 0]) - self.nu
             J[:, -1] = sums[:, cut3:-1] / total
             J[:, -1, m] -= 1.0
-            self.too_large = np.where(self.nu > self.nu_limit, self.too_large + 1, 0)
+            grown = self.nu > self.nu_limit
+            self.too_large = (self.too_large + 1) * grown
         if vessel is not None:
             J[:, m, m] -= free / M[:, m]
             F[:, -1] -= np.log(self.w * vessel.unit)
             J[:, -1, -1] -= 1.0 / self.w
         else:
-            beyond = (np.maximum(P, M) < _FAINT) | (self.log_n.max(axis=1) > 300.0)[:, None]
-            beyond |= ~np.isfinite(F[:, :rows])
-            if beyond.any():
-                _rescale(self.system, self.log_n, self.b, self.nu, beyond, J, F)
+            self._rescale_extremes(P, M, J, F)
         worst = np.abs(F).max(axis=1)
-        closed = (worst <= _CLOSED) | ((worst <= 1e-11) & (worst >= 0.5 * self.last))
-        failed = ~np.isfinite(worst) | (self.too_large > _PATIENCE)
-        merit = (F**2).sum(axis=1)
-        self.back = (merit > self.merit_last) & (worst > 1e-8)
+        closed = self.settled | (worst <= _CLOSED) | ((worst <= 1e-11) & (worst >= 0.5 * self.last))
+        merit = np.einsum("ij,ij->i", F, F)
+        far = worst > 1e-8
+        self.back = (merit > self.merit_last) & far
         better = merit < 0.5 * self.best
-        self.stale = np.where(better, 0, self.stale + ~self.back)
+        self.stale = (self.stale + ~self.back) * ~better
         self.best = np.where(better, merit, self.best)
-        failed |= (self.stale > _STALE) & (worst > 1e-8)
-        self.merit_last = np.where(self.back, self.merit_last, merit)
-        self.last = np.where(self.back, self.last, worst)
+        failed = ~np.isfinite(worst) | (self.too_large > _PATIENCE) | ((self.stale > _STALE) & far)
+        failed |= self.lost
+        failed &= ~self.settled
+        if self.back.any():
+            self.merit_last = np.where(self.back, self.merit_last, merit)
+            self.last = np.where(self.back, self.last, worst)
+        else:
+            self.merit_last, self.last = merit, worst
         self.going = ~(closed | failed)
         self.J, self.F = J, F
         return closed, failed
 
-    def advance(self) -> None:
-        """One Newton step; where the last one made matters worse, back along it instead."""
+    def _rescale_extremes(self, P: Array, M: Array, J: Array, F: Array) -> None:
+        larger = np.maximum(P, M)
+        plain = self.log_n.max(initial=0.0) <= 300.0 and larger.min(initial=1.0) >= _FAINT
+        if plain and np.isfinite(F).all():
+            return
+        over = self.log_n.max(axis=1) > 300.0
+        beyond = (larger < _FAINT) | over[:, None] | ~np.isfinite(F[:, : self.rows])
+        if self.many:
+            # a start so far off is better given up for a nearer one
+            self.lost |= over
+            beyond &= ~self.lost[:, None]
+        if beyond.any():
+            rescale(self.system, self.log_n, self.b, self.nu, beyond, J, F)
+        self.J, self.F = J, F
+        J[~np.isfinite(J)] = 0.0
+
+    def advance(self) -> NDArray[np.bool_]:
+        """One Newton step; where the last one made matters worse, back along it instead.
+
+        Returns which cases are closed by it for certain.
+        """
         m, back, step = self.m, self.back, self.step
-        self.J[~np.isfinite(self.J)] = 0.0
-        self.F[~np.isfinite(self.F)] = 0.0
-        newton = step if back.all() else _newton_steps(self.J, self.F)
+        some_back = bool(back.any())
+        newton = step
+        if not (some_back and back.all()):
+            newton = newton_steps(self.J, self.F)
+            off = wild(newton)
+            if off.any():
+                self.lost |= off & self.many
+                for case in np.flatnonzero(off):
+                    newton[case] = 0.0 if self.many else shortest(self.J[case], self.F[case])
         if self.vessel is not None:  # densities change by a factor of ten at most
             fall = np.maximum(-newton[:, -1], newton[:, -1] / 9.0) / (0.9 * self.w)
             newton = newton / np.maximum(fall, 1.0)[:, None]
-        if back.any():
+        if some_back:
             # worse than before: return three quarters of the way, and try the rest again
             move = np.where(back[:, None], -0.75 * step, newton)
             step = np.where(back[:, None], 0.25 * step, newton)
@@ -272,8 +314,8 @@ class _State:
             move = step = newton
         move[~self.going] = 0.0
         size = np.abs(move[:, : m + 1]).max(axis=1)
-        damp = np.where(back, 1.0, np.minimum(1.0, _MAX_STEP / np.maximum(size, 1e-300)))
-        if (damp < 1.0).any():
+        if size.max() > _MAX_STEP:
+            damp = np.where(back, 1.0, np.minimum(1.0, _MAX_STEP / np.maximum(size, 1e-300)))
             move = move * damp[:, None]
             step = np.where(back[:, None], step, step * damp[:, None])
         self.step = step
@@ -284,6 +326,11 @@ class _State:
         if self.vessel is not None:
             self.w += move[:, -1]
         self.n = np.exp(np.clip(self.log_n, -_EXP_LIMIT, _EXP_LIMIT))
+        if self.vessel is not None:
+            return np.zeros(len(size), dtype=bool)
+        certain: NDArray[np.bool_] = self.going & (size <= _CERTAIN) & ~back
+        self.settled = self.settled | certain
+        return certain
 
     def part(self, keep: NDArray[np.bool_]) -> _State:
         """The cases that go on."""
@@ -300,56 +347,3 @@ class _State:
     def solution(self, closed: NDArray[np.bool_], iterations: int) -> GasSolution:
         """What has been reached."""
         return GasSolution(self.n, self.log_a, self.nu, self.w, closed, iterations)
-
-
-def _newton_steps(J: Array, F: Array) -> Array:
-    """Newton steps, the shortest where the slopes do not determine one."""
-    ridge = 1e-14 * np.eye(J.shape[1])
-    step = np.asarray(-np.linalg.solve(J + ridge, F[:, :, None])[:, :, 0])
-    for case in np.flatnonzero(~(np.abs(step).max(axis=1) < _WILD)):
-        step[case] = -np.linalg.lstsq(J[case], F[case], rcond=1e-7)[0]
-    return step
-
-
-def _rescale(
-    system: GasSystem,
-    log_n: Array,
-    b: Array,
-    nu: Array,
-    rows: NDArray[np.bool_],
-    J: Array,
-    F: Array,
-) -> None:
-    """Rewrite balances whose amounts underflow or overflow, each by its own largest term.
-
-    A potential that only amounts below 1e-250 decide still decides which condensed phases
-    may form, so that these balances are solved like all others.
-    """
-    species, m = system.reactions.shape
-    effect = system.effect
-    for case, row in zip(*np.nonzero(rows), strict=True):
-        column = system.reactions[:, row]
-        up = _log_sum(log_n[case], column, effect, -b[case, row])
-        down = _log_sum(log_n[case], -column, effect, b[case, row])
-        F[case, row] = up[0] - down[0]
-        J[case, row] = up[1] - down[1]
-    if system.extra:
-        for case in np.flatnonzero(rows.any(axis=1)):
-            value, slope = _log_sum(log_n[case], np.ones(species), effect, 0.0)
-            F[case, m] = value - nu[case]
-            J[case, m] = slope
-            J[case, m, m] -= 1.0
-
-
-def _log_sum(
-    log_n: Array, coefficients: Array, effect: Array, constant: float
-) -> tuple[float, Array]:
-    """ln of the positive terms of a balance and its slopes, free of overflow."""
-    side = coefficients > 0.0
-    logs = log_n[side] + np.log(coefficients[side])
-    top = float(logs.max(initial=-np.inf))
-    if constant > 0.0:
-        top = max(top, float(np.log(constant)))
-    weights = np.exp(logs - top)
-    total = float(weights.sum()) + (np.exp(np.log(constant) - top) if constant > 0.0 else 0.0)
-    return top + float(np.log(total)), (weights / total) @ effect[side]

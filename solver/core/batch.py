@@ -16,16 +16,21 @@ import numpy as np
 from numpy.typing import NDArray
 
 from solver.core.cases import Cases
-from solver.core.minimise import Minimum, NotHeld, Present, Unsettled, minimise
+from solver.core.minimise import Minimum, NotHeld, Unsettled, minimise
 from solver.core.mixture import Held
 from solver.core.phaseset import Solved, solve_set
+from solver.core.vertices import walk
 from solver.core.vessel import TooSmall
 
 Array = NDArray[np.float64]
 Indices = NDArray[np.intp]
 
 _MAX_ROUNDS = 12
-_SEEDS = 6
+_SEEDS = 1
+_COARSE = 8  # every so many cases of a line are settled first
+_AT_ONCE = 3
+_LARGE, _SCARCE = 20, -14.0  # cases of a group; ln activity of a component
+_NEAR = 0.3  # distance up to which a neighbour's activities are the better start
 _MAX_PASSES = 400
 
 _Set = tuple[tuple[int, ...], tuple[int, ...]]  # condensed phases, components
@@ -113,11 +118,6 @@ class Minima:
             nu=self.nu[keep].copy(),
         )
 
-    def present(self, i: int) -> Present:
-        """The start that case i offers to a neighbour."""
-        active, members = self.sets[self.of[i]]
-        return Present(active, members, self.log_a[i], float(self.nu[i]))
-
 
 def minimise_many(cases: Cases, features: Array, start: Minima | None = None) -> Minima:
     """Settle all cases.
@@ -131,7 +131,6 @@ def minimise_many(cases: Cases, features: Array, start: Minima | None = None) ->
         Minima of the same cases at a slightly other temperature.
     """
     out = Minima.none_of(cases)
-    waiting = np.ones(len(cases), dtype=bool)
     if start is not None:
         out.sets = list(start.sets)
         known = np.flatnonzero(start.found)
@@ -141,33 +140,147 @@ def minimise_many(cases: Cases, features: Array, start: Minima | None = None) ->
             start.nu[known],
         )
         _exchange_all(cases, known, out)
-        waiting = ~out.found
-        waiting[list(out.why)] = False
-    first = start is None
+    else:
+        for i in spread(features, _SEEDS):
+            _settle_one(cases, int(i), out)
+        if _is_line(features):  # a coarse pass gives the rest near neighbours
+            _settle_together(cases, np.arange(len(cases))[::_COARSE], features, out)
+    # what a neighbour's start does not reach may be reached from a nearer neighbour
     for _ in range(_MAX_PASSES):
-        left = np.flatnonzero(waiting)
+        left = _waiting(out)
         if not left.size:
             break
-        seeds = spread(features[left], _SEEDS if first else 3)
-        for i in left[seeds]:
-            _settle_one(cases, int(i), out, features)
-        waiting[left[seeds]] = False
-        settled = np.flatnonzero(out.found)
-        left = np.flatnonzero(waiting)
-        if not settled.size or not left.size:
-            continue
-        if first and left.size > 60:  # a coarse pass gives the rest nearer neighbours
-            coarse = left[:: max(int(np.sqrt(left.size) / 3), 2)]
-            _start_from(cases, coarse, settled, features, out)
-            _exchange_all(cases, coarse, out)
-            waiting[coarse] = ~out.found[coarse]
-            settled = np.flatnonzero(out.found)
-            left = np.flatnonzero(waiting)
-        first = False
-        _start_from(cases, left, settled, features, out)
-        _exchange_all(cases, left, out)
-        waiting[left] = ~out.found[left]
+        _settle_together(cases, left, features, out)
+        still = _waiting(out)
+        if still.size and (still.size > 0.5 * left.size or still.size < 4):
+            for i in still[spread(features[still], _AT_ONCE)]:
+                _settle_one(cases, int(i), out)
     return out
+
+
+def _waiting(out: Minima) -> Indices:
+    """Cases neither found nor given up."""
+    waiting = ~out.found
+    waiting[list(out.why)] = False
+    return np.flatnonzero(waiting)
+
+
+def _is_line(features: Array) -> bool:
+    """Whether cases that follow each other are so near that one's end starts the other."""
+    if len(features) < 4 * _COARSE:
+        return False
+    steps = np.abs(np.diff(features, axis=0)).max(axis=1)
+    return bool(np.median(steps) * _COARSE < _NEAR)
+
+
+def _settle_together(cases: Cases, which: Indices, features: Array, out: Minima) -> None:
+    """Settle cases in passes, from a settled neighbour if one is near, else from a vertex."""
+    settled = np.flatnonzero(out.found)
+    if not settled.size or not which.size:
+        return
+    from scipy.spatial import cKDTree
+
+    distance, nearest = cKDTree(features[settled]).query(features[which])
+    near = np.asarray(nearest, dtype=np.intp)
+    close = np.asarray(distance) < _NEAR
+    source = settled[near[close]]
+    target = which[close]
+    out.of[target] = out.of[source]
+    out.log_a[target] = out.log_a[source]
+    out.nu[target] = out.nu[source] + np.log(cases.atoms[target] / cases.atoms[source])
+    far = which[~close]
+    if far.size:
+        far = _from_vertices(cases, far, out, settled[near[~close]])
+    _exchange_all(cases, np.concatenate([target, far]), out)
+
+
+def _from_vertices(cases: Cases, which: Indices, out: Minima, near: Indices) -> Indices:
+    """Give cases the set of the best vertex, walking from that of a settled neighbour."""
+    c = cases.c[which]
+    log_p = np.zeros(len(which))
+    if not cases.holds_pressure:
+        # a vertex needs a pressure: that of half as many moles as there are atoms
+        log_p = np.maximum(np.log(0.5 * cases.atoms[which]) - cases.nu_fixed[which], -60.0)
+        c = c.copy()
+        c[:, cases.gas] += log_p[:, None]
+    placed: list[Indices] = []
+    for number in np.unique(out.of[near]):
+        rows = np.flatnonzero(out.of[near] == number)
+        for part, vertex, amounts in walk(cases, which[rows], c[rows], out.sets[number][1]):
+            placed += _place(cases, which, rows[part], vertex, amounts, c, log_p, out)
+    if not placed:
+        return np.zeros(0, dtype=np.intp)
+    target = np.concatenate(placed)
+    _gather(cases, target, out)
+    return target
+
+
+def _gather(cases: Cases, which: Indices, out: Minima) -> None:
+    """Let cases of rare components join a large group whose components are not scarce.
+
+    A pass costs the same for one case as for many, and any abundant components will do.
+    """
+    numbers, counts = np.unique(out.of[which], return_counts=True)
+    large = numbers[counts >= _LARGE][np.argsort(-counts[counts >= _LARGE])]
+    for number in numbers[counts < _LARGE]:
+        active, members = out.sets[number]
+        rows = which[out.of[which] == number]
+        basis = cases.mixture.basis(members)
+        mu = cases.c[rows][:, members] + out.log_a[rows]
+        for other in large:
+            its_active, its_members = out.sets[other]
+            if its_active != active or not rows.size:
+                continue
+            chosen = list(its_members)
+            log_a = mu @ basis.reactions[chosen].T - cases.c[rows][:, chosen]
+            fits = log_a.min(axis=1) > _SCARCE
+            out.of[rows[fits]], out.log_a[rows[fits]] = other, log_a[fits]
+            rows, mu = rows[~fits], mu[~fits]
+
+
+def _place(
+    cases: Cases,
+    which: Indices,
+    rows: Indices,
+    vertex: tuple[int, ...],
+    amounts: Array,
+    c: Array,
+    log_p: Array,
+    out: Minima,
+) -> list[Indices]:
+    """Sets and activities of cases at one vertex, parted by which condensed phases it has."""
+    members = np.array(vertex)
+    condensed = ~cases.mixture.is_gas[members]
+    present = (amounts > 0.0) & condensed
+    gas = (amounts * ~condensed).sum(axis=1)
+    with np.errstate(divide="ignore"):
+        nu = np.where(gas > 0.0, np.log(gas), np.log(cases.atoms[which[rows]]) - 30.0)
+        log_n = np.log(np.maximum(amounts, 0.0))
+    # a component of zero amount starts at the activity that the vertex gives it: one
+    base = nu if cases.holds_pressure else cases.nu_fixed[which[rows]]
+    activity = np.where(np.isfinite(log_n), log_n - base[:, None], log_p[rows][:, None])
+    placed: list[Indices] = []
+    for pattern in np.unique(present, axis=0):
+        some = np.flatnonzero((present == pattern).all(axis=1))
+        active = tuple(int(m) for m in members[pattern])
+        chosen, log_a = vertex, activity[some] * ~condensed
+        if (condensed & ~pattern).any():  # a phase at zero is no component: gases stand in
+            force = c[rows[some]][:, members] @ cases.mixture.basis(vertex).reactions.T
+            force -= c[rows[some]]
+            scarce = 1e-40 * np.exp(np.clip(force[0], -100.0, 0.0))
+            scarce[members] += np.maximum(amounts[some[0]], 0.0)
+            chosen = tuple(sorted(cases.members(active, scarce)))
+            log_a = force[:, chosen] + log_p[rows[some]][:, None]
+            for k, member in enumerate(chosen):
+                if member in vertex:
+                    log_a[:, k] = activity[some, vertex.index(member)]
+                if not cases.mixture.is_gas[member]:
+                    log_a[:, k] = 0.0
+        target = which[rows[some]]
+        out.of[target] = out.number((active, chosen))
+        out.log_a[target], out.nu[target] = log_a, nu[some]
+        placed.append(target)
+    return placed
 
 
 def spread(features: Array, count: int) -> Indices:
@@ -181,13 +294,8 @@ def spread(features: Array, count: int) -> Indices:
     return np.unique(chosen)
 
 
-def _settle_one(cases: Cases, i: int, out: Minima, features: Array) -> None:
-    """Settle one case by itself, from the nearest settled one or cold."""
-    start = None
-    settled = np.flatnonzero(out.found)
-    if settled.size:
-        near = settled[np.argmin(((features[settled] - features[i]) ** 2).sum(axis=1))]
-        start = out.present(int(near))
+def _settle_one(cases: Cases, i: int, out: Minima) -> None:
+    """Settle one case by itself, cold."""
     held = Held(
         float(cases.T[i]),
         p=None if cases.p is None else float(cases.p[i]),
@@ -195,24 +303,9 @@ def _settle_one(cases: Cases, i: int, out: Minima, features: Array) -> None:
     )
     one = np.array([i])
     try:
-        out.put(i, minimise(cases.mixture, cases.feed.of(one), held, start))
+        out.put(i, minimise(cases.mixture, cases.feed.of(one), held))
     except (NotHeld, Unsettled, TooSmall, np.linalg.LinAlgError) as error:
         out.why[i] = error
-
-
-def _start_from(
-    cases: Cases, which: Indices, settled: Indices, features: Array, out: Minima
-) -> None:
-    """Hand each case the set and the activities of its nearest settled neighbour."""
-    if not which.size:
-        return
-    from scipy.spatial import cKDTree
-
-    _, near = cKDTree(features[settled]).query(features[which])
-    source = settled[near]
-    out.of[which] = out.of[source]
-    out.log_a[which] = out.log_a[source]
-    out.nu[which] = out.nu[source] + np.log(cases.atoms[which] / cases.atoms[source])
 
 
 def _exchange_all(cases: Cases, which: Indices, out: Minima) -> None:

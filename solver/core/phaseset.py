@@ -146,14 +146,13 @@ def _solve(
     mu = c[:, members] + result.log_a
     _sink(c, mu, sinks, basis, live_gas)
     y = np.zeros(c.shape)
-    y[:, live_gas] = result.y
+    if not result.closed.all():
+        y[:, live_gas] = result.y
     well = np.ones(len(which), dtype=bool)
     if rows:
-        size = np.abs(reactions[:, rows])
         own = n[:, [members[k] for k in rows]]
-        for column in range(len(rows)):  # (cases, gas) at a time
-            most = (n[:, gas] * size[:, column]).max(axis=1)
-            well &= own[:, column] * _DOMINANCE >= most
+        built = n[:, gas] @ np.abs(reactions[:, rows]) - own
+        well = np.all(own * _DOMINANCE >= built, axis=1)
     return Solved(
         basis=basis,
         n=n,
@@ -172,7 +171,7 @@ def _solve(
 @dataclass(frozen=True)
 class _GasResult:
     n: Array  # (cases, live gas species)
-    y: Array
+    y: Array  # composition, meant only where the balances are not closed
     log_a: Array  # (cases, components), zero for condensed ones
     nu: Array
     closed: Flags
@@ -216,12 +215,13 @@ def _solve_gas(
         solution = solve_balances(system, kappa, b, near[None, :], np.array([size]), limit, vessel)
     log_a[:, rows] = solution.log_a
     n, closed = solution.n, solution.closed
-    total = n.sum(axis=1, keepdims=True)
-    y = n / total
+    total = n.sum(axis=1)
+    amounts = n
     if homogeneous:
-        forms = np.log(total[:, 0]) > cases.force_tolerance[which]
-        return _GasResult(np.zeros(n.shape), y, log_a, nu, closed & ~forms)
-    return _GasResult(n, y, log_a, solution.nu, closed)
+        closed = closed & (np.log(total) <= cases.force_tolerance[which])  # else the gas forms
+        amounts = np.zeros(n.shape)
+    y = amounts if closed.all() else n / total[:, None]
+    return _GasResult(amounts, y, log_a, nu if homogeneous else solution.nu, closed)
 
 
 def _shared(

@@ -1,0 +1,113 @@
+"""Balances whose amounts leave the range of floating point, and small systems of equations."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+if TYPE_CHECKING:
+    from solver.core.balance import GasSystem
+
+Array = NDArray[np.float64]
+
+_WILD = 1e4
+_MANY = 24  # cases from which eliminating all of them side by side beats one by one
+
+
+def newton_steps(J: Array, F: Array) -> Array:
+    """Newton steps (cases, unknowns); see `shortest` for those that are `wild`."""
+    return _eliminate(J, F) if len(J) >= _MANY else _one_by_one(J, F)
+
+
+def wild(step: Array) -> NDArray[np.bool_]:
+    """Steps that the slopes do not determine."""
+    return np.asarray(~(np.abs(step).max(axis=1) < _WILD))
+
+
+def shortest(J: Array, F: Array) -> Array:
+    """The shortest of the steps (unknowns,) that solve one case best."""
+    return np.asarray(-np.linalg.lstsq(J, F, rcond=1e-7)[0])
+
+
+def _one_by_one(J: Array, F: Array) -> Array:
+    ridge = 1e-14 * np.eye(J.shape[1])
+    return np.asarray(-np.linalg.solve(J + ridge, F[:, :, None])[:, :, 0])
+
+
+def _eliminate(J: Array, F: Array) -> Array:
+    """Gaussian elimination of all cases at once, without exchange of rows.
+
+    The rows are logarithmic balances with positive diagonals, so that exchanges are rarely
+    needed; where the residual says otherwise the case is solved by itself.
+    """
+    unknowns = J.shape[1]
+    A = np.empty((unknowns, unknowns + 1, len(J)))
+    A[:, :unknowns] = J.transpose(1, 2, 0)
+    A[:, unknowns] = -F.T
+    with np.errstate(all="ignore"):
+        for k in range(unknowns):
+            A[k, k + 1 :] /= A[k, k]
+            if k + 1 < unknowns:
+                A[k + 1 :, k + 1 :] -= A[k + 1 :, k, None] * A[k, None, k + 1 :]
+        for k in range(unknowns - 2, -1, -1):
+            A[k, unknowns] -= (A[k, k + 1 : unknowns] * A[k + 1 :, unknowns]).sum(axis=0)
+        step = np.ascontiguousarray(A[:, unknowns].T)
+        rest = np.abs((J @ step[:, :, None])[:, :, 0] + F).max(axis=1)
+        good = rest <= 1e-9 * np.abs(F).max(axis=1)
+    if not good.all():
+        bad = ~good
+        step[bad] = _one_by_one(J[bad], F[bad])
+    return step
+
+
+def rescale(
+    system: GasSystem,
+    log_n: Array,
+    b: Array,
+    nu: Array,
+    rows: NDArray[np.bool_],
+    J: Array,
+    F: Array,
+) -> None:
+    """Rewrite balances whose amounts underflow or overflow, each by its own largest term.
+
+    A potential that only amounts below 1e-250 decide still decides which condensed phases
+    may form, so that these balances are solved like all others.
+
+    Parameters
+    ----------
+    log_n : ndarray, shape (cases, gas species)
+    b : ndarray, shape (cases, components)
+    rows : ndarray of bool, shape (cases, components)
+        The balances to rewrite in J and F.
+    """
+    species, m = system.reactions.shape
+    effect = system.effect
+    for case, row in zip(*np.nonzero(rows), strict=True):
+        column = system.reactions[:, row]
+        up = _log_sum(log_n[case], column, effect, -b[case, row])
+        down = _log_sum(log_n[case], -column, effect, b[case, row])
+        F[case, row] = up[0] - down[0]
+        J[case, row] = up[1] - down[1]
+    if system.extra:
+        for case in np.flatnonzero(rows.any(axis=1)):
+            value, slope = _log_sum(log_n[case], np.ones(species), effect, 0.0)
+            F[case, m] = value - nu[case]
+            J[case, m] = slope
+            J[case, m, m] -= 1.0
+
+
+def _log_sum(
+    log_n: Array, coefficients: Array, effect: Array, constant: float
+) -> tuple[float, Array]:
+    """ln of the positive terms of a balance and its slopes, free of overflow."""
+    side = coefficients > 0.0
+    logs = log_n[side] + np.log(coefficients[side])
+    top = float(logs.max(initial=-np.inf))
+    if constant > 0.0:
+        top = max(top, float(np.log(constant)))
+    weights = np.exp(logs - top)
+    total = float(weights.sum()) + (np.exp(np.log(constant) - top) if constant > 0.0 else 0.0)
+    return top + float(np.log(total)), (weights / total) @ effect[side]

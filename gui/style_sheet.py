@@ -88,7 +88,8 @@ QAbstractScrollArea::corner { background: transparent; border: 0; }
 QTableView::item { padding: 0 4px; border: 0; }
 QHeaderView { background: transparent; border: 0; }
 QHeaderView::section { background: {panel}; color: {muted}; border: 0;
-             border-bottom: 1px solid {line}; padding: 2px 4px; font-weight: 400; }
+             border-bottom: 1px solid {line}; padding: 2px 4px; font-weight: 400;
+             font-size: {small}pt; }
 
 QTabBar { background: transparent; border: 0; qproperty-drawBase: 0; }
 QTabBar::tab { background: transparent; border: 0; border-bottom: 2px solid transparent;
@@ -119,10 +120,11 @@ QPlainTextEdit[faulty="true"] { border-color: {error}; }
 def text(tokens: Tokens) -> str:
     """The style sheet of `tokens`."""
     from gui.icons import chevron
-    from gui.theme import mixed
+    from gui.theme import mixed, small_size
 
     out = _TEMPLATE
     for name in tokens.__dataclass_fields__:
         out = out.replace("{" + name + "}", str(getattr(tokens, name)))
+    out = out.replace("{small}", f"{small_size():.2f}")
     out = out.replace("{stale}", mixed(tokens.muted, tokens.panel, 0.4).name())
     return out.replace("{chevron}", chevron(tokens.dark))

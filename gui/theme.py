@@ -70,11 +70,19 @@ DARK = Tokens(
 )
 
 
+SIZES = {"body": 1.0, "small": 0.87, "figure": 1.6}
+
+
+def small_size() -> float:
+    """The size of small text, in points."""
+    return QApplication.font().pointSizeF() * SIZES["small"]
+
+
 def sized(font: QFont, role: str) -> QFont:
     """`font` in one of the three sizes: 'body', 'small' or 'figure'; figures tabular."""
     base = QApplication.font().pointSizeF()
     out = QFont(font)
-    out.setPointSizeF(base * {"body": 1.0, "small": 0.87, "figure": 1.6}[role])
+    out.setPointSizeF(base * SIZES[role])
     out.setFeature(QFont.Tag("tnum"), 1)
     return out
 

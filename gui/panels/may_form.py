@@ -114,6 +114,7 @@ class MayForm(Card):
         self.view.horizontalHeader().hide()
         self.view.horizontalHeader().setSectionResizeMode(1, QHeaderView.ResizeMode.Stretch)
         self.view.setColumnWidth(0, 124)
+        self.view.setColumnHidden(2, True)  # the remark is painted at the end of the name's cell
         self.view.setMinimumHeight(ROW_HEIGHT * 2)
         self.body.addWidget(self.view, 1)
         self.search = QLineEdit()
@@ -188,21 +189,11 @@ class MayForm(Card):
                 for k in self._order
             ]
         )
-        self._span()
         self._show_chips({e for sp in answer.value.prepared.feed for e in sp.elements})
         self.remark.setText(f"{len(keys)} species" if settled else "")
         out = wish.excluded
         self.excluded.setText("excluded: " + ", ".join(out) if out else "")
         self.excluded.setVisible(bool(out))
-
-    def _span(self) -> None:
-        """A name without a remark beside it may run to the edge."""
-        self.view.clearSpans()
-        width = self.view.fontMetrics().horizontalAdvance
-        self.view.setColumnWidth(2, max((width(r.remark) for r in self.model.rows), default=0) + 16)
-        for i, row in enumerate(self.model.rows):
-            if not row.remark:
-                self.view.setSpan(i, 1, 1, 2)
 
     def _remarks(self, end) -> dict[str, str]:  # type: ignore[no-untyped-def]
         out = {k: f"activity {number_text(a, 2)}" for k, a in end.proof.absent.items()}

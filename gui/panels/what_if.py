@@ -243,7 +243,7 @@ class WhatIf(Card):
         self.plot.set_mark(_mark(answer.value))
         self.plot.show_line(line, unit)
         count = len(line.T)
-        took = f"{line.seconds * 1000:.0f} ms" if line.seconds < 2 else f"{line.seconds:.1f} s"
+        took = f"{line.seconds * 1000:.0f} ms" if line.seconds < 0.995 else f"{line.seconds:.1f} s"
         text = f"{count} end states in {took}"
         if line.failed:
             text += f", {line.failed} could not be settled"

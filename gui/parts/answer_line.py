@@ -121,9 +121,16 @@ def figures(case: Case, answer, units: readings.Units) -> list[Figure]:  # type:
     size = max(abs(answer.heat), 1e-9 * max(abs(end.H), abs(fed.H)))
     heat = answer.heat if abs(answer.heat) >= size else 0.0
     Q, Q_unit = readings.energy(heat, flow)
-    law = "to hold it so" if "H" not in pair and "U" not in pair else "held"
+    kind = getattr(answer, "heat_is", "heat")
+    law = "needed to hold it" if pair[0] in "TS" else "held"
     if heat == 0.0 and law == "held":
         law = "adiabatic"
+    if kind == "work":
+        law = "reversible"
+    what = {"heat": "heat added", "work": "work put in"}.get(kind, "heat and work")
+    if flow:
+        what = {"heat": "heat flow added", "work": "power put in"}.get(kind, "heat and work")
+    given = "given off" if kind == "heat" else "gained"
     gap = end.proof.gap
     return [
         Figure(
@@ -148,11 +155,11 @@ def figures(case: Case, answer, units: readings.Units) -> list[Figure]:  # type:
             f"{end.V!r} m³{'/s' if flow else ''}",
         ),
         Figure(
-            "heat flow added" if flow else "heat added",
+            what,
             number_text(Q),
             Q_unit,
             law,
-            f"{answer.heat!r} {'W' if flow else 'J'}, negative when given off",
+            f"{answer.heat!r} {'W' if flow else 'J'}, negative when {given}",
         ),
         Figure(
             "proof: gap to the minimum",

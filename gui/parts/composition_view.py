@@ -27,10 +27,10 @@ class CompositionView(QWidget):
         self.table.setItemDelegateForColumn(columns.BAR, self._bars)
         for column in (columns.SHARE, columns.AMOUNT, columns.MASS):
             self.table.setItemDelegateForColumn(column, self._figures)
-            self.table.setColumnWidth(column, 112)
+            self.table.setColumnWidth(column, 106)
         header = self.table.horizontalHeader()
         self.table.setColumnWidth(columns.SPECIES, 108)
-        self.table.setColumnWidth(columns.NAME, 168)
+        self.table.setColumnWidth(columns.NAME, 196)
         header.setSectionResizeMode(columns.BAR, QHeaderView.ResizeMode.Stretch)
         layout = QVBoxLayout(self)
         layout.setContentsMargins(0, 0, 0, 0)

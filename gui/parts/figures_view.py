@@ -13,6 +13,9 @@ from gui.theme import GRID, Theme
 from solver.project.units import from_si
 from solver.project.wording import SIGNIFICANT, formula_text, quantity_text, unit_text
 
+_ROUNDING = 1e-9
+"""Share of the figures that a difference of less is the rounding of."""
+
 
 class FiguresTable(QWidget):
     """A table of figures with a sentence beneath."""
@@ -104,7 +107,9 @@ class EnergyView(FiguresTable):
             first = None if a is None else convert(a)
             second = convert(b)
             change = None if first is None else second - first
-            first = "differs" if first is None else first
+            if change is not None and abs(change) < _ROUNDING * max(abs(first), abs(second)):
+                change = 0.0
+            first = "differ" if first is None else first
             rows.append((f"{words}, {unit_text(unit)}", first, second, change))
 
         add("temperature", fed.T, end.T, units.T, lambda x: from_si(x, units.T, "temperature"))
@@ -119,10 +124,15 @@ class EnergyView(FiguresTable):
             factor = scale(max(abs(a), abs(b), 1e-300), flow)[0] / max(abs(a), abs(b), 1e-300)
             add(words, a, b, unit, lambda x, f=factor: x * f)
         self.model.show(("", "as fed", "at the end", "change"), rows, stale)
-        Q, unit = readings.energy(answer.heat, flow)
+        size = max(abs(end.H), abs(fed.H), abs(end.U), abs(fed.U))
+        heat = answer.heat if abs(answer.heat) > _ROUNDING * size else 0.0
+        Q, unit = readings.energy(heat, flow)
+        what = {"heat": "Heat added", "work": "Work put in"}.get(
+            getattr(answer, "heat_is", "heat"), "Heat added and work put in"
+        )
         pair = end.fixed.pair
         law = "U at the end − U as fed" if pair.endswith("V") else "H at the end − H as fed"
         self.note.say(
-            f"Heat added = {law} = {quantity_text(Q, unit)}. "
+            f"{what} = {law} = {quantity_text(Q, unit)}. "
             "Enthalpies of formation are included; the elements at 298.15 K are the datum."
         )

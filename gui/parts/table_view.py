@@ -6,7 +6,7 @@ from PySide6.QtCore import QAbstractItemModel, Qt
 from PySide6.QtWidgets import QAbstractItemView, QHeaderView, QWidget
 
 from gui.tables.clipboard import CopyView
-from gui.theme import ROW_HEIGHT, sized
+from gui.theme import ROW_HEIGHT
 
 
 def plain_table(model: QAbstractItemModel, name: str, parent: QWidget | None = None) -> CopyView:
@@ -24,7 +24,6 @@ def plain_table(model: QAbstractItemModel, name: str, parent: QWidget | None = N
     view.verticalHeader().hide()
     view.verticalHeader().setDefaultSectionSize(ROW_HEIGHT)
     header = view.horizontalHeader()
-    header.setFont(sized(header.font(), "small"))
     header.setHighlightSections(False)
     header.setSectionsClickable(False)
     header.setFixedHeight(24)

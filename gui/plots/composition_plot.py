@@ -7,13 +7,14 @@ from dataclasses import dataclass
 import numpy as np
 import pyqtgraph as pg
 from PySide6.QtCore import QPointF, Qt, Signal
-from PySide6.QtGui import QColor, QFont, QKeyEvent, QPen
+from PySide6.QtGui import QColor, QFont, QFontMetricsF, QKeyEvent, QPen
 from PySide6.QtWidgets import QLabel, QVBoxLayout, QWidget
 
 from gui.colours import SpeciesColours
 from gui.line import Line, phase_changes, shown_keys
 from gui.plots.axes import FLOOR, PlainAxis, ShareAxis
 from gui.plots.end_labels import EndLabels
+from gui.plots.flags import Flag, Flags
 from gui.theme import Theme, mixed, sized
 from solver.project.units import from_si
 from solver.project.wording import formula_text, number_text, unit_text
@@ -47,13 +48,20 @@ class CompositionPlot(QWidget):
         self.axis = ShareAxis()
         self.labels = EndLabels()
         self.bottom = PlainAxis("bottom")
+        self.flags = Flags()
         self.view = pg.PlotWidget(
-            axisItems={"left": self.axis, "right": self.labels, "bottom": self.bottom}
+            axisItems={
+                "left": self.axis,
+                "right": self.labels,
+                "bottom": self.bottom,
+                "top": self.flags,
+            }
         )
         self.view.setAccessibleName("composition against temperature")
         self.view.setFocusPolicy(Qt.FocusPolicy.StrongFocus)
         item = self.view.getPlotItem()
         item.showAxis("right")
+        item.showAxis("top")
         item.setMenuEnabled(False)
         item.hideButtons()
         item.getViewBox().setMouseEnabled(x=True, y=True)
@@ -129,20 +137,21 @@ class CompositionPlot(QWidget):
         self._keys = shown_keys(self._line, self._log) if self._line is not None else []
         if self._line is None:
             self.labels.set_labels([], small)
+            self.flags.set_flags([], small)
             self._read(None)
             low, high = self._empty
             x = (float(self._x(low)), float(self._x(high)))
             item.getViewBox().setRange(xRange=x, yRange=(0, 100), padding=0)
             return
         self._draw_curves(item, small)
-        self._draw_changes(item, small)
-        self._draw_mark(item, small)
+        flags = [*self._draw_changes(item), *self._draw_mark(item)]
         pen = QPen(QColor(t.muted), 1)
         pen.setCosmetic(True)
         self._rule = pg.InfiniteLine(angle=90, pen=pen)
         self._rule.hide()
         item.addItem(self._rule, ignoreBounds=True)
         self._set_range(item)
+        self.flags.set_flags(flags, small)
         self._read(self._cursor)
 
     def _title(self) -> str:
@@ -173,57 +182,83 @@ class CompositionPlot(QWidget):
         line, labels = self._line, []
         assert line is not None
         x = self._x(line.T)
+        bold = QFont(font)
+        bold.setBold(True)
         for key in reversed(self._keys):
-            y = self._y(line.shares[:, line.keys.index(key)])
+            shares = line.shares[:, line.keys.index(key)]
+            if key in line.condensed:
+                shares = _while_there(shares)
+            y = self._y(shares)
             pen = QPen(self._colour(key), 2)
             pen.setCosmetic(True)
             pen.setStyle(self._colours.dash(key))
             item.plot(x, y, pen=pen, antialias=True, connect="finite")
-            good = np.isfinite(y)
-            if good.any():
-                colour = self._colours.label(key, self._theme.tokens)
-                labels.append((formula_text(key), float(y[good][-1]), colour))
+            good = np.flatnonzero(np.isfinite(y))
+            if not good.size:
+                continue
+            colour = self._colours.label(key, self._theme.tokens)
+            if good[-1] == _last(line.shares):
+                labels.append((formula_text(key), float(y[good[-1]]), colour))
+            else:
+                self._name_curve(item, bold, key, colour, y)
         self.labels.set_labels(labels, font)
 
-    def _draw_changes(self, item: pg.PlotItem, font: QFont) -> None:
-        t = self._theme.tokens
-        for T, words in phase_changes(self._line) if self._line else []:
-            rule = pg.InfiniteLine(
-                float(self._x(T)),
-                angle=90,
-                pen=QPen(QColor(t.line), 1, Qt.PenStyle.DashLine),
-                label=words,
-                labelOpts={
-                    "position": 0.98,
-                    "color": t.muted,
-                    "rotateAxis": (1, 0),
-                    "anchors": [(1.0, 1.0), (1.0, 1.0)],
-                },
-            )
-            rule.pen.setCosmetic(True)
-            rule.label.setFont(font)
-            item.addItem(rule, ignoreBounds=True)
+    def _name_curve(
+        self, item: pg.PlotItem, font: QFont, key: str, colour: QColor, y: np.ndarray
+    ) -> None:
+        """Name a phase that is gone before the end, beside its curve where there is most room."""
+        line = self._line
+        assert line is not None
+        x, top = self._x(line.T), np.nanmax(y)
+        others = np.stack(
+            [self._y(line.shares[:, line.keys.index(k)]) for k in self._keys if k != key]
+            or [np.full_like(y, np.nan)]
+        )
+        floor, ceiling = self._range()
+        if top < floor + 0.04 * (ceiling - floor):
+            return  # too low to tell; the strip above and the read-out name it
+        above = np.nanmin(np.where(others >= y, others, ceiling), axis=0) - y
+        below = y - np.nanmax(np.where(others < y, others, floor), axis=0)
+        width = QFontMetricsF(font).horizontalAdvance(key) / max(self.view.width() - 180, 100)
+        reach = max(round(width * len(y)), 1)
+        above, below = _least_near(above, reach), _least_near(below, reach)
+        near_top = np.isfinite(y) & (y >= floor + 0.85 * (top - floor))
+        room = np.where(near_top, np.maximum(above, 0.8 * below), -np.inf)
+        at = int(np.argmax(room))
+        up = above[at] >= 0.8 * below[at]
+        ground = QColor(self._theme.tokens.panel)
+        ground.setAlpha(200)
+        text = pg.TextItem(
+            formula_text(key),
+            color=colour,
+            anchor=((x[at] - x[0]) / (x[-1] - x[0]), 1.0 if up else 0.0),
+            fill=ground,
+        )
+        text.setFont(font)
+        item.addItem(text, ignoreBounds=True)
+        text.setPos(x[at], y[at])
 
-    def _draw_mark(self, item: pg.PlotItem, font: QFont) -> None:
+    def _draw_changes(self, item: pg.PlotItem) -> list[Flag]:
+        """Rules where phases come and go, named in the strip above."""
+        t, flags = self._theme.tokens, []
+        for T, words in phase_changes(self._line) if self._line else []:
+            x = float(self._x(T))
+            self._rule_at(item, x, t.line)
+            flags.append(Flag(x, words, QColor(t.muted)))
+        return flags
+
+    def _rule_at(self, item: pg.PlotItem, x: float, colour: str) -> None:
+        pen = QPen(QColor(colour), 1, Qt.PenStyle.DashLine)
+        pen.setCosmetic(True)
+        item.addItem(pg.InfiniteLine(x, angle=90, pen=pen), ignoreBounds=True)
+
+    def _draw_mark(self, item: pg.PlotItem) -> list[Flag]:
+        """The current case as dots on its rule."""
         line, mark, t = self._line, self._mark, self._theme.tokens
         if mark is None or line is None or not line.T[0] <= mark.T <= line.T[-1]:
-            return
+            return []
         x = float(self._x(mark.T))
-        pen = QPen(QColor(t.accent), 1, Qt.PenStyle.DashLine)
-        pen.setCosmetic(True)
-        rule = pg.InfiniteLine(
-            x,
-            angle=90,
-            pen=pen,
-            label="this case",
-            labelOpts={
-                "position": 0.97,
-                "color": t.accent,
-                "anchors": [(0.0, 0.5), (1.0, 0.5)],
-            },
-        )
-        rule.label.setFont(font)
-        item.addItem(rule, ignoreBounds=True)
+        self._rule_at(item, x, t.accent)
         spots = [
             {
                 "pos": (x, float(self._y(np.array(mark.shares[key])))),
@@ -235,18 +270,22 @@ class CompositionPlot(QWidget):
             if key in mark.shares
         ]
         item.addItem(pg.ScatterPlotItem(spots, pxMode=True), ignoreBounds=True)
+        return [Flag(x, "this case", QColor(t.accent))]
 
-    def _set_range(self, item: pg.PlotItem) -> None:
+    def _range(self) -> tuple[float, float]:
+        """The lowest and the highest y that the plot begins with."""
         line = self._line
         assert line is not None
-        x = self._x(line.T)
         if self._log:
-            y = (FLOOR + 2.0, 2.6)  # room above 100 % for the label of the case
-        else:
-            at = [line.keys.index(k) for k in self._keys]
-            top = float(np.nan_to_num(line.shares[:, at]).max()) * 100 if at else 1.0
-            y = (0.0, top * 1.12 if top > 0 else 1.0)
-        item.getViewBox().setRange(xRange=(x[0], x[-1]), yRange=y, padding=0)
+            return FLOOR + 2.0, 2.1
+        at = [line.keys.index(k) for k in self._keys]
+        top = float(np.nan_to_num(line.shares[:, at]).max()) * 100 if at else 1.0
+        return 0.0, top * 1.05 if top > 0 else 1.0
+
+    def _set_range(self, item: pg.PlotItem) -> None:
+        assert self._line is not None
+        x = self._x(self._line.T)
+        item.getViewBox().setRange(xRange=(x[0], x[-1]), yRange=self._range(), padding=0)
 
     # -- reading out
 
@@ -314,3 +353,24 @@ class CompositionPlot(QWidget):
         right = corner.x() + 12 + self.note.width() < area.right()
         left = corner.x() + 12 if right else corner.x() - 12 - self.note.width()
         self.note.move(int(left), area.top() + 6)
+
+
+def _while_there(shares: np.ndarray) -> np.ndarray:
+    """A condensed phase's share, NaN where there is none but for the points next to it."""
+    there = shares > 0.0
+    near = there.copy()
+    near[1:] |= there[:-1]
+    near[:-1] |= there[1:]
+    return np.where(near, shares, np.nan)
+
+
+def _least_near(values: np.ndarray, reach: int) -> np.ndarray:
+    """The least within `reach` points to either side, NaN aside."""
+    padded = np.pad(np.nan_to_num(values, nan=np.inf), reach, constant_values=np.inf)
+    return np.lib.stride_tricks.sliding_window_view(padded, 2 * reach + 1).min(axis=1)
+
+
+def _last(shares: np.ndarray) -> int:
+    """The last point that was settled."""
+    good = np.flatnonzero(np.isfinite(shares).any(axis=1))
+    return int(good[-1]) if good.size else -1

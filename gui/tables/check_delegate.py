@@ -6,7 +6,7 @@ from PySide6.QtCore import QEvent, QModelIndex, QPointF, QRect, Qt
 from PySide6.QtGui import QColor, QMouseEvent, QPainter, QPen, QPolygonF
 from PySide6.QtWidgets import QStyleOptionViewItem
 
-from gui.tables.delegates import CellDelegate
+from gui.tables.delegates import PAD, CellDelegate
 
 _BOX = 14
 
@@ -18,7 +18,7 @@ class CheckDelegate(CellDelegate):
         """Box, mark, then the text moved to the right."""
         state = index.data(Qt.ItemDataRole.CheckStateRole)
         if state is None:
-            super().text(painter, option, index)
+            self._name_and_remark(painter, option, index)
             return
         t = self.theme.tokens
         on = state == Qt.CheckState.Checked
@@ -37,6 +37,18 @@ class CheckDelegate(CellDelegate):
         moved = QStyleOptionViewItem(option)
         moved.rect = option.rect.adjusted(_BOX + 6, 0, 0, 0)
         super().text(painter, moved, index)
+
+    def _name_and_remark(
+        self, painter: QPainter, option: QStyleOptionViewItem, index: QModelIndex
+    ) -> None:
+        """The name takes the room that its own remark leaves."""
+        name = QStyleOptionViewItem(option)
+        remark = index.siblingAtColumn(2)
+        if remark.data():
+            super().text(painter, option, remark)
+            taken = option.fontMetrics.horizontalAdvance(remark.data()) + 3 * PAD
+            name.rect = option.rect.adjusted(0, 0, -taken, 0)
+        super().text(painter, name, index)
 
     def editorEvent(self, event, model, option, index) -> bool:  # type: ignore[no-untyped-def]
         """Toggle on release of the left button."""

@@ -19,7 +19,7 @@ from gui.session import Session
 from gui.tables import clipboard
 from gui.tables.delegates import CellDelegate, EditDelegate
 from gui.tables.stream_model import AMOUNT, SHARE, SPECIES, UNIT, StreamModel
-from gui.theme import ROW_HEIGHT, Theme, sized
+from gui.theme import ROW_HEIGHT, Theme
 
 _HEADER = 22
 
@@ -64,7 +64,6 @@ class StreamView(QTableView):
         self.verticalHeader().setDefaultSectionSize(ROW_HEIGHT)
         self.verticalHeader().setMinimumSectionSize(ROW_HEIGHT)
         header = self.horizontalHeader()
-        header.setFont(sized(header.font(), "small"))
         header.setHighlightSections(False)
         header.setFixedHeight(_HEADER)
         header.setSectionsClickable(False)

@@ -26,6 +26,9 @@ SHOWN: Final = 1e-6
 NEAR: Final = 1e-3
 """Activity from which a condensed species that did not form is printed."""
 
+LARGE: Final = 1e5
+"""kJ or kW from which MJ or MW are printed."""
+
 
 class _Console(Console):
     def on_broken_pipe(self) -> None:
@@ -110,7 +113,10 @@ def _heat(answer: CaseAnswer) -> str:
     way = "taken up" if answer.heat > 0 else "given off"
     if answer.heat_is == "work":
         way = "put in, reversible" if answer.heat > 0 else "gained, reversible"
-    return f"{units.quantity_text(answer.heat / 1e3, unit)} ({way})"
+    value = answer.heat / 1e3
+    if abs(value) >= LARGE:
+        value, unit = value / 1e3, f"M{unit[1:]}"
+    return f"{units.quantity_text(value, unit)} ({way})"
 
 
 def _small(value: float) -> str:
@@ -168,6 +174,10 @@ def _print_restrictions(out: Console, answer: CaseAnswer) -> None:
             price = "its cost could not be settled"
         elif abs(cost.energy) <= rounding:
             price = "costs nothing" + (" while the others hold" if len(costs) > 1 else "")
+        elif cost.energy < 0:
+            # Beside a reaction held off its equilibrium another restriction may help.
+            size = units.quantity_text(-cost.energy / 1e3, unit)
+            price = f"saves {size} of {cost_is(answer)} while the others hold"
         else:
             price = f"costs {units.quantity_text(cost.energy / 1e3, unit)} of {cost_is(answer)}"
         out.print(f"  held    {typeset(one_line(cost.restriction))}; {price}")

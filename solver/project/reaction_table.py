@@ -10,8 +10,12 @@ from solver.project import units
 from solver.project.case import CaseAnswer
 from solver.project.wording import MINUS, one_line
 from solver.reactions import Figures, ReactionsView
+from solver.restrictions import Inert
 
 _SPANS = ("extent", "ln K", "Q/K", "ΔH(T)", "ΔG(T)", f"T {MINUS} T(K = Q)")
+
+ROUNDING = 1e-9
+"""ln K, or kJ/mol, below which a figure is none."""
 
 
 def print_reactions(out: Console, answer: CaseAnswer, view: ReactionsView) -> None:
@@ -54,6 +58,8 @@ def print_reactions(out: Console, answer: CaseAnswer, view: ReactionsView) -> No
         rest = sorted(view.extents.unexplained.items(), key=lambda item: -abs(item[1]))
         worst = ", ".join(f"{sp.key} {units.quantity_text(n * factor, unit)}" for sp, n in rest[:4])
         out.print(f"  note    not explained by these reactions: {worst}")
+    if any(isinstance(held, Inert) for held in answer.prepared.restrictions):
+        out.print("  note    Q counts what is held inert too")
     if view.left_out:
         most = max(view.left_out, key=lambda key: view.left_out[key])
         amount = units.quantity_text(view.left_out[most] * factor, unit)
@@ -64,13 +70,16 @@ def print_reactions(out: Console, answer: CaseAnswer, view: ReactionsView) -> No
 
 
 def _row(figures: Figures, factor: float) -> tuple[str, ...]:
-    number = units.number_text
+    def number(value: float) -> str:
+        # What a reaction at K = 1 leaves of ln K and ΔG is rounding.
+        return units.number_text(0.0 if abs(value) < ROUNDING else value)
+
     off = figures.approach.approach
     return (
         f"  {one_line(figures.reaction.text)}",
-        "–" if figures.extent is None else number(figures.extent * factor),
+        "–" if figures.extent is None else units.number_text(figures.extent * factor),
         number(figures.ln_k),
-        "–" if figures.q_over_k is None else number(figures.q_over_k),
+        "–" if figures.q_over_k is None else units.number_text(figures.q_over_k),
         number(figures.dh / 1e3),
         number(figures.dg / 1e3),
         "–" if off is None else difference_text(off),

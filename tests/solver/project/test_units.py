@@ -8,7 +8,7 @@ import pint
 import pytest
 
 from solver.errors import InputError
-from solver.project import units
+from solver.project import units, wording
 from solver.project.model import Quantity
 from solver.project.unit_table import KINDS, NORMAL_MOLES, STANDARD_MOLES, TABLE, UNIONS
 
@@ -262,3 +262,17 @@ def test_pint_stays_unloaded_for_the_common_units():
     )
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
     assert done.stdout.split()[0] == "False"
+
+
+@pytest.mark.parametrize(
+    ("plain", "shown"),
+    [
+        ("so little enthalpy (-1.86463e+08);", "so little enthalpy (−1.86463 × 10⁸);"),
+        ("The vessel of 1e-05 m3 is", "The vessel of 1 × 10⁻⁵ m³ is"),
+        ("held at K(T - 8 K)", "held at K(T − 8 K)"),
+        ("C4H10(1-butene) and 2e5x", "C4H10(1-butene) and 2e5x"),
+        ("0.5 m3", "0.5 m³"),
+    ],
+)
+def test_sentences_of_the_solver_are_typeset(plain, shown):
+    assert wording.typeset(plain) == shown

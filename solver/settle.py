@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 
 import species_db
 from solver.core.cases import Feed
-from solver.core.minimise import NotHeld, Unsettled
+from solver.core.minimise import NotHeld, Unsettled, check_room
 from solver.core.mixture import Held, Mixture, R
 from solver.core.temperature import OutOfReach, Point, Search, find_temperature, point_at
 from solver.core.vessel import TooSmall
@@ -79,6 +79,9 @@ def settle(
     scaled = Feed(posed.feed.amounts * scale, posed.feed.vectors)
     try:
         point = _find(mixture, scaled, fixed, scale)
+        if PAIRS[fixed.pair].holds_volume:
+            V = fixed.values[1] * scale
+            check_room(mixture, scaled, point.T, point.n, point.p, V)
     except LOST as error:
         raise explained(mixture, PAIRS[fixed.pair], fixed.values, error, scale) from None
     end = _end_state(posed, species, scaled, point, fixed, gas, scale)

@@ -10,10 +10,13 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from solver.core.batch import minimise_many
-from solver.core.batch_temperature import Found, Searches, find_temperatures
+from solver.core.batch_temperature import find_temperatures
 from solver.core.cases import Cases, Feed
+from solver.core.minimise import CRUSHING, check_room
 from solver.core.mixture import Mixture, R
+from solver.core.searches import Found, Searches
 from solver.core.totals import totals
+from solver.core.vessel import TooSmall
 from solver.endstates import EndStates
 from solver.errors import InputError, SettleError
 from solver.fed import MOST, check_gas
@@ -244,6 +247,8 @@ def _settle_chunk(
     else:
         search = Searches(pair.searched, values, p, V, T_LOWEST, T_HIGHEST)
         found = find_temperatures(mixture, feed, search, features)
+    if V is not None:
+        _check_rooms(mixture, feed, found, V)
     for i, error in found.why.items():
         pair_values = (float(first[i]), float(second[i]))
         why[int(rows[i])] = str(explained(mixture, pair, pair_values, error, float(scale[i])))
@@ -280,6 +285,17 @@ def _settle_chunk(
             ok
         ]
     out.amounts[good] = amounts
+
+
+def _check_rooms(mixture: Mixture, feed: Feed, found: Found, V: Array) -> None:
+    """Mark the vessels that are smaller than what must stay condensed in them."""
+    for i in np.flatnonzero(found.found & (found.p > CRUSHING)):
+        one = feed.of(np.array([i]))
+        try:
+            check_room(mixture, one, float(found.T[i]), found.n[i], float(found.p[i]), float(V[i]))
+        except TooSmall as error:
+            found.why[int(i)] = error
+            found.found[i] = False
 
 
 def _features(feed: Feed, pair: Pair, values: Array, p: Array | None, V: Array | None) -> Array:

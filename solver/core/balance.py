@@ -116,7 +116,7 @@ class GasSolution:
     closed: NDArray[np.bool_]
     iterations: int
 
-    def put(self, index: NDArray[np.intp], state: _State) -> None:
+    def put(self, index: NDArray[np.intp], state: State) -> None:
         """Fill in the cases that were iterated on."""
         self.n[index], self.log_a[index] = state.n, state.log_a
         self.nu[index], self.w[index] = state.nu, state.w
@@ -149,14 +149,14 @@ def solve_balances(
         Where condensed phases share the volume.
     """
     cases, m = b.shape
-    state = _State(system, kappa, b, log_a, nu, nu_limit, vessel)
+    state = State(system, kappa, b, log_a, nu, nu_limit, vessel)
     if m + system.extra == 0:
         return state.solution(np.ones(cases, dtype=bool), 0)
     with np.errstate(all="ignore"):  # infinities are looked for, and mended or given up
         return _iterate(state, cases)
 
 
-def _iterate(state: _State, cases: int) -> GasSolution:
+def _iterate(state: State, cases: int) -> GasSolution:
     whole = None  # results of all cases, once some have been set aside
     index = np.arange(cases)
     closed_all = np.zeros(cases, dtype=bool)
@@ -184,7 +184,7 @@ def _iterate(state: _State, cases: int) -> GasSolution:
     return whole
 
 
-class _State:
+class State:
     """Unknowns, residuals and slopes of the cases that are still being iterated."""
 
     def __init__(
@@ -332,9 +332,9 @@ class _State:
         self.settled = self.settled | certain
         return certain
 
-    def part(self, keep: NDArray[np.bool_]) -> _State:
+    def part(self, keep: NDArray[np.bool_]) -> State:
         """The cases that go on."""
-        out = object.__new__(_State)
+        out = object.__new__(State)
         out.__dict__.update(self.__dict__)
         for name, value in self.__dict__.items():
             if isinstance(value, np.ndarray):

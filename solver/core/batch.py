@@ -142,7 +142,7 @@ def minimise_many(cases: Cases, features: Array, start: Minima | None = None) ->
         _exchange_all(cases, known, out)
     else:
         for i in spread(features, _SEEDS):
-            _settle_one(cases, int(i), out)
+            settle_one(cases, int(i), out)
         if _is_line(features):  # a coarse pass gives the rest near neighbours
             _settle_together(cases, np.arange(len(cases))[::_COARSE], features, out)
     # what a neighbour's start does not reach may be reached from a nearer neighbour
@@ -154,7 +154,7 @@ def minimise_many(cases: Cases, features: Array, start: Minima | None = None) ->
         still = _waiting(out)
         if still.size and (still.size > 0.5 * left.size or still.size < 4):
             for i in still[spread(features[still], _AT_ONCE)]:
-                _settle_one(cases, int(i), out)
+                settle_one(cases, int(i), out)
     return out
 
 
@@ -178,7 +178,7 @@ def _settle_together(cases: Cases, which: Indices, features: Array, out: Minima)
     settled = np.flatnonzero(out.found)
     if not settled.size or not which.size:
         return
-    from scipy.spatial import cKDTree
+    from scipy.spatial import cKDTree  # slow to import
 
     distance, nearest = cKDTree(features[settled]).query(features[which])
     near = np.asarray(nearest, dtype=np.intp)
@@ -190,12 +190,16 @@ def _settle_together(cases: Cases, which: Indices, features: Array, out: Minima)
     out.nu[target] = out.nu[source] + np.log(cases.atoms[target] / cases.atoms[source])
     far = which[~close]
     if far.size:
-        far = _from_vertices(cases, far, out, settled[near[~close]])
+        far = to_vertices(cases, far, out, settled[near[~close]])
+        gather(cases, far, out)
     _exchange_all(cases, np.concatenate([target, far]), out)
 
 
-def _from_vertices(cases: Cases, which: Indices, out: Minima, near: Indices) -> Indices:
-    """Give cases the set of the best vertex, walking from that of a settled neighbour."""
+def to_vertices(cases: Cases, which: Indices, out: Minima, near: Indices) -> Indices:
+    """Give cases the set of their best vertex, walking there from that of another case.
+
+    Returns the cases that arrived.
+    """
     c = cases.c[which]
     log_p = np.zeros(len(which))
     if not cases.holds_pressure:
@@ -208,14 +212,10 @@ def _from_vertices(cases: Cases, which: Indices, out: Minima, near: Indices) -> 
         rows = np.flatnonzero(out.of[near] == number)
         for part, vertex, amounts in walk(cases, which[rows], c[rows], out.sets[number][1]):
             placed += _place(cases, which, rows[part], vertex, amounts, c, log_p, out)
-    if not placed:
-        return np.zeros(0, dtype=np.intp)
-    target = np.concatenate(placed)
-    _gather(cases, target, out)
-    return target
+    return np.concatenate(placed) if placed else np.zeros(0, dtype=np.intp)
 
 
-def _gather(cases: Cases, which: Indices, out: Minima) -> None:
+def gather(cases: Cases, which: Indices, out: Minima) -> None:
     """Let cases of rare components join a large group whose components are not scarce.
 
     A pass costs the same for one case as for many, and any abundant components will do.
@@ -294,7 +294,7 @@ def spread(features: Array, count: int) -> Indices:
     return np.unique(chosen)
 
 
-def _settle_one(cases: Cases, i: int, out: Minima) -> None:
+def settle_one(cases: Cases, i: int, out: Minima) -> None:
     """Settle one case by itself, cold."""
     held = Held(
         float(cases.T[i]),
@@ -323,11 +323,11 @@ def _exchange_all(cases: Cases, which: Indices, out: Minima) -> None:
             for rows, solved in solve_set(
                 cases, group, active, basis, out.log_a[group], out.nu[group]
             ):
-                onward += _judge(cases, group[rows], active, solved, out)
+                onward += judge(cases, group[rows], active, solved, out)
         going = np.concatenate(onward) if onward else np.zeros(0, dtype=np.intp)
 
 
-def _judge(
+def judge(
     cases: Cases, which: Indices, active: tuple[int, ...], solved: Solved, out: Minima
 ) -> list[Indices]:
     """Accept the right ones; give the others their next set. Returns those that go on."""

@@ -2,100 +2,26 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numpy as np
 from numpy.typing import NDArray
 
-from solver.core.batch import Minima, minimise_many, spread
+from solver.core.batch import Minima, minimise_many
 from solver.core.cases import Cases, Feed
 from solver.core.minimise import NotHeld, Unsettled
 from solver.core.mixture import Mixture, R
 from solver.core.response import by_log_T
-from solver.core.temperature import OutOfReach, Point, Search, find_temperature, heat_capacity
+from solver.core.searches import Found, Searches
+from solver.core.temperature import OutOfReach, find_temperature, heat_capacity
+from solver.core.together import find_together
 from solver.core.totals import totals
 from solver.core.vessel import TooSmall
 
 Array = NDArray[np.float64]
 Indices = NDArray[np.intp]
 
-_SEEDS = 6
 _MAX_EVALUATIONS = 30
 _CLOSED = 2e-13
 _SETTLED_NEAR = 40  # cases up to this many are not worth a pass of their own
-
-
-@dataclass(frozen=True)
-class Searches:
-    """What is searched in many cases: the variable, its values, and what is held beside.
-
-    Attributes
-    ----------
-    variable : str
-        "H", "U" or "S".
-    values : ndarray, shape (cases,)
-    p, V : ndarray, shape (cases,), or None
-    T_low, T_high : float
-    """
-
-    variable: str
-    values: Array
-    p: Array | None
-    V: Array | None
-    T_low: float
-    T_high: float
-
-    def one(self, i: int) -> Search:
-        """The search of one case."""
-        return Search(
-            self.variable,
-            float(self.values[i]),
-            None if self.p is None else float(self.p[i]),
-            None if self.V is None else float(self.V[i]),
-            self.T_low,
-            self.T_high,
-        )
-
-    def cases(self, mixture: Mixture, feed: Feed, which: Indices, T: Array) -> Cases:
-        """Some cases at given temperatures."""
-        p = None if self.p is None else self.p[which]
-        V = None if self.V is None else self.V[which]
-        return Cases(mixture, feed.of(which), T, p, V)
-
-
-@dataclass
-class Found:
-    """Points of many cases, filled in as they are found."""
-
-    T: Array
-    p: Array
-    n: Array
-    potentials: Array
-    functions: dict[str, Array]
-    """V, H, U, S and G, each (cases,)."""
-    found: NDArray[np.bool_]
-    why: dict[int, Exception]
-
-    @classmethod
-    def none_of(cls, mixture: Mixture, count: int) -> Found:
-        """Nothing found yet."""
-        return cls(
-            T=np.full(count, np.nan),
-            p=np.full(count, np.nan),
-            n=np.full((count, len(mixture.species)), np.nan),
-            potentials=np.full((count, mixture.A.shape[1]), np.nan),
-            functions={name: np.full(count, np.nan) for name in ("V", "H", "U", "S", "G")},
-            found=np.zeros(count, dtype=bool),
-            why={},
-        )
-
-    def put(self, i: int, point: Point) -> None:
-        """Take one case settled by itself."""
-        self.T[i], self.p[i], self.n[i] = point.T, point.p, point.n
-        self.potentials[i] = point.potentials
-        for name, values in self.functions.items():
-            values[i] = point.value(name)
-        self.found[i] = True
 
 
 def find_temperatures(mixture: Mixture, feed: Feed, search: Searches, features: Array) -> Found:
@@ -108,9 +34,11 @@ def find_temperatures(mixture: Mixture, feed: Feed, search: Searches, features: 
     """
     count = len(search.values)
     out = Found.none_of(mixture, count)
-    T = _first_temperatures(mixture, feed, search, features, out)
-    going = np.flatnonzero(~out.found)
-    going = going[[int(i) not in out.why for i in going]]
+    T = np.full(count, 1000.0)
+    going = np.arange(count)
+    if count > _SETTLED_NEAR:
+        going, first = find_together(mixture, feed, search, features, going, out)
+        T[going] = first
     if going.size > _SETTLED_NEAR:
         going = _newton(mixture, feed, search, features, T, going, out)
     for i in going:
@@ -120,37 +48,12 @@ def find_temperatures(mixture: Mixture, feed: Feed, search: Searches, features: 
 
 def _settle_one(
     mixture: Mixture, feed: Feed, search: Searches, i: int, T: float, out: Found
-) -> float | None:
-    """Settle one case by itself; returns its heat capacity where it is no transition."""
+) -> None:
+    """Settle one case by itself."""
     try:
-        point = find_temperature(mixture, feed.of(np.array([i])), search.one(i), T)
+        out.put(i, find_temperature(mixture, feed.of(np.array([i])), search.one(i), T))
     except (NotHeld, OutOfReach, TooSmall, Unsettled, np.linalg.LinAlgError) as error:
         out.why[i] = error
-        return None
-    out.put(i, point)
-    return point.slope
-
-
-def _first_temperatures(
-    mixture: Mixture, feed: Feed, search: Searches, features: Array, out: Found
-) -> Array:
-    """Settle a few spread cases; the others start from the nearest one's temperature."""
-    count = len(search.values)
-    T = np.full(count, 1000.0)
-    slopes = np.full(count, np.nan)
-    size = np.abs(feed.totals).sum(axis=1)
-    for i in spread(features, min(_SEEDS, count)):
-        slope = _settle_one(mixture, feed, search, int(i), float(T.mean()), out)
-        if slope is not None:
-            slopes[i] = slope / size[i]
-    seeds = np.flatnonzero(out.found & np.isfinite(slopes))
-    if not seeds.size:
-        return T
-    distance = ((features[:, None, :] - features[seeds]) ** 2).sum(axis=2)
-    near = seeds[distance.argmin(axis=1)]
-    step = (search.values / size - search.values[near] / size[near]) / slopes[near]
-    T = np.clip(out.T[near] + step, 0.7 * out.T[near], 1.4 * out.T[near])
-    return np.asarray(np.clip(T, search.T_low, search.T_high))
 
 
 def _newton(

@@ -28,7 +28,7 @@ Array = NDArray[np.float64]
 _MAX_ROUNDS = 80
 _VACUUM = 1e-20  # Pa; no gas feels it
 # Pa; liquids of fixed volume and an ideal gas say nothing of a vessel pressed together so far
-_CRUSHING, _CALM = 1e9, 1e7
+CRUSHING, _CALM = 1e9, 1e7
 _FIRST = np.zeros(1, dtype=np.intp)
 
 
@@ -101,14 +101,6 @@ def minimise(mixture: Mixture, feed: Feed, held: Held, start: Present | None = N
     """
     if held.V is not None and not mixture.gas.size:
         return _without_gas(mixture, feed, held)
-    found = _found(mixture, feed, held, start)
-    if held.V is not None and found.p > _CRUSHING and found.n @ mixture.volume > 0.5 * held.V:
-        calm = minimise(mixture, feed, Held(held.T, p=_CALM))
-        raise TooSmall(float(calm.n @ mixture.volume))
-    return found
-
-
-def _found(mixture: Mixture, feed: Feed, held: Held, start: Present | None) -> Minimum:
     case = Cases(
         mixture,
         feed,
@@ -128,6 +120,25 @@ def _found(mixture: Mixture, feed: Feed, held: Held, start: Present | None) -> M
         if held.V is None:
             raise
     return _by_pressure(case, held)
+
+
+def check_room(mixture: Mixture, feed: Feed, T: float, n: Array, p: float, V: float) -> None:
+    """Refuse an end state that holds its volume only by crushing what is condensed in it.
+
+    Parameters
+    ----------
+    n : ndarray, shape (species,)
+        Amounts found at T (K) and p (Pa) in the vessel V (m3).
+
+    Raises
+    ------
+    TooSmall
+    """
+    if p > CRUSHING and float(n @ mixture.volume) > 0.5 * V:
+        calm = minimise(mixture, feed, Held(T, p=_CALM))
+        needed = float(calm.n @ mixture.volume)
+        if needed > V:
+            raise TooSmall(needed)
 
 
 def _by_pressure(case: Cases, held: Held) -> Minimum:
@@ -152,7 +163,7 @@ def _without_gas(mixture: Mixture, feed: Feed, held: Held) -> Minimum:
     assert held.V is not None
     found = minimise(mixture, feed, Held(held.T, p=_VACUUM))
     needed = float(found.n @ mixture.volume)
-    if needed > held.V:
+    if needed > held.V * (1.0 + 1e-12):
         raise TooSmall(needed)
     return replace(found, p=0.0)
 

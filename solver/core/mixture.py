@@ -19,6 +19,7 @@ Array = NDArray[np.float64]
 
 R = 8.314462618
 P0 = 1.0e5  # Pa, standard pressure
+_COLDEST = 100.0  # K; a search may pass where T + dT has no meaning
 
 
 @dataclass(frozen=True, eq=False)
@@ -76,7 +77,7 @@ class Mixture:
             keys = [shift.key for shift in self.shifts]
             wanted = np.column_stack(
                 [
-                    (self.thermo.over(T + shift.dT)[0] - at_T) @ shift.numbers
+                    (self.thermo.over(np.maximum(T + shift.dT, _COLDEST))[0] - at_T) @ shift.numbers
                     for shift in self.shifts
                 ]
             )

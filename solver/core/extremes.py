@@ -33,7 +33,10 @@ def shortest(J: Array, F: Array) -> Array:
 
 def _one_by_one(J: Array, F: Array) -> Array:
     ridge = 1e-14 * np.eye(J.shape[1])
-    return np.asarray(-np.linalg.solve(J + ridge, F[:, :, None])[:, :, 0])
+    try:
+        return np.asarray(-np.linalg.solve(J + ridge, F[:, :, None])[:, :, 0])
+    except np.linalg.LinAlgError:  # one is singular to the last digit
+        return np.array([shortest(one, right) for one, right in zip(J, F, strict=True)])
 
 
 def _eliminate(J: Array, F: Array) -> Array:

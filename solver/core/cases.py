@@ -99,7 +99,7 @@ class Cases:
         return np.where(left > 0.0, p, np.where(gas > 0.0, np.inf, 0.0))
 
     def members(self, active: Sequence[int], amounts: Array) -> list[int]:
-        """Components for amounts (species,): active condensed phases, then abundant gases."""
+        """Components: active condensed phases, then gases by amounts (or their ln) (species,)."""
         gases = self.gas[np.argsort(-amounts[self.gas], kind="stable")]
         rest = self.condensed[np.argsort(-amounts[self.condensed], kind="stable")]
         taken = set(active)

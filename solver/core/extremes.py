@@ -13,6 +13,7 @@ if TYPE_CHECKING:
 Array = NDArray[np.float64]
 
 _WILD = 1e4
+_LOG_FAINT = -550.0
 _MANY = 24  # cases from which eliminating all of them side by side beats one by one
 
 
@@ -92,7 +93,9 @@ def rescale(
         column = system.reactions[:, row]
         up = _log_sum(log_n[case], column, effect, -b[case, row])
         down = _log_sum(log_n[case], -column, effect, b[case, row])
-        F[case, row] = up[0] - down[0]
+        rest = up[0] - down[0]
+        # of amounts that underflow, nine digits are as good as all
+        F[case, row] = 0.0 if max(up[0], down[0]) < _LOG_FAINT and abs(rest) < 1e-9 else rest
         J[case, row] = up[1] - down[1]
     if system.extra:
         for case in np.flatnonzero(rows.any(axis=1)):

@@ -303,9 +303,10 @@ def restart(
     case: Cases, active: Sequence[int], n: Array, force: Array, scale: float
 ) -> tuple[Basis, Array, float]:
     """Components, log_a (components,) and nu for a changed set, from amounts n (species,)."""
-    scarce = np.exp(np.clip(force, -650.0, 650.0)) * 1e-40 * scale
-    basis = case.mixture.basis(case.members(active, np.where(n > 0.0, n, scarce)))
-    log_a = np.maximum(force[list(basis.members)], -650.0)
+    # scarce ones by their activity, which does not underflow as amounts do
+    preference = np.where(n > 0.0, np.log(np.where(n > 0.0, n, 1.0)), force - 800.0)
+    basis = case.mixture.basis(case.members(active, preference))
+    log_a = force[list(basis.members)].copy()
     total = float(n[case.gas].sum())
     nu = float(np.log(total)) if total > 0.0 else float(np.log(scale)) - 30.0
     return basis, log_a, nu
@@ -315,10 +316,15 @@ def _with_good_components(
     case: Cases, active: Sequence[int], basis: Basis, log_a: Array, nu: float
 ) -> Solved:
     """Solve one set, changing the components until they are the abundant species."""
+    scale, lost = float(case.scale[0]), False
     for _ in range(8):
         ((_, solved),) = solve_set(case, _FIRST, active, basis, log_a[None, :], np.array([nu]))
         if not solved.closed[0]:
-            raise _Stuck(solved.y[0])
+            basis, log_a, nu = restart(case, active, solved.n[0], solved.force[0], scale)
+            if lost or basis.members == solved.basis.members or not np.all(np.isfinite(log_a)):
+                raise _Stuck(solved.y[0])
+            lost = True  # once more, over the components that have become abundant
+            continue
         if solved.well_based[0]:
             break
         basis, log_a, nu = restart(case, active, solved.n[0], solved.force[0], float(case.scale[0]))

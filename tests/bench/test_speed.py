@@ -5,6 +5,8 @@
 
 from __future__ import annotations
 
+import subprocess
+import sys
 from collections.abc import Callable
 from functools import cache
 
@@ -85,23 +87,78 @@ def test_settle_energy(benchmark, pair: str, values: tuple[str, str]):
     assert end.proof.energy_residual <= 1e-10
 
 
-BATCHES = {"gas": False, "gas and graphite": True}
+CASES = 1000
 
 
-@pytest.mark.parametrize("name", BATCHES)
-@pytest.mark.benchmark(warmup=True, warmup_iterations=1, min_rounds=3, max_time=3.0)
-def test_settle_many(benchmark, name: str):
-    """A thousand unordered cases in one call: random temperature and feed."""
-    problem = mixture(BATCHES[name])
-    species, cases = list(problem.species), 1000
+def batch(with_graphite: bool, kind: str):
+    """Arguments of settle_many: a thousand unordered cases, or a line in temperature."""
+    problem = mixture(with_graphite)
+    species = list(problem.species)
     rng = np.random.default_rng(11)
-    T = rng.uniform(700.0, 2500.0, cases)
-    p = np.full(cases, problem.p)
-    feeds = {s: n * rng.uniform(0.3, 1.0, cases) for s, n in problem.feed.items()}
-    ends = benchmark(lambda: solver.settle_many(species, feeds, "T,p", T, p))
+    if kind == "T,p line":
+        T = np.linspace(700.0, 2500.0, CASES)
+        return species, problem.feed, "T,p", T, np.full(CASES, problem.p)
+    T = rng.uniform(700.0, 2500.0, CASES)
+    p = np.full(CASES, problem.p)
+    feeds = {s: n * rng.uniform(0.3, 1.0, CASES) for s, n in problem.feed.items()}
+    if kind == "T,p":
+        return species, feeds, "T,p", T, p
+    ends = solver.settle_many(species, feeds, "T,p", T, p)
+    if kind == "H,p":
+        return species, feeds, "H,p", ends.H, p
+    return species, feeds, "U,V", ends.U, ends.V
+
+
+@pytest.mark.parametrize("with_graphite", [False, True], ids=["gas", "gas and graphite"])
+@pytest.mark.parametrize("kind", ["T,p", "T,p line", "H,p", "U,V"])
+@pytest.mark.benchmark(warmup=True, warmup_iterations=1, min_rounds=5, max_time=3.0)
+def test_settle_many(benchmark, kind: str, with_graphite: bool):
+    """A thousand cases in one call."""
+    species, feeds, pair, X, Y = batch(with_graphite, kind)
+    ends = benchmark(lambda: solver.settle_many(species, feeds, pair, X, Y))
     assert ends.settled.all()
-    for i in range(0, cases, 97):
+    names = solver.PAIRS[pair].variables
+    for i in range(0, CASES, 97):
         one = solver.settle(
-            species, {s: n[i] for s, n in feeds.items()}, solver.Fixed("T,p", T=T[i], p=p[i])
+            species,
+            {s: float(np.broadcast_to(n, CASES)[i]) for s, n in feeds.items()},
+            solver.Fixed(pair, **{names[0]: X[i], names[1]: Y[i]}),
         )
         assert ends.G[i] == pytest.approx(one.G, rel=1e-9)
+
+
+GROWTH = (30, 70, 150, 300, 600, 1000)
+
+
+@pytest.mark.parametrize("count", GROWTH)
+@pytest.mark.benchmark(warmup=True, warmup_iterations=1, min_rounds=3, max_time=1.5)
+def test_growth(benchmark, count: int):
+    """One cold case with ever more candidates of C, H, O, N and S."""
+    lib = library()
+    known = lib.made_of({"C", "H", "O", "N", "S"}, phases=("gas",))
+    fed = [lib[key] for key in ("CH4", "O2", "N2", "H2S")]
+    keys = {sp.key for sp in fed}
+    species = [*fed, *(sp for sp in known if sp.key not in keys)][:count]
+    feed = dict(zip(fed, (1.0, 0.4, 1.5, 0.02), strict=True))
+    end = benchmark(lambda: solver.settle(species, feed, solver.Fixed("T,p", T=1250.0, p=2e5)))
+    assert end.proof.holds
+
+
+def test_memory_of_ten_thousand_cases(record_property):
+    """10,000 cases of 150 species stay under 600 MB of further memory."""
+    code = (
+        "import resource, numpy as np, solver, species_db;"
+        "lib = species_db.load();"
+        "fed = [lib[k] for k in ('CH4', 'O2', 'N2')];"
+        "known = [s for s in lib.made_of({'C', 'H', 'O', 'N'}, phases=('gas',)) if s not in fed];"
+        "before = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss;"
+        "T = np.random.default_rng(1).uniform(800.0, 2500.0, 10_000);"
+        "ends = solver.settle_many(fed + known[:147], dict(zip(fed, (1.0, 0.6, 2.0))),"
+        " 'T,p', T, 1e5);"
+        "assert ends.settled.all();"
+        "print((resource.getrusage(resource.RUSAGE_SELF).ru_maxrss - before) / 1024)"
+    )
+    out = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
+    megabytes = float(out.stdout)
+    record_property("megabytes", megabytes)
+    assert megabytes < 600.0

@@ -25,6 +25,7 @@ ACTIONS = (
     ActionRow("recent", "Open recent", ("Ctrl+Shift+O",), "Project"),
     ActionRow("save", "Save", ("Ctrl+S",), "Project"),
     ActionRow("save_as", "Save as …", ("Ctrl+Shift+S",), "Project"),
+    ActionRow("notes", "Title and notes …", ("Ctrl+I",), "Project"),
     ActionRow("quit", "Quit", ("Ctrl+Q",), "Project"),
     ActionRow("undo", "Undo", ("Ctrl+Z",), "Edit"),
     ActionRow("redo", "Redo", ("Ctrl+Shift+Z", "Ctrl+Y"), "Edit"),

@@ -10,6 +10,7 @@ from PySide6.QtWidgets import QAbstractItemView, QApplication, QFileDialog, QLin
 from gui.dialogs.unsaved import Choice, ask_unsaved
 from gui.edits import blank_project
 from gui.preferences import Preferences
+from gui.recovery import Leftover, Recovery
 from gui.session import Session
 from solver.errors import SettleError
 
@@ -26,11 +27,14 @@ class Files:
         preferences: Preferences,
         window: QWidget,
         ask: Callable[[QWidget, str], Choice] = ask_unsaved,
+        ask_recover: Callable[[QWidget, Leftover], str] | None = None,
     ) -> None:
         self._session = session
         self._preferences = preferences
         self._window = window
         self.ask = ask
+        self.ask_recover = ask_recover or _ask_recover
+        self.recovery = Recovery(session, preferences)
 
     def may_leave(self) -> bool:
         """Whether the project may be replaced or the window closed."""
@@ -78,7 +82,15 @@ class Files:
             return False
         self._session.open_document(project, path.resolve())
         self._preferences.remember(path)
+        leftover = self.recovery.beside(path.resolve())
+        if leftover is not None:
+            self.recovery.offer(leftover, lambda found: self.ask_recover(self._window, found))
         return True
+
+    def offer_leftovers(self) -> None:
+        """At the start: ask about the newest changes that an earlier run could not save."""
+        for leftover in self.recovery.leftovers()[:1]:
+            self.recovery.offer(leftover, lambda found: self.ask_recover(self._window, found))
 
     def save(self) -> bool:
         """Save where the project came from, or ask."""
@@ -110,6 +122,12 @@ class Files:
         self._preferences.remember(path)
         self._session.messages.note(f"Saved {path.name}.")
         return True
+
+
+def _ask_recover(window: QWidget, leftover: Leftover) -> str:
+    from gui.dialogs.recover import ask_recover
+
+    return ask_recover(window, leftover)
 
 
 def commit_typing() -> None:

@@ -69,6 +69,8 @@ def show(file: str) -> int:
     import threading
     from pathlib import Path
 
+    from PySide6.QtCore import QTimer
+
     from gui.application import make
 
     app, window = make([sys.argv[0]])
@@ -76,6 +78,8 @@ def show(file: str) -> int:
     window.show()
     if file:
         window.files.read(Path(file))
+    else:
+        QTimer.singleShot(0, window, window.files.offer_leftovers)
     threading.Timer(WARM_AFTER, _warm_units).start()
     try:
         return app.exec()

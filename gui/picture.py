@@ -51,6 +51,7 @@ def draw(out: Path, file: Path | None, size: tuple[int, int], theme: str, tab: s
     with tempfile.TemporaryDirectory() as folder:
         settings = QSettings(str(Path(folder) / "settings.ini"), QSettings.Format.IniFormat)
         app, window = make(["thalweg"], Preferences(settings), theme=theme)
+        window.files.ask_recover = lambda parent, leftover: "later"  # nobody is there to answer
         window.resize(*size)
         window.show()
         if file is not None and not window.files.read(file):

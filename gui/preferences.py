@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from pathlib import Path
 
-from PySide6.QtCore import QByteArray, QSettings
+from PySide6.QtCore import QByteArray, QSettings, QStandardPaths
 
 ORGANISATION = "Thalweg"
 MOST_RECENT = 9
@@ -14,6 +14,7 @@ class Preferences:
     """Reads and writes the user's settings."""
 
     def __init__(self, settings: QSettings | None = None) -> None:
+        self._own = settings is not None
         self._settings = settings or QSettings(
             QSettings.Format.IniFormat, QSettings.Scope.UserScope, ORGANISATION, "thalweg"
         )
@@ -33,6 +34,33 @@ class Preferences:
     def clear_recent(self) -> None:
         """Forget the files."""
         self._settings.setValue("recent", [])
+
+    @property
+    def data_folder(self) -> Path:
+        """Where the program keeps files of its own."""
+        if self._own:
+            return Path(self._settings.fileName()).parent / "kept"
+        places = QStandardPaths.StandardLocation
+        return Path(QStandardPaths.writableLocation(places.AppLocalDataLocation))
+
+    def recoveries(self) -> list[Path]:
+        """Files that hold unsaved changes, beside their projects."""
+        found = self._settings.value("recoveries", [])
+        texts = [found] if isinstance(found, str) else list(found or [])
+        return [Path(t) for t in texts if t]
+
+    def remember_recovery(self, file: Path) -> None:
+        """There may be something to recover in `file`."""
+        known = self.recoveries()
+        if file not in known:
+            self._settings.setValue("recoveries", [str(p) for p in (*known, file)])
+            self._settings.sync()
+
+    def forget_recovery(self, file: Path) -> None:
+        """There is nothing to recover in `file` any more."""
+        known = self.recoveries()
+        if file in known:
+            self._settings.setValue("recoveries", [str(p) for p in known if p != file])
 
     @property
     def theme(self) -> str:

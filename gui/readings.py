@@ -30,6 +30,11 @@ class Units:
         return from_si(si, self.mass, "mass_flow" if self.flow else "mass")
 
 
+def something_fed(case: Case) -> bool:
+    """Whether anything at all is typed into a stream."""
+    return any(a.species.strip() or a.value != "" for s in case.streams for a in s.amounts)
+
+
 def units_for(case: Case, answer: Any) -> Units:
     """Units like those that were typed; pressures absolute."""
     held = case.fixed.values

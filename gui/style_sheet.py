@@ -56,6 +56,7 @@ QToolButton:pressed { background: {accent_wash}; }
 QToolButton:focus { border-color: {accent}; }
 QToolButton:disabled { color: {stale}; }
 QToolButton::menu-indicator { image: none; }
+QToolButton[muted="true"] { color: {muted}; }
 QToolButton[link="true"] { color: {accent}; padding: 3px 4px; }
 QToolButton[choice="true"] { color: {muted}; padding: 3px 7px; }
 QToolButton[choice="true"]:checked { color: {accent}; font-weight: 600; }

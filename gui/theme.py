@@ -97,7 +97,8 @@ class Theme(QObject):
         self._app = app
         self.choice = choice
         self.tokens = LIGHT
-        app.setStyle("Fusion")
+        if app.style().name() != "fusion":
+            app.setStyle("Fusion")
         # Nine points is Qt's fall-back where the desktop says nothing; too small to read for hours.
         if app.font().pointSizeF() < 9.8:
             font = app.font()
@@ -123,8 +124,10 @@ class Theme(QObject):
         system_dark = self._app.styleHints().colorScheme() == Qt.ColorScheme.Dark
         dark = self.choice == "dark" or (self.choice == "system" and system_dark)
         self.tokens = DARK if dark else LIGHT
-        self._app.setPalette(palette(self.tokens))
-        self._app.setStyleSheet(style_sheet.text(self.tokens))
+        sheet = style_sheet.text(self.tokens)
+        if sheet != self._app.styleSheet():  # restyling every widget takes its time
+            self._app.setPalette(palette(self.tokens))
+            self._app.setStyleSheet(sheet)
         self.changed.emit()
 
 

@@ -18,6 +18,7 @@ from PySide6.QtWidgets import (
 )
 
 from gui import actions, edits, icons
+from gui.dialogs.notes import NotesDialog
 from gui.dialogs.report import AboutDialog, BugReport, KeysDialog
 from gui.files import Files
 from gui.panels.ends_up import TABS, EndsUp
@@ -98,6 +99,7 @@ class Window(QMainWindow):
     def _connect(self) -> None:
         session = self.session
         session.messages.told.connect(self.notice.tell)
+        session.messages.bug.connect(lambda _: self.files.recovery.keep())
         session.messages.bug.connect(self._show_bug)
         session.file_changed.connect(self._retitle)
         session.document_changed.connect(self._retitle)
@@ -128,6 +130,7 @@ class Window(QMainWindow):
                 edits.duplicate_case(session.document), "duplicate case"
             ),
             "rename_case": self.rename_case,
+            "notes": lambda: self._show(NotesDialog(self.session, self)),
             "delete_case": lambda: session.edit(edits.delete_case(session.document), "delete case"),
             "next_case": lambda: self._step_case(1),
             "previous_case": lambda: self._step_case(-1),
@@ -261,6 +264,7 @@ class Window(QMainWindow):
             event.ignore()
             return
         self.preferences.geometry = self.saveGeometry()
+        self.files.recovery.forget()
         self.shut()
         super().closeEvent(event)
 

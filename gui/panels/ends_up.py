@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from PySide6.QtCore import Qt
 from PySide6.QtWidgets import (
     QButtonGroup,
     QHBoxLayout,
@@ -18,6 +19,7 @@ from gui.parts.composition_view import CompositionView
 from gui.parts.figures_view import EnergyView, PhasesView
 from gui.parts.proof_view import ProofView
 from gui.parts.reactions_view import ReactionsView
+from gui.readings import something_fed
 from gui.session import Session
 from gui.tables import clipboard
 from gui.theme import GRID, Theme, sized
@@ -25,6 +27,12 @@ from solver.fixed import PAIRS
 from solver.project.cautions import JUDGEMENT, LIMIT, SEALED
 
 TABS = ("Composition", "Phases", "Reactions", "Energy", "Proof")
+
+EMPTY = (
+    "Nothing to show yet. Type a species and an amount at the left, such as CH4 and 1 kmol; "
+    "the end state appears here as you type."
+)
+MISSING = "No end state yet. What is missing or wrong is said above and at its field."
 
 
 class EndsUp(Card):
@@ -84,6 +92,10 @@ class EndsUp(Card):
         self.pages = QStackedWidget()
         for page in (self.composition, self.phases, self.reactions, self.energy, self.proof):
             self.pages.addWidget(page)
+        self.empty = Label(EMPTY, "muted")
+        self.empty.setWordWrap(True)
+        self.empty.setAlignment(Qt.AlignmentFlag.AlignCenter)
+        self.pages.addWidget(self.empty)
         self.body.addWidget(self.pages, 1)
         self.notes = Sentence("warning")
         self.body.addWidget(self.notes)
@@ -100,10 +112,18 @@ class EndsUp(Card):
         self.refresh()
 
     def _turn(self, page: int) -> None:
-        self.pages.setCurrentIndex(page)
+        self._show_page(page)
+        self._fill()
+
+    def _show_page(self, page: int) -> None:
+        answer = self._session.answer
+        if answer.value is None and answer.state == "faulty":
+            self.empty.setText(MISSING if something_fed(self._session.case) else EMPTY)
+            self.pages.setCurrentWidget(self.empty)
+        else:
+            self.pages.setCurrentIndex(page)
         self._bars.setVisible(TABS[page] == "Composition")
         self.reactions.corner.setVisible(TABS[page] == "Reactions")
-        self._fill()
 
     def _slow(self, slow: bool) -> None:
         self.progress.setVisible(slow)
@@ -127,6 +147,7 @@ class EndsUp(Card):
         self.sentence.say(self._reason())
         self.line.set_stale(stale)
         self.composition.model.set_stale(stale)
+        self._show_page(self.tabs.currentIndex())
         if answer.value is None:
             self._shown = None
             self.line.clear()
@@ -166,7 +187,7 @@ class EndsUp(Card):
 
     def _reason(self) -> str:
         answer = self._session.answer
-        if answer.state != "faulty":
+        if answer.state != "faulty" or not something_fed(self._session.case):
             return ""
         first = answer.faults[0].text if answer.faults else ""
         more = len(answer.faults) - 1
@@ -178,14 +199,18 @@ class EndsUp(Card):
         )
         return lead + first + rest
 
+    def _page(self):  # type: ignore[no-untyped-def]
+        """The view of the tab, also while there is nothing to show in it."""
+        return self.pages.widget(self.tabs.currentIndex())
+
     def current_table(self) -> QWidget:
         """The table that is looked at, to copy from or to focus."""
-        page = self.pages.currentWidget()
+        page = self._page()
         return page.figures.table if page is self.proof else page.table
 
     def copy(self) -> None:
         """Put the view that is looked at on the clipboard."""
-        page = self.pages.currentWidget()
+        page = self._page()
         if page is self.reactions:
             self.reactions.copy()
         elif page is self.proof:

@@ -3,17 +3,19 @@
 from __future__ import annotations
 
 from PySide6.QtCore import QSize, Qt
-from PySide6.QtGui import QAction
+from PySide6.QtGui import QAction, QResizeEvent
 from PySide6.QtWidgets import QFrame, QHBoxLayout, QLabel, QMenu, QToolButton, QWidget
 
 from gui import icons
 from gui.actions import ACTIONS, SECTIONS
 from gui.parts.answer_line import gap_text
+from gui.readings import something_fed
 from gui.session import Session
 from gui.theme import GRID, Theme
 
 SHOWN = ("new", "open", "save", "", "undo", "redo")
-TIPS = {"undo": "Undo", "redo": "Redo"}
+ROOM_TAKEN = 640
+"""Pixels that the other things in the row need."""
 
 
 class Header(QWidget):
@@ -53,6 +55,11 @@ class Header(QWidget):
         row.addSpacing(GRID)
         row.addWidget(self.menu_button)
         row.addStretch(1)
+        self.title = QToolButton()
+        self.title.setAccessibleName("title and notes")
+        self.title.setProperty("muted", "true")
+        self.title.clicked.connect(actions["notes"].trigger)
+        row.addWidget(self.title)
         self.case_button = QToolButton()
         self.case_button.setPopupMode(QToolButton.ToolButtonPopupMode.InstantPopup)
         self.case_button.setAccessibleName("case")
@@ -100,9 +107,22 @@ class Header(QWidget):
         name = self._session.case.name or "Unnamed case"
         at = f"   {self._session.document.index + 1} of {len(cases)}" if len(cases) > 1 else ""
         self.case_button.setText(f"{name}{at}  ▾")
+        project = self._session.project
+        title = project.title or "Untitled project"
+        room = max(self.width() - ROOM_TAKEN, 120)
+        room -= self.case_button.sizeHint().width()
+        elide = self.title.fontMetrics().elidedText
+        self.title.setText(elide(title, Qt.TextElideMode.ElideRight, max(room, 80)))
+        notes = f"\n\n{_shortened(project.notes)}" if project.notes else ""
+        self.title.setToolTip(f"{title}{notes}\n\nTitle and notes: Ctrl+I")
         self.case_button.setToolTip(
             "Cases of this project: look at, add, duplicate, rename, delete"
         )
+
+    def resizeEvent(self, event: QResizeEvent) -> None:
+        """The title takes the room there is."""
+        super().resizeEvent(event)
+        self.refresh()
 
     def _fill_cases(self) -> None:
         menu = self.case_menu
@@ -113,7 +133,7 @@ class Header(QWidget):
             action.setChecked(i == self._session.document.index)
             action.triggered.connect(lambda _=False, i=i: self._session.look_at(i))
         menu.addSeparator()
-        for name in ("add_case", "duplicate_case", "rename_case", "delete_case"):
+        for name in ("add_case", "duplicate_case", "rename_case", "delete_case", "notes"):
             menu.addAction(self._actions[name])
 
     def _show_pill(self) -> None:
@@ -123,6 +143,8 @@ class Header(QWidget):
             self._set_pill("good", f"proven: gap {gap}", "Look at the proof (Ctrl+5)")
         elif answer.state == "settling":
             self._set_pill("wait", "settling", "")
+        elif not something_fed(self._session.case):
+            self._set_pill("wait", "nothing fed yet", "")
         elif answer.faults:
             count = len(answer.faults)
             text = "1 thing to mend" if count == 1 else f"{count} things to mend"
@@ -137,3 +159,7 @@ class Header(QWidget):
             self.pill.setProperty("pill", state)
             self.pill.style().unpolish(self.pill)
             self.pill.style().polish(self.pill)
+
+
+def _shortened(text: str, most: int = 300) -> str:
+    return text if len(text) <= most else text[: most - 1].rstrip() + "…"

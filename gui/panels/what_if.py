@@ -236,12 +236,10 @@ class WhatIf(Card):
             if not self._range_faults():
                 self.plot.set_empty_range(*range_of(self._session.case))
             self.plot.show_line(None, unit)
-            self.plot.set_mark(None)
             self.remark.setText("")
             self.held.setText("")
             return
-        self.plot.set_mark(_mark(answer.value))
-        self.plot.show_line(line, unit)
+        self.plot.show_line(line, unit, _mark(answer.value))
         count = len(line.T)
         took = f"{line.seconds * 1000:.0f} ms" if line.seconds < 0.995 else f"{line.seconds:.1f} s"
         text = f"{count} end states in {took}"

@@ -109,7 +109,7 @@ class EnergyView(FiguresTable):
             change = None if first is None else second - first
             if change is not None and abs(change) < _ROUNDING * max(abs(first), abs(second)):
                 change = 0.0
-            first = "differ" if first is None else first
+            first = "several" if first is None else first
             rows.append((f"{words}, {unit_text(unit)}", first, second, change))
 
         add("temperature", fed.T, end.T, units.T, lambda x: from_si(x, units.T, "temperature"))

@@ -40,6 +40,7 @@ class ReactionsView(QWidget):
         self._units = Units()
         self._stale = False
         self._view: Any = None
+        self._chosen: tuple[Any, Any] | None = None
         self._tables: list[reaction_rows.Table] = []
         self.corner = QWidget()
         self.pages = QStackedWidget()
@@ -184,8 +185,6 @@ class ReactionsView(QWidget):
 
     def _read(self) -> None:
         """Own reactions where they can be read, else a readable set; faults at the field."""
-        from solver.project.case import reactions_of
-
         self.own.show_lines(self._session.case.reactions)
         self._show_own()
         own, faults = own_reactions(self._session.case, self._answer)
@@ -193,8 +192,7 @@ class ReactionsView(QWidget):
         self.own.set_fault(text)
         self.own_sentence.say(text)
         try:
-            with_own = _with_reactions(self._answer, own)
-            self._view = reactions_of(with_own)
+            self._view = self._reactions_of(own)
         except SettleError as error:
             self._view = None
             self.line.say(str(error))
@@ -205,6 +203,16 @@ class ReactionsView(QWidget):
             self.which.clear()
             self.which.addItems(names)
         self._fill()
+
+    def _reactions_of(self, own: tuple[Any, ...]) -> Any:
+        """The view for one's own set, or the chosen one, which is found once for an answer."""
+        from solver.project.case import reactions_of
+
+        if own:
+            return reactions_of(_with_reactions(self._answer, own))
+        if self._chosen is None or self._chosen[0] is not self._answer:
+            self._chosen = (self._answer, reactions_of(_with_reactions(self._answer, ())))
+        return self._chosen[1]
 
     def _fill(self) -> None:
         page = self.pages.currentIndex()

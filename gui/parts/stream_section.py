@@ -9,6 +9,7 @@ from PySide6.QtWidgets import QHBoxLayout, QMenu, QVBoxLayout, QWidget
 from gui import edits
 from gui.fields.quantity_field import LiveLine, QuantityField
 from gui.parts.card import Label, Sentence, link
+from gui.readings import something_fed
 from gui.session import Session
 from gui.tables.stream_model import StreamModel
 from gui.tables.stream_view import StreamView
@@ -114,7 +115,8 @@ class StreamSection(QWidget):
             if what == "total" and found:
                 self._total_row.show()
         faults = self._session.faults_at(path)
-        self.sentence.say("\n".join(dict.fromkeys(f.text for f in faults)))
+        quiet = not something_fed(self._session.case)  # a new project is no fault
+        self.sentence.say("" if quiet else "\n".join(dict.fromkeys(f.text for f in faults)))
         if shares is not None:
             self.model.set_shares(shares)
         self.model.changed()

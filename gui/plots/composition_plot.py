@@ -85,9 +85,16 @@ class CompositionPlot(QWidget):
 
     # -- what is shown
 
-    def show_line(self, line: Line | None, unit: str, stale: bool = False) -> None:
-        """Draw a line against temperature in `unit`; None clears the plot."""
-        self._line, self._unit, self._stale = line, unit, stale
+    def show_line(self, line: Line | None, unit: str, mark: Mark | None = None) -> None:
+        """Draw a line against temperature in `unit` and the current case on it.
+
+        Without a line the plot is empty. What is drawn already is not drawn again.
+        """
+        wanted = (line, unit, mark, False)
+        drawn = (self._line, self._unit, self._mark, self._stale)
+        if line is not None and line is self._line and wanted[1:] == drawn[1:]:
+            return
+        self._line, self._unit, self._mark, self._stale = wanted
         self.draw()
 
     def set_empty_range(self, low: float, high: float) -> None:
@@ -99,11 +106,6 @@ class CompositionPlot(QWidget):
         if stale != self._stale:
             self._stale = stale
             self.draw()
-
-    def set_mark(self, mark: Mark | None) -> None:
-        """Show the current case as dots."""
-        self._mark = mark
-        self.draw()
 
     def set_logarithmic(self, on: bool) -> None:
         """Show decades of mol %."""
@@ -141,7 +143,7 @@ class CompositionPlot(QWidget):
             self._read(None)
             low, high = self._empty
             x = (float(self._x(low)), float(self._x(high)))
-            item.getViewBox().setRange(xRange=x, yRange=(0, 100), padding=0)
+            item.getViewBox().setRange(xRange=x, yRange=(0, 105), padding=0)
             return
         self._draw_curves(item, small)
         flags = [*self._draw_changes(item), *self._draw_mark(item)]

@@ -53,6 +53,7 @@ def make_window(qtbot, preferences, monkeypatch):
     def factory(start=None, settle=settle_case, path=None, theme="light", wait=True):
         _, window = make(["thalweg"], preferences, settle, theme)
         window.files.ask = lambda parent, name: Choice.DISCARD
+        window.files.ask_recover = lambda parent, leftover: "later"
         made.append(window)
         qtbot.addWidget(window)
         window.resize(1440, 900)

@@ -9,6 +9,7 @@ from species_db.formula import Composition, parse_formula, split_state
 from species_db.loader import Entry, build_species, read_entries
 from species_db.search import closest, folded, rank
 from species_db.species import Species
+from species_db.trade_names import TRADE_NAMES
 
 _PHASES = ("gas", "liquid", "solid")
 _SUFFIX = re.compile(r"^(?P<head>[^()]*(?:\([^()]*\)\d*[^()]*)*?)\((?P<form>[^()]+)\)$")
@@ -80,7 +81,7 @@ class Library(Mapping[str, Species]):
         asked = text.strip()
         if asked in self._own or asked in self._entries:
             return asked
-        for find in (self._by_synonym, self._by_formula, self._by_name):
+        for find in (self._by_trade_name, self._by_synonym, self._by_formula, self._by_name):
             key = find(asked)
             if key is not None:
                 return key
@@ -88,7 +89,8 @@ class Library(Mapping[str, Species]):
 
     def find(self, text: str, limit: int = 20) -> list[Species]:
         """Species whose key, name or synonym answers to a text, the likeliest first."""
-        keys = list(self._all_named(text))
+        meant = self._by_trade_name(text.strip())
+        keys = [*([meant] if meant else []), *self._all_named(text)]
         composition = self._identities(text)
         keys += [k for identity in composition for k in self._by_identity.get(identity, ())]
         keys += rank(text, self._rows())
@@ -181,6 +183,11 @@ class Library(Mapping[str, Species]):
                 if synonym and row.key not in (same := index.setdefault(folded(synonym), [])):
                     same.append(row.key)
         return index
+
+    def _by_trade_name(self, text: str) -> str | None:
+        """A name that means one form of a substance."""
+        key = TRADE_NAMES.get(folded(text))
+        return key if key in self._entries else None
 
     def _by_synonym(self, text: str) -> str | None:
         """Another spelling of a key, letter for letter; a name shared by phases is left alone."""

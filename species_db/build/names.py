@@ -134,13 +134,19 @@ def _lower(name: str) -> str:
     return f"{turned.group(2)} {turned.group(1)}" if turned else name
 
 
+_NOTE = re.compile(r"\b(ref element|calculated|an?harmonic|rrho|generated|sigma)\b", re.IGNORECASE)
+"""Remarks of the source files that stand where a name should."""
+
+
 def _clean(name: str, synonyms: list[str], forced: list[str]) -> list[str]:
     out: list[str] = list(forced)
     seen = {name.casefold(), *(f.casefold() for f in forced)}
     for synonym in synonyms:
         text = re.sub(r"[\t|;]", " ", synonym).strip()
         text = text if any(c.isdigit() for c in text[:1]) else _lower(text)
-        if not text or text.casefold() in seen or len(text) > 48 or _ODD.match(text):
+        if not text or text.casefold() in seen or len(text) > 48:
+            continue
+        if _ODD.match(text) or _NOTE.search(text):
             continue
         if len(out) - len(forced) >= KEEP:
             break

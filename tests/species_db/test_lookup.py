@@ -168,3 +168,13 @@ def test_formulas(text, counts, charge):
 @pytest.mark.parametrize("text", ["", "Xx", "co2", "H2O)", "(H2O", "2", "H2 O", "C++x"])
 def test_no_formulas(text):
     assert parse_formula(text) is None
+
+
+@pytest.mark.parametrize(
+    ("name", "key"),
+    [("ice", "H2O(s)"), ("silica", "SiO2(quartz)"), ("Rust", "Fe2O3(s)"), ("steam", "H2O")],
+)
+def test_trade_name_means_one_form(name: str, key: str):
+    lib = species_db.load()
+    assert lib[name].key == key
+    assert lib.find(name)[0].key == key

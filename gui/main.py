@@ -6,6 +6,8 @@ import sys
 from collections.abc import Sequence
 
 COMMANDS = ("settle", "what-if", "sheet", "species")
+OFFER_AFTER = 500
+"""Milliseconds after the start at which unsaved changes of an earlier run are offered."""
 WARM_AFTER = 2.0
 """Seconds after the start at which what may be needed later is loaded."""
 
@@ -79,7 +81,7 @@ def show(file: str) -> int:
     if file:
         window.files.read(Path(file))
     else:
-        QTimer.singleShot(0, window, window.files.offer_leftovers)
+        QTimer.singleShot(OFFER_AFTER, window, window.files.offer_leftovers)
     threading.Timer(WARM_AFTER, _warm_units).start()
     try:
         return app.exec()

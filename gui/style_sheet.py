@@ -77,6 +77,8 @@ QPushButton { background: {panel}; border: 1px solid {line}; border-radius: 3px;
 QPushButton:hover { border-color: {muted}; }
 QPushButton:focus, QPushButton:default { border-color: {accent}; }
 
+QDialogButtonBox, QMessageBox { dialogbuttonbox-buttons-have-icons: 0; }
+
 QMenu { background: {panel}; border: 1px solid {line}; padding: 4px 0; }
 QMenu::item { padding: 5px 28px 5px 20px; }
 QMenu::item:selected { background: {accent_wash}; color: {text}; }

@@ -62,7 +62,8 @@ class Window(QMainWindow):
         if preferences.geometry is not None:
             self.restoreGeometry(preferences.geometry)
         else:
-            self.resize(1440, 900)
+            room = self.screen().availableSize()
+            self.resize(min(1440, room.width()), min(900, room.height()))
 
     def _place(self) -> None:
         page = QWidget()

@@ -154,6 +154,8 @@ class StreamView(QTableView):
         super().closeEditor(editor, hint)
         if hint != QAbstractItemDelegate.EndEditHint.SubmitModelCache:
             return
+        # Where Enter came by way of a list of offers, the line had no focus to give back.
+        self.setFocus()
         at = self.currentIndex()
         row, column = (at.row(), AMOUNT) if at.column() == SPECIES else (at.row() + 1, SPECIES)
         if row < self._model.rowCount():

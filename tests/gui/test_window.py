@@ -472,3 +472,41 @@ def test_a_fault_of_the_program_opens_its_report(window, qtbot):
     report = window.findChild(BugReport)
     assert "wires crossed" in report.text.toPlainText()
     report.reject()
+
+
+def test_enter_in_the_list_of_offers_goes_on_in_the_table(make_window, qtbot):
+    window = make_window(blank_project())
+    view = window.going_in.sections[0].view
+    window.activateWindow()
+    qtbot.waitUntil(view.isActiveWindow)
+    view.setFocus()
+    view.setCurrentIndex(view.model().index(0, SPECIES))
+    qtbot.keyClicks(view, "C")
+    line = QApplication.focusWidget()
+    qtbot.keyClicks(line, "H4")
+    assert line.completer().popup().isVisible()
+    qtbot.keyClick(line.completer().popup(), Qt.Key.Key_Return)
+    QApplication.processEvents()
+    assert window.focusWidget() is view  # not the first button of the window
+    assert view.currentIndex().column() == AMOUNT
+
+
+def test_a_new_project_invites_and_finds_no_fault(make_window, qtbot):
+    window = make_window(blank_project())
+    assert window.header.pill.text() == "nothing fed yet"
+    assert window.ends_up.empty.isVisible()
+    assert not window.ends_up.sentence.isVisible()
+    assert not window.going_in.sections[0].sentence.isVisible()
+    type_cell(qtbot, window.going_in.sections[0].view, 0, SPECIES, "CH4")
+    settled(qtbot, window)
+    assert window.header.pill.text() == "1 thing to mend"
+    assert window.going_in.sections[0].sentence.isVisible()
+
+
+def test_reversible_expansion_gives_work_and_not_heat(window, qtbot):
+    pick_pair(window, "S,p")
+    retype(qtbot, window.held_fixed.rows["p"].field, "0.5 bar")
+    settled(qtbot, window)
+    figure = window.ends_up.line.figures["heat added"]
+    assert figure.title.text() == "work put in"
+    assert figure.beneath.text() == "reversible"

@@ -10,23 +10,25 @@ import species_db
 
 DATA = Path(species_db.__file__).parent / "data"
 LOAD = """
-import time, numpy
-t = time.perf_counter()
+import time
+begin = time.perf_counter()
+import numpy
+middle = time.perf_counter()
 import species_db
 lib = species_db.load()
 lib["CO2"]
-print(time.perf_counter() - t)
+print((time.perf_counter() - middle) / (middle - begin))
 """
 
 
 def test_loads_in_a_moment():
-    """Import and load, numpy aside, under 0.15 s: the best of three, for a busy machine."""
+    """Import and load cost no more than numpy's own import does, in the best of five runs."""
     command = [sys.executable, "-c", LOAD]
     runs = [
         float(subprocess.run(command, capture_output=True, text=True, check=True).stdout)
-        for _ in range(3)
+        for _ in range(5)
     ]
-    assert min(runs) < 0.15
+    assert min(runs) < 1.0
 
 
 def test_every_source_id_is_described(records):

@@ -17,7 +17,7 @@ _EVERY_WAY = 7
 
 @dataclass(frozen=True, slots=True)
 class Flag:
-    """A rule's place (in the plot's own x), its words and colour; `dashed` stems are pale."""
+    """A rule's place (in the plot's own x), its words and their colour."""
 
     x: float
     words: str

@@ -114,9 +114,13 @@ def _settle_all(
     count = len(first)
     good = np.array([i not in why for i in range(count)], dtype=bool)
     # cases that feed the same species share a mixture
-    for presence in np.unique(amounts[good] > 0.0, axis=0):
-        same = good & ((amounts > 0.0) == presence).all(axis=1)
-        some = [sp for sp, there in zip(fed, presence, strict=True) if there]
+    there = amounts > 0.0
+    alike = bool((there == there[0]).all())
+    for presence in there[:1] if alike else np.unique(there[good], axis=0):
+        same = good & (there == presence).all(axis=1)
+        if not same.any():
+            continue
+        some = [sp for sp, fed_here in zip(fed, presence, strict=True) if fed_here]
         index = np.flatnonzero(same)
         try:
             posed = pose(species, some, amounts[index][:, presence], restrictions)

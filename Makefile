@@ -38,8 +38,8 @@ tests: $(VENV)/for-check ## the tests alone; one file: make tests TESTS=tests/gu
 bench: $(VENV)/for-check ## speed beside general-purpose solvers; writes tests/bench/notes.md
 	@$(OFFSCREEN) $(BIN)/python -m tests.bench
 
-fuzz: $(VENV)/for-check ## ten times the random problems of the tests
-	@$(OFFSCREEN) THALWEG_FUZZ=10 $(BIN)/python -m pytest -q -n $(WORKERS) --benchmark-disable --timeout 3600 tests/solver tests/species_db
+fuzz: $(VENV)/for-check ## 20,000 random problems; fewer or others: make fuzz FUZZ="--count 500 --first 7"
+	@$(OFFSCREEN) $(BIN)/python -m tests.fuzz $(FUZZ)
 
 data: $(VENV)/for-data ## write the tables of species_db/data/ again from their sources
 	@$(BIN)/python -m species_db.build

@@ -1,0 +1,1 @@
+"""Random and named problems that try to break the minimiser."""

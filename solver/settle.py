@@ -21,7 +21,7 @@ from solver.errors import InputError, NoEndState, NotProven, SettleError
 from solver.fed import check_gas, checked_amount
 from solver.fixed import PAIRS, T_HIGHEST, T_LOWEST, Fixed, Pair
 from solver.posed import Posed, pose
-from solver.proof import Proof, element_residuals, optimality_gap
+from solver.proof import MODEL, Proof, element_residuals, optimality_gap
 from solver.restrictions import Cost, Restriction
 
 if TYPE_CHECKING:
@@ -69,10 +69,25 @@ def settle(
     NotProven
         A state was found whose proof fails; it is not returned.
     """
+    held_back = tuple(restrictions)
+    end = _settled(species, feed, fixed, gas, held_back)
+    if not held_back:
+        return end
+    costs = _costs(species, feed, end, gas, held_back)
+    return replace(end, proof=replace(end.proof, restrictions=costs))
+
+
+def _settled(
+    species: Sequence[Species],
+    feed: Mapping[Species | str, float],
+    fixed: Fixed,
+    gas: str,
+    restrictions: tuple[Restriction, ...],
+) -> EndState:
+    """The end state, without what its restrictions cost."""
     check_gas(gas)
     fed, amounts = _checked_feed(species, feed)
-    held_back = tuple(restrictions)
-    posed = pose(species, fed, amounts[None, :], held_back)
+    posed = pose(species, fed, amounts[None, :], restrictions)
     mixture = posed.mixture
     # the minimiser works on totals near one; a power of two changes no digit
     scale = 2.0 ** -round(float(np.log2(np.abs(posed.feed.totals).max())))
@@ -84,11 +99,7 @@ def settle(
             check_room(mixture, scaled, point.T, point.n, point.p, V)
     except LOST as error:
         raise explained(mixture, PAIRS[fixed.pair], fixed.values, error, scale) from None
-    end = _end_state(posed, species, scaled, point, fixed, gas, scale)
-    if not held_back:
-        return end
-    costs = _costs(species, feed, end, gas, held_back)
-    return replace(end, proof=replace(end.proof, restrictions=costs))
+    return _end_state(posed, species, scaled, point, fixed, gas, scale)
 
 
 def _checked_feed(
@@ -236,7 +247,7 @@ def _costs(
     for restriction in restrictions:
         rest = tuple(r for r in restrictions if r is not restriction)
         try:
-            free = settle(species, feed, fixed, gas=gas, restrictions=rest)
+            free = _settled(species, feed, fixed, gas, rest)
         except SettleError:
             out.append(Cost(str(restriction), float("nan")))
             continue
@@ -284,6 +295,7 @@ def _end_state(
         energy_residual=_energy_residual(fixed, point, n, scale),
         gap=gap,
         absent=MappingProxyType(absent),
+        model=_model(mixture, n),
     )
     if not proof.holds or n.min() < 0.0:
         raise NotProven(
@@ -314,6 +326,16 @@ def _end_state(
         proof=proof,
         outside_range=tuple(mixture.species[i].key for i in np.flatnonzero(outside)),
     )
+
+
+def _model(mixture: Mixture, n: Array) -> str:
+    """What was assumed, with the condensed species whose volume is an estimate."""
+    named = [
+        sp.key
+        for sp, amount in zip(mixture.species, n, strict=True)
+        if amount > 0.0 and "volume_estimated" in sp.flags
+    ]
+    return f"{MODEL} The molar volume of {', '.join(named)} is estimated." if named else MODEL
 
 
 def _energy_residual(fixed: Fixed, point: Point, n: Array, scale: float) -> float:

@@ -39,6 +39,13 @@ def descend(
     top : float
         The largest nu that the feed can fill.
     """
+    with np.errstate(all="ignore"):  # far-off amounts overflow on the way
+        return _descend(reactions, kappa, b, log_a, nu, grows, top)
+
+
+def _descend(
+    reactions: Array, kappa: Array, b: Array, log_a: Array, nu: float, grows: bool, top: float
+) -> tuple[Array, float]:
     if not grows:
         return _at_volume(reactions, kappa, b, log_a, nu), nu
     # mole fractions at the start do not depend on nu: carry l + nu, the ln amounts
@@ -46,8 +53,7 @@ def descend(
     nu = float(np.clip(nu, low, high))
     for _ in range(60):
         log_a = _at_volume(reactions, kappa, b, log_a, nu)
-        with np.errstate(over="ignore"):
-            filled = float(np.log(np.exp(reactions @ log_a - kappa + nu).sum()))
+        filled = float(np.log(np.exp(reactions @ log_a - kappa + nu).sum()))
         if abs(filled - nu) < 0.2 or high - low < 0.1:
             break
         if filled > nu:
@@ -68,8 +74,7 @@ def _at_volume(reactions: Array, kappa: Array, b: Array, log_a: Array, nu: float
     for _ in range(_MAX_STEPS):
         n = _amounts(reactions, kappa, log_a, nu)
         P, M = n @ up + np.maximum(-b, 0.0), n @ down + np.maximum(b, 0.0)
-        with np.errstate(divide="ignore", invalid="ignore"):
-            far = np.abs(np.log(P / M))
+        far = np.abs(np.log(P / M))
         if np.all(far < _NEAR):
             break
         slope = n @ reactions - b

@@ -25,6 +25,7 @@ Array = NDArray[np.float64]
 _MAX_EVALUATIONS = 200
 _CLOSED = 2e-13
 _FIRST_T = 1000.0
+_AT_END = 5e-11
 
 
 class OutOfReach(ArithmeticError):
@@ -133,6 +134,9 @@ def find_temperature(
         size = R * float(point.n.sum()) * (1.0 if search.variable == "S" else point.T)
         if abs(excess) <= _CLOSED * size:
             return point
+        at_end = T >= search.T_high or T <= search.T_low
+        if at_end and abs(excess) <= _AT_END * size:
+            return point  # the energy of the very end of the range, to rounding
         if excess < 0.0:
             low = point
             if T >= search.T_high:

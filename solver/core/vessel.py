@@ -105,8 +105,9 @@ def fill(
             n = (1.0 - share) * low[2] + share * high[2]
             return high[3], n, P0 * float(np.exp(high[0]))
         # regula falsi on ln V, halving whenever it creeps
-        slope = (np.log(high[1]) - np.log(low[1])) / (high[0] - low[0])
-        proposal = low[0] + (np.log(held.V) - np.log(low[1])) / slope
+        with np.errstate(all="ignore"):
+            slope = (np.log(high[1]) - np.log(low[1])) / (high[0] - low[0])
+            proposal = low[0] + (np.log(held.V) - np.log(low[1])) / slope
         slow += 1
         if slow % 2 or not low[0] < proposal < high[0]:
             proposal = 0.5 * (low[0] + high[0])

@@ -22,6 +22,7 @@ from species_db.build.hand import hand_drafts
 from species_db.build.janaf import janaf_drafts
 from species_db.build.places import DATA
 from species_db.build.properties import critical_constants, molar_volume
+from species_db.build.volumes import estimate_volumes
 
 ZERO = 10.0
 """An element whose record has less than this as formation enthalpy, J/mol, is in its reference
@@ -86,6 +87,7 @@ def main() -> None:
             d.critical = critical_constants(d)
         elif d.phase != "gas" and d.cas:
             d.molar_volume = molar_volume(d)
+    print("volumes estimated:", estimate_volumes(drafts))
     write.species_table(drafts, keys.named_records(drafts), DATA / "species.tsv")
     reasons = write.left_out_table(out, DATA / "left_out.csv")
     write.counts_table(drafts, reasons, DATA / "counts.csv")

@@ -92,6 +92,7 @@ def molar_volume(d: Draft) -> float:
 
 VOLUME_BY_CAS = {
     "7732-18-5": 18.07e-6,
+    "7726-95-6": 51.5e-6,
     "7782-42-5": 5.30e-6,
     "7782-40-3": 3.42e-6,
     "14808-60-7": 22.69e-6,
@@ -116,7 +117,9 @@ VOLUME_BY_CAS = {
     "12011-67-5": 23.23e-6,
     "10179-73-4": 46.39e-6,
 }
-"""Molar volumes of named forms, m3/mol (Robie and Hemingway 1995, from memory; water at 298 K)."""
-VOLUME_STATE = {("solid", cas) for cas in VOLUME_BY_CAS if cas != "7732-18-5"} | {
-    ("liquid", "7732-18-5")
+"""Molar volumes of named forms, m3/mol (Robie and Hemingway 1995, from memory; water and
+bromine at 298 K, from memory)."""
+_LIQUIDS = ("7732-18-5", "7726-95-6")
+VOLUME_STATE = {("solid", cas) for cas in VOLUME_BY_CAS if cas not in _LIQUIDS} | {
+    ("liquid", cas) for cas in _LIQUIDS
 }

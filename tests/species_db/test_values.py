@@ -9,6 +9,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+import species_db
 from species_db import R
 
 HERE = Path(__file__).parent
@@ -265,3 +266,25 @@ def test_boiling_points_against_an_independent_list(lib, records):
     assert np.median(miss) < 3.0
     assert np.percentile(miss, 90) < 10.0
     assert miss.max() < 16.0, max(misses)
+
+
+def test_every_condensed_record_has_a_volume_and_says_whether_it_is_estimated():
+    lib = species_db.load()
+    condensed = [sp for sp in lib.values() if sp.phase != "gas"]
+    for sp in condensed:
+        assert sp.molar_volume is not None, sp.key
+        per_atom = sp.molar_volume / sum(sp.elements.values())
+        assert 1.4e-6 < per_atom < 33e-6, sp.key
+    estimated = [sp for sp in condensed if "volume_estimated" in sp.flags]
+    assert 0 < len(estimated) < 0.3 * len(condensed)
+    assert "volume_estimated" not in lib["H2O(l)"].flags
+
+
+@pytest.mark.parametrize(
+    ("key", "density"),
+    [("BN(s)", 2180.0), ("Si3N4(s)", 3170.0), ("CaC2(s)", 2220.0), ("Fe3C(s)", 7690.0)],
+)
+def test_volume_is_near_a_known_density(key, density):
+    """Densities in kg/m3 from memory of handbook tables; an estimate may be a third off."""
+    sp = species_db.load()[key]
+    assert sp.molar_mass / sp.molar_volume == pytest.approx(density, rel=0.35)

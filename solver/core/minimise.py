@@ -18,7 +18,7 @@ from numpy.typing import NDArray
 
 from solver.core.basis import Basis
 from solver.core.cases import Cases, Feed
-from solver.core.mixture import Held, Mixture
+from solver.core.mixture import P0, Held, Mixture, R
 from solver.core.phaseset import Solved, solve_set
 from solver.core.simplex import Endless, Simplex
 from solver.core.vessel import TooSmall, Unfilled, fill
@@ -54,12 +54,16 @@ class _Stuck(ArithmeticError):
 
 @dataclass(frozen=True)
 class Present:
-    """A start for a neighbouring case: condensed phases, components and their activities."""
+    """A start for a neighbouring case: condensed phases, components and their activities.
+
+    `log_p` is set where a volume was met through the pressure: the neighbour needs that too.
+    """
 
     active: tuple[int, ...]
     members: tuple[int, ...]
     log_a: Array
     nu: float
+    log_p: float | None = None
 
 
 @dataclass(frozen=True)
@@ -108,6 +112,8 @@ def minimise(mixture: Mixture, feed: Feed, held: Held, start: Present | None = N
         None if held.p is None else np.array([held.p]),
         None if held.V is None else np.array([held.V]),
     )
+    if held.V is not None and start is not None and start.log_p is not None:
+        return _by_pressure(case, held, start.log_p)
     if start is not None:
         basis = mixture.basis(start.members)
         try:
@@ -119,7 +125,8 @@ def minimise(mixture: Mixture, feed: Feed, held: Held, start: Present | None = N
     except Unsettled:
         if held.V is None:
             raise
-    return _by_pressure(case, held)
+    guess = float(np.log(0.5 * case.atoms[0]) - case.nu_fixed[0])
+    return _by_pressure(case, held, guess)
 
 
 def check_room(mixture: Mixture, feed: Feed, T: float, n: Array, p: float, V: float) -> None:
@@ -141,21 +148,27 @@ def check_room(mixture: Mixture, feed: Feed, T: float, n: Array, p: float, V: fl
             raise TooSmall(needed)
 
 
-def _by_pressure(case: Cases, held: Held) -> Minimum:
+def _by_pressure(case: Cases, held: Held, guess: float) -> Minimum:
     """Meet the volume through the pressure, for vessels that defeat the direct search."""
     mixture, feed = case.mixture, case.feed
 
     def minimum_at(at: Held, last: Minimum | None) -> Minimum:
         return minimise(mixture, feed, at, last.present if last else None)
 
-    guess = float(np.log(0.5 * case.atoms[0]) - case.nu_fixed[0])
     try:
         last, n, p = fill(
-            minimum_at, lambda found: found.n, mixture.gas, mixture.volume, held, guess
+            minimum_at,
+            lambda found: found.n,
+            lambda found: R * held.T * float(feed.totals[0] @ found.potentials),
+            mixture.gas,
+            mixture.volume,
+            held,
+            guess,
         )
     except Unfilled as error:
         raise Unsettled(str(error)) from None
-    return replace(last, n=n, p=p)
+    log_p = float(np.log(p / P0)) if p > 0.0 else guess
+    return replace(last, n=n, p=p, present=replace(last.present, log_p=log_p))
 
 
 def _without_gas(mixture: Mixture, feed: Feed, held: Held) -> Minimum:

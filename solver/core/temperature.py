@@ -26,6 +26,7 @@ _MAX_EVALUATIONS = 200
 _CLOSED = 2e-13
 _FIRST_T = 1000.0
 _AT_END = 5e-11
+_SLIVER = 1e-11
 
 
 class OutOfReach(ArithmeticError):
@@ -154,8 +155,13 @@ def find_temperature(
             limits = max(0.4 * T, search.T_low), min(2.5 * T, search.T_high)
             T = float(np.clip(T + step, *limits))
         else:
-            if high.T - low.T <= 4.0 * np.spacing(high.T):
-                return _split(search, low, high)
+            narrow = 4.0 * np.spacing(high.T)
+            if search.V is not None and low.present.active != high.present.active:
+                # two forms of unlike volume share a vessel over a sliver of temperatures,
+                # along which the pressure changes: its width is of no account
+                narrow = _SLIVER * high.T
+            if high.T - low.T <= narrow:
+                return _split(mixture, search, low, high)
             proposal = T + step
             slow = abs(excess) > 0.5 * before_last
             if slow or not low.T < proposal < high.T:
@@ -165,7 +171,7 @@ def find_temperature(
         before_last, last = last, abs(excess)
     assert low is not None
     assert high is not None
-    return _split(search, low, high)
+    return _split(mixture, search, low, high)
 
 
 def _crossing(low: Point, high: Point, tries: int) -> float:
@@ -197,10 +203,17 @@ def _crossing(low: Point, high: Point, tries: int) -> float:
     return float(T) if low.T < T < high.T else middle
 
 
-def _split(search: Search, low: Point, high: Point) -> Point:
+def _split(mixture: Mixture, search: Search, low: Point, high: Point) -> Point:
     """The mixture of two minima at a transition that has the value searched."""
     bottom, top = low.value(search.variable), high.value(search.variable)
     share = (search.value - bottom) / (top - bottom)
     n = (1.0 - share) * low.n + share * high.n
     state = low.totals.blend(high.totals, share)
-    return Point(high.T, high.p, n, high.potentials, high.present, state, None)
+    p = high.p
+    if search.V is not None and high.p != low.p:
+        # the two ends have the volume held, each at its own pressure: so has the split at its own
+        gas = float(n[mixture.gas].sum())
+        p = gas * R * high.T / (search.V - float(n @ mixture.volume))
+        H = state.U + p * state.V
+        state = Totals(V=state.V, H=H, U=state.U, S=state.S, G=H - high.T * state.S)
+    return Point(high.T, p, n, high.potentials, high.present, state, None)

@@ -38,6 +38,7 @@ class Unfilled(ArithmeticError):
 def fill(
     minimum_at: Callable[[Held, M | None], M],
     amounts_of: Callable[[M], Array],
+    gibbs_of: Callable[[M], float],
     gas: NDArray[np.intp],
     volume: Array,
     held: Held,
@@ -51,6 +52,8 @@ def fill(
         Minimum at a T and p, from a neighbour where there is one.
     amounts_of : callable
         Its amounts (species,).
+    gibbs_of : callable
+        Its Gibbs energy, J.
     gas : ndarray of int
         Gas species.
     volume : ndarray, shape (species,)
@@ -109,7 +112,32 @@ def fill(
             slope = (np.log(high[1]) - np.log(low[1])) / (high[0] - low[0])
             proposal = low[0] + (np.log(held.V) - np.log(low[1])) / slope
         slow += 1
-        if slow % 2 or not low[0] < proposal < high[0]:
+        if slow > 4 and slow % 3:
+            proposal = _crossing(low, high, gibbs_of(low[3]), gibbs_of(high[3]), slow)
+        elif slow % 2 or not low[0] < proposal < high[0]:
             proposal = 0.5 * (low[0] + high[0])
         log_p = float(proposal)
     raise Unfilled("no pressure fills the vessel")
+
+
+def _crossing(
+    low: tuple[float, float, Array, M],
+    high: tuple[float, float, Array, M],
+    G_low: float,
+    G_high: float,
+    tries: int,
+) -> float:
+    """ln p/p0 where the Gibbs energies of the two ends, carried on with their volumes, meet.
+
+    That is the pressure of a transition, found quadratically; near an end the other side of
+    it is taken, so that the bracket closes.
+    """
+    middle = 0.5 * (low[0] + high[0])
+    p_low, p_high, p_middle = (P0 * float(np.exp(x)) for x in (low[0], high[0], middle))
+    rise = (G_high + high[1] * (p_middle - p_high)) - (G_low + low[1] * (p_middle - p_low))
+    p = p_middle + rise / (low[1] - high[1])
+    reach = 2.0 ** (tries % 11) * np.spacing(max(abs(low[0]), abs(high[0]), 1.0))
+    if not p_low < p < p_high:
+        return middle
+    x = float(np.clip(np.log(p / P0), low[0] + reach, high[0] - reach))
+    return x if low[0] < x < high[0] else middle

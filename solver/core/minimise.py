@@ -16,7 +16,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from solver.core.basis import Basis
+from solver.core.basis import Basis, component_amounts
 from solver.core.cases import Cases, Feed
 from solver.core.mixture import P0, Held, Mixture, R
 from solver.core.phaseset import Solved, solve_set
@@ -241,6 +241,13 @@ def _read(case: Cases, program: Simplex, columns: list[Array]) -> tuple[Array, l
     """Amounts (species,) and active condensed phases of a vertex."""
     species = case.c.shape[1]
     n = np.zeros(species)
+    members = [j for j in program.basis if j >= 0]
+    if max(members) < species and len(members) == case.mixture.rank:
+        # pure species alone: their amounts afresh, so that no trace is lost to rounding
+        basis = case.mixture.basis(members)
+        amounts = component_amounts(case.feed.amounts, case.feed.vectors, basis)[0]
+        n[list(basis.members)] = np.maximum(amounts, 0.0)
+        return n, [i for i in case.condensed.tolist() if n[i] > 0.0]
     for j, level in zip(program.basis, program.levels * case.scale[0], strict=True):
         if 0 <= j < species:
             n[j] += level

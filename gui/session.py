@@ -11,7 +11,7 @@ from PySide6.QtCore import QObject, QTimer, Signal
 from PySide6.QtGui import QUndoStack
 
 from gui.colours import SpeciesColours
-from gui.document import Document, ReplaceDocument, physics, replaced
+from gui.document import Document, ReplaceDocument, physics
 from gui.jobs import Channel
 from gui.messages import Messages
 from solver.project.model import Case, Project
@@ -228,8 +228,3 @@ class Session(QObject):
     def _answer(self, answer: Answer) -> None:
         self.answer = answer
         self.answer_changed.emit()
-
-
-def with_cases(project: Project, cases: list[Case]) -> Project:
-    """The project with other cases."""
-    return replaced(project, cases=tuple(cases))

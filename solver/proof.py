@@ -24,6 +24,7 @@ ELEMENT_LIMIT = 1e-12
 TRACE_LIMIT = 1e-9
 ENERGY_LIMIT = 1e-10
 GAP_LIMIT = 1e-9
+VOLUME_LIMIT = 1e-9
 
 MODEL = (
     "Ideal gas mixture; each condensed species a pure phase of constant molar volume v, "
@@ -89,6 +90,17 @@ def element_residuals(mixture: Mixture, n: Array, feed: Feed) -> tuple[Array, Ar
     largest = size.max(axis=1)
     own = error / np.where(size > 0.0, size, largest[:, None])
     return error.max(axis=1) / largest, own.max(axis=1)
+
+
+def volume_residual(mixture: Mixture, n: Array, T: Array, p: Array, V: Array) -> Array:
+    """|N R T/p + sum n v - V| / V (cases,): whether amounts, T, p and the volume held agree.
+
+    Zero where there is no gas: condensed phases need not fill a vessel.
+    """
+    N = n[:, mixture.is_gas].sum(axis=1)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        filled = np.where(N > 0.0, N * R * T / p, V - n @ mixture.volume)
+    return np.asarray(np.abs(filled + n @ mixture.volume - V) / V)
 
 
 def optimality_gap(

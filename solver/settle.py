@@ -21,7 +21,14 @@ from solver.errors import InputError, NoEndState, NotProven, SettleError
 from solver.fed import check_gas, checked_amount
 from solver.fixed import PAIRS, T_HIGHEST, T_LOWEST, Fixed, Pair
 from solver.posed import Posed, pose
-from solver.proof import MODEL, Proof, element_residuals, optimality_gap
+from solver.proof import (
+    MODEL,
+    VOLUME_LIMIT,
+    Proof,
+    element_residuals,
+    optimality_gap,
+    volume_residual,
+)
 from solver.restrictions import Cost, Restriction
 
 if TYPE_CHECKING:
@@ -297,7 +304,11 @@ def _end_state(
         absent=MappingProxyType(absent),
         model=_model(mixture, n),
     )
-    if not proof.holds or n.min() < 0.0:
+    fills = True
+    if V is not None:
+        off = volume_residual(mixture, n[None, :], np.array([T]), np.array([p]), V)
+        fills = bool(off[0] <= VOLUME_LIMIT)
+    if not proof.holds or not fills or n.min() < 0.0:
         raise NotProven(
             "An end state was found but its proof is not within the limits "
             f"(elements {closure:.1e}, trace elements {trace:.1e}, "

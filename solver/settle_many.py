@@ -27,8 +27,10 @@ from solver.proof import (
     ENERGY_LIMIT,
     GAP_LIMIT,
     TRACE_LIMIT,
+    VOLUME_LIMIT,
     element_residuals,
     optimality_gap,
+    volume_residual,
 )
 from solver.restrictions import Restriction
 from solver.settle import candidate_of, check_species, explained
@@ -270,6 +272,8 @@ def _settle_chunk(
         energy = np.abs(found.functions[pair.searched][some] - values) / unit
     ok = (closure <= ELEMENT_LIMIT) & (trace <= TRACE_LIMIT) & (energy <= ENERGY_LIMIT)
     ok &= (np.abs(gap) <= GAP_LIMIT) & (n.min(axis=1) >= 0.0)
+    if V is not None:
+        ok &= volume_residual(mixture, n, T, p, V) <= VOLUME_LIMIT
     for k in np.flatnonzero(~ok):
         why[int(rows[k])] = (
             "An end state was found but its proof is not within the limits "

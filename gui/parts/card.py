@@ -17,12 +17,6 @@ class Label(QLabel):
         self.setFont(sized(self.font(), size))
         self.setTextFormat(Qt.TextFormat.PlainText)
 
-    def set_role(self, role: str) -> None:
-        """Change the role."""
-        if self.property("role") != role:
-            self.setProperty("role", role)
-            self._restyle()
-
     def set_stale(self, stale: bool) -> None:
         """Grey the text out as belonging to an earlier input."""
         value = "true" if stale else "false"

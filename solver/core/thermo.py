@@ -30,7 +30,6 @@ class ThermoTable:
         self._tables: dict[int, tuple[Array, Array, Array]] = {}
         self.T_min = np.array([sp.T_min for sp in species])
         self.T_max = np.array([sp.T_max for sp in species])
-        self.transitions = np.array(sorted({tr.T for sp in species for tr in sp.transitions}))
 
     def _table(self, interval: int) -> tuple[Array, Array, Array]:
         """Coefficient matrices (species, powers) of g, h and cp on one interval."""
@@ -50,12 +49,6 @@ class ThermoTable:
             g = np.stack([a1 - a7, -a2 / 2, -a3 / 6, -a4 / 12, -a5 / 20, a6, -a1])
             self._tables[interval] = (g, h, cp)
         return self._tables[interval]
-
-    def at(self, T: float) -> tuple[Array, Array, Array]:
-        """g/RT, h/RT and cp/R at 1 bar of every species at one temperature, each (species,)."""
-        g, h, cp = self._table(int(np.searchsorted(self._joins, T, side="right")))
-        powers = _powers(np.float64(T))
-        return powers @ g, powers @ h, powers @ cp
 
     def over(self, T: Array) -> tuple[Array, Array, Array]:
         """g/RT, h/RT and cp/R at 1 bar at temperatures T (cases,), each (cases, species)."""

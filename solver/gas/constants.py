@@ -1,4 +1,4 @@
-"""Critical constants of the gas candidates: which are used, which are refused, which are missing."""
+"""Critical constants of the gas candidates: which are used, refused or missing."""
 
 from __future__ import annotations
 

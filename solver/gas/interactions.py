@@ -94,10 +94,10 @@ def pairs_in_use(
                 allowed="one value for a pair",
             )
     for names, k in given.items():
-        a, b = sorted(names, key=order.__getitem__)
+        a, b = names
         found[names] = Pair(a, b, k, "given by the user")
-    ranked = sorted(found.values(), key=lambda pair: sorted((order[pair.a], order[pair.b])))
-    return tuple(
-        Pair(*sorted((pair.a, pair.b), key=order.__getitem__), pair.k, pair.source)
-        for pair in ranked
+    in_order = (
+        pair if order[pair.a] < order[pair.b] else Pair(pair.b, pair.a, pair.k, pair.source)
+        for pair in found.values()
     )
+    return tuple(sorted(in_order, key=lambda pair: (order[pair.a], order[pair.b])))

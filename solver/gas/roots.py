@@ -47,7 +47,7 @@ def physical_roots(A: Array, B: Array, equation: Equation) -> Roots:
     spread2 = bend**2 - slope0 / 3.0
     spread = np.sqrt(np.maximum(spread2, 0.0))
     right = bend + spread
-    # the product of the two stationary points is P'(0)/3: no digits lost where the left one is small
+    # the stationary points multiply to P'(0)/3: no digits lost where the left one is small
     with np.errstate(divide="ignore", invalid="ignore"):
         left = np.where((bend > 0.0) & (spread2 > 0.0), slope0 / (3.0 * right), bend - spread)
     value_left = _value(left, left - 1.0, A, B, c1, c2)

@@ -17,6 +17,12 @@ if TYPE_CHECKING:
 Array = NDArray[np.float64]
 Flags = NDArray[np.bool_]
 
+# Shipped values past these are estimates for the vapour of a salt or placeholders: the lowest
+# measured acentric factor is helium's, -0.38, and none is zero to five digits. Common practice, no
+# source.
+HOTTEST_SHIPPED = 1000.0
+LEAST_ACENTRIC_SHIPPED = -0.4
+NO_ACENTRIC = 1e-5
 NOBLE = frozenset({"He", "Ne", "Ar", "Kr", "Xe", "Rn"})
 # field: lowest and highest that can be meant, unit; common practice, no source
 LIMITS: dict[str, tuple[float, float, str]] = {
@@ -79,10 +85,18 @@ def may_be_modelled(sp: Species) -> bool:
 
     Not for ions and electrons, whose forces reach far, and not for a single atom other than a
     noble gas: constants listed for atomic sulfur or phosphorus are those of the boiling element,
-    whose vapour is S8 or P4.
+    whose vapour is S8 or P4. Of the shipped records, not those with an estimate or a placeholder.
     """
     atoms = sum(sp.elements.values())
-    return sp.charge == 0 and (atoms > 1 or next(iter(sp.elements)) in NOBLE)
+    if sp.charge != 0 or (atoms <= 1 and next(iter(sp.elements)) not in NOBLE):
+        return False
+    if sp.source == "user" or sp.Tc is None or sp.acentric is None:
+        return True
+    return (
+        sp.Tc <= HOTTEST_SHIPPED
+        and sp.acentric >= LEAST_ACENTRIC_SHIPPED
+        and abs(sp.acentric) >= NO_ACENTRIC
+    )
 
 
 def _within(name: str, value: float) -> bool:

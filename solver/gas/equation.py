@@ -46,13 +46,18 @@ class Equation:
         constant, linear, square = self.m_powers
         return constant + acentric * (linear + acentric * square)
 
-    def root_alpha(self, T: Array, Tc: Array, m: Array) -> Array:
-        """Square root of alpha(T), never below zero; T, Tc in K, shapes broadcast.
+    def root_alpha(self, T: Array, Tc: Array, m: Array) -> tuple[Array, Array, Array]:
+        """Square root of alpha(T), its T d/dT and (T d/dT)^2; T, Tc in K, shapes broadcast.
 
-        Beyond T = Tc (1 + 1/m)^2 the published bracket turns negative and its square would grow
-        again: a hot gas would attract more the hotter it is. The attraction stays zero instead.
+        Beyond T = Tc (1 + 1/m)^2 the published bracket 1 + m (1 - sqrt(T/Tc)) turns negative and
+        its square would grow again: a hot gas would attract more the hotter it is. The attraction
+        stays zero instead.
         """
-        return np.maximum(0.0, 1.0 + m * (1.0 - np.sqrt(T / Tc)))
+        fall = m * np.sqrt(T / Tc)
+        bracket = 1.0 + m - fall
+        pulls = bracket > 0.0
+        first = np.where(pulls, -0.5 * fall, 0.0)
+        return np.where(pulls, bracket, 0.0), first, 0.5 * first
 
 
 def _srk() -> Equation:

@@ -104,14 +104,11 @@ class Fluid:
         Tc, pc = self.Tc[real], self.pc[real]
         hot, ratio = T[:, None] / Tc, p[:, None] / pc
         slope = self.equation.m(self.acentric[real])
-        root_alpha = self.equation.root_alpha(T[:, None], Tc, slope)
-        # T d/dT of the bracket 1 + m (1 - sqrt(Tr)), zero where it is held at zero; its own T d/dT
-        # is half of it
-        bracket_T = np.where(root_alpha > 0.0, -0.5 * slope * np.sqrt(hot), 0.0)
-        front = np.sqrt(self.equation.omega_a * ratio) / hot
-        s = front * root_alpha
-        s_T = front * (bracket_T - root_alpha)
-        s_TT = front * (root_alpha - 1.5 * bracket_T)
+        alpha, alpha_T, alpha_TT = self.equation.root_alpha(T[:, None], Tc, slope)
+        front = np.sqrt(self.equation.omega_a * ratio) / hot  # falls as 1/T
+        s = front * alpha
+        s_T = front * (alpha_T - alpha)
+        s_TT = front * (alpha_TT - 2.0 * alpha_T + alpha)
 
         mix = self.mix[real]
         q = np.zeros((cases, S, m))

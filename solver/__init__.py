@@ -5,18 +5,21 @@ from solver.endstates import EndStates
 from solver.errors import InputError, NoEndState, NotProven, SettleError
 from solver.fed import Fed, as_fed
 from solver.fixed import PAIRS, Fixed
+from solver.gas_model import GAS_MODELS, GasModel
 from solver.proof import Proof
 from solver.restrictions import FixedConversion, HeldApproach, Inert, NoExchange
 from solver.settle import settle
 from solver.settle_many import settle_many
 
 __all__ = [
+    "GAS_MODELS",
     "PAIRS",
     "EndState",
     "EndStates",
     "Fed",
     "Fixed",
     "FixedConversion",
+    "GasModel",
     "HeldApproach",
     "Inert",
     "InputError",

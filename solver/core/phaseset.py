@@ -144,7 +144,7 @@ def _solve(
         finite = np.where(np.isfinite(p), p, P0)
         c = c + cases.mixture.volume * ((finite - P0) / (R * cases.T[which]))[:, None]
     mu = c[:, members] + result.log_a
-    _sink(c, mu, sinks, basis, live_gas)
+    sink(c, mu, sinks, basis, live_gas)
     y = np.zeros(c.shape)
     if not result.closed.all():
         y[:, live_gas] = result.y
@@ -243,7 +243,7 @@ def _shared(
     return swelling, Vessel(left, unit, w)
 
 
-def _sink(c: Array, mu: Array, sinks: list[Sink], basis: Basis, live: Indices) -> None:
+def sink(c: Array, mu: Array, sinks: list[Sink], basis: Basis, live: Indices) -> None:
     """Lower the potentials of forced-out combinations until nothing made of them counts."""
     if not sinks:
         return

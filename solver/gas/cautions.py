@@ -12,6 +12,7 @@ from typing import TYPE_CHECKING, Final
 import numpy as np
 from numpy.typing import NDArray
 
+from solver.gas.equation import FADES_BELOW
 from solver.gas.fluid import Fluid
 
 if TYPE_CHECKING:
@@ -79,13 +80,13 @@ def _no_attraction(fluid: Fluid, T: float, y: Array) -> str:
     real = fluid.modelled
     gone = np.zeros(real.size, dtype=bool)
     slope = fluid.equation.m(fluid.acentric[real])
-    gone[real] = fluid.equation.root_alpha(np.array(T), fluid.Tc[real], slope)[0] <= 0.0
+    gone[real] = fluid.equation.root_alpha(np.array(T), fluid.Tc[real], slope)[0] < FADES_BELOW
     found = _listed(fluid.species, gone & (y > MAIN))
     if not found:
         return ""
     return (
-        f"At {T:.4g} K the attraction of {found} has fallen to zero in the equation of state and "
-        "is held there; what is left is the volume of the molecules."
+        f"At {T:.4g} K the attraction of {found} has faded out in the equation of state; what is left "
+        "is the volume of the molecules."
     )
 
 

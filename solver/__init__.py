@@ -1,5 +1,6 @@
 """Where a reacting mixture ends up: the minimiser, its proof and what is built upon them."""
 
+from solver.beside import Beside, beside_ideal
 from solver.endstate import EndState
 from solver.endstates import EndStates
 from solver.errors import InputError, NoEndState, NotProven, SettleError
@@ -14,6 +15,7 @@ from solver.settle_many import settle_many
 __all__ = [
     "GAS_MODELS",
     "PAIRS",
+    "Beside",
     "EndState",
     "EndStates",
     "Fed",
@@ -29,6 +31,7 @@ __all__ = [
     "Proof",
     "SettleError",
     "as_fed",
+    "beside_ideal",
     "settle",
     "settle_many",
 ]

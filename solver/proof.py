@@ -88,11 +88,6 @@ class Proof:
         )
 
 
-def volume_held(off: float) -> bool:
-    """Whether a relative deviation from the volume held is within its limit."""
-    return off <= VOLUME_LIMIT
-
-
 def element_residuals(mixture: Mixture, n: Array, feed: Feed) -> tuple[Array, Array]:
     """Worst element residual over the largest total, and over each element's own total.
 

@@ -11,6 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 Array = NDArray[np.float64]
+FADES_BELOW = 0.1  # value of the bracket of alpha below which the attraction fades out
 
 
 @dataclass(frozen=True)
@@ -51,13 +52,23 @@ class Equation:
 
         Beyond T = Tc (1 + 1/m)^2 the published bracket 1 + m (1 - sqrt(T/Tc)) turns negative and
         its square would grow again: a hot gas would attract more the hotter it is. The attraction
-        stays zero instead.
+        stays gone instead. It must not stop at a corner: the cross terms go as the bracket itself,
+        and the enthalpy of a mixture would jump where one component reaches zero (nitrogen at
+        1031 K). So the last of the bracket, below `FADES_BELOW`, fades as an exponential with the
+        same value and slope.
         """
         fall = m * np.sqrt(T / Tc)
         bracket = 1.0 + m - fall
-        pulls = bracket > 0.0
-        first = np.where(pulls, -0.5 * fall, 0.0)
-        return np.where(pulls, bracket, 0.0), first, 0.5 * first
+        first = -0.5 * fall
+        fades = bracket < FADES_BELOW
+        if not np.any(fades):
+            return bracket, first, 0.5 * first
+        decay = np.exp(np.minimum(bracket / FADES_BELOW - 1.0, 0.0))
+        return (
+            np.where(fades, FADES_BELOW * decay, bracket),
+            decay * first,
+            decay * (0.5 * first + np.where(fades, first**2 / FADES_BELOW, 0.0)),
+        )
 
 
 def _srk() -> Equation:

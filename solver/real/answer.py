@@ -19,7 +19,15 @@ from solver.gas.cautions import cautions
 from solver.gas.fluid import make_fluid
 from solver.gas_model import GasModel
 from solver.posed import Posed
-from solver.proof import Proof, element_residuals, volume_held
+from solver.proof import (
+    ELEMENT_LIMIT,
+    ENERGY_LIMIT,
+    GAP_LIMIT,
+    TRACE_LIMIT,
+    VOLUME_LIMIT,
+    Proof,
+    element_residuals,
+)
 from solver.real.judge import LIQUID, packing
 from solver.real.problem import ROOTS, SLOTS, RealCases, RealMixture, make_real
 from solver.real.proof import STATIONARITY_LIMIT, RealProof, prove
@@ -59,7 +67,14 @@ class Judged:
     traces: Array
     energy: Array
     volume: Array
-    distance: Array
+
+    @property
+    def holds(self) -> NDArray[np.bool_]:
+        """Which proofs are within their limits."""
+        ok = (self.elements <= ELEMENT_LIMIT) & (self.traces <= TRACE_LIMIT)
+        ok &= (self.energy <= ENERGY_LIMIT) & (self.volume <= VOLUME_LIMIT)
+        ok &= (np.abs(self.proof.gap) <= GAP_LIMIT) & (self.n.min(axis=1) >= 0.0)
+        return ok & (self.proof.stationarity <= STATIONARITY_LIMIT)
 
 
 def judged(
@@ -71,7 +86,8 @@ def judged(
     cases = RealCases(real, feed.of(which), T, p)
     fluids, n = found.minima.fluids[which], found.minima.n[which]
     fluids = _named(cases, fluids)
-    proof = prove(cases, fluids, n, found.minima.potentials[which])
+    minima = found.minima
+    proof = prove(cases, fluids, n, minima.potentials[which], minima.distance[which])
     elements, traces = element_residuals(real.mixture, n, cases.feed)
     energy = np.zeros(len(which))
     if pair.searched is not None:
@@ -82,7 +98,7 @@ def judged(
         held = second[which]
         gone = fluids.sum(axis=(1, 2)) <= 0.0  # condensed phases need not fill a vessel
         volume = np.where(gone, 0.0, np.abs(found.totals["V"][which] - held) / held)
-    return Judged(which, cases, fluids, n, proof, elements, traces, energy, volume, proof.distance)
+    return Judged(which, cases, fluids, n, proof, elements, traces, energy, volume)
 
 
 def _named(cases: RealCases, fluids: Array) -> Array:
@@ -94,12 +110,11 @@ def _named(cases: RealCases, fluids: Array) -> Array:
         alone = (sizes[:, slot] > 0.0) & (np.delete(sizes, slot, axis=1).sum(axis=1) <= 0.0)
         if not alone.any():
             continue
-        M = (fluids[:, slot][:, None, :] @ cases.q)[:, 0]
-        one_root = ~cases.fluid.residual(M, "least").two
-        dense = packing(cases, every, fluids[:, slot], ROOTS[slot]) > LIQUID
+        dense, one_root = packing(cases, every, fluids[:, slot], ROOTS[slot])
+        dense_enough = dense > LIQUID
         cold = cases.T < _pseudocritical(cases, fluids[:, slot])
-        liquid = dense & cold & ~(fluids[:, slot][:, ~cases.modelled] > 0.0).any(axis=1)
-        move = alone & one_root & (liquid if slot == 0 else ~dense)
+        liquid = dense_enough & cold & ~(fluids[:, slot][:, ~cases.modelled] > 0.0).any(axis=1)
+        move = alone & one_root & (liquid if slot == 0 else ~dense_enough)
         out[move, other], out[move, slot] = fluids[move, slot], 0.0
     return out
 
@@ -126,10 +141,9 @@ def settle_real(
         raise found.why[0]
     state = judged(real, feed, pair, first, second, found)
     proof = _proof(state, 0, species, posed, gas)
-    faults = real_faults(state, 0)
-    if faults:
+    if not state.holds[0]:
         raise NotProven(
-            f"An end state was found but its proof is not within the limits ({faults}); "
+            f"An end state was found but its proof is not within the limits ({figures(state, 0)}); "
             "it is not shown.",
             "fixed",
             fixed,
@@ -137,19 +151,9 @@ def settle_real(
     return _end_state(posed, species, fixed, gas, scale, found, state, proof)
 
 
-def real_faults(state: Judged, k: int) -> str:
-    """Which figures of a proof are outside their limits, empty where none is."""
+def figures(state: Judged, k: int) -> str:
+    """The figures of one proof in words."""
     proof = state.proof
-    figures = Proof(
-        element_residual=float(state.elements[k]),
-        trace_residual=float(state.traces[k]),
-        energy_residual=float(state.energy[k]),
-        gap=float(proof.gap[k]),
-        absent={},
-    )
-    good = figures.holds and proof.stationarity[k] <= STATIONARITY_LIMIT
-    if good and volume_held(float(state.volume[k])) and state.n[k].min() >= 0.0:
-        return ""
     return (
         f"elements {state.elements[k]:.1e}, trace elements {state.traces[k]:.1e}, "
         f"energy {state.energy[k]:.1e}, volume {state.volume[k]:.1e}, "

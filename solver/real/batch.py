@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 from solver.fixed import Pair
 from solver.gas_model import GasModel
 from solver.posed import Posed
-from solver.real.answer import judged, real_faults, real_mixture
+from solver.real.answer import figures, judged, real_mixture
 from solver.real.problem import SLOTS
 from solver.real.search import find_states
 from solver.results import Results
@@ -51,13 +51,12 @@ def settle_real_chunk(
         )
         why[int(rows[i])] = str(explained(posed.mixture, pair, values, error, size))
     state = judged(real, posed.feed, pair, first, second, found)
-    faults = [real_faults(state, k) for k in range(len(state.which))]
-    for k, fault in enumerate(faults):
-        if fault:
-            why[int(rows[state.which[k]])] = (
-                f"An end state was found but its proof is not within the limits ({fault})."
-            )
-    ok = np.array([not fault for fault in faults], dtype=bool)
+    ok = state.holds
+    for k in np.flatnonzero(~ok):
+        why[int(rows[state.which[k]])] = (
+            "An end state was found but its proof is not within the limits "
+            f"({figures(state, int(k))})."
+        )
     some = state.which[ok]
     good = rows[some]
     out.settled[good] = True

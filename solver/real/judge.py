@@ -128,8 +128,8 @@ class Judge:
         q = cases.q[case]
         fluids = list(self.chosen.fluids)
         amounts = {slot: solved.fluids[row, f] for f, slot in enumerate(fluids)}
-        trial = packing(cases, case, w[None, :], "least")[0]
-        dense = [packing(cases, case, amounts[s][None, :], ROOTS[s])[0] for s in fluids]
+        trial = packing(cases, case, w[None, :], "least")[0][0]
+        dense = [packing(cases, case, amounts[s][None, :], ROOTS[s])[0][0] for s in fluids]
         if not fluids:
             slot = 1 if trial > LIQUID else 0
         elif fluids == [0] and trial < dense[0]:  # what was there is the liquid
@@ -199,12 +199,15 @@ class Judge:
         out.found[target] = True
 
 
-def packing(cases: RealCases, which: Indices, n: Array, root: str) -> Array:
-    """Volume fraction b/v of fluids of amounts n (cases, gas species)."""
+def packing(
+    cases: RealCases, which: Indices, n: Array, root: str
+) -> tuple[Array, NDArray[np.bool_]]:
+    """Volume fraction b/v of fluids of amounts n (cases, gas species), and if no root is beside."""
     M = (n[:, None, :] @ cases.q[which])[:, 0]
     residual = cases.fluid.residual(M, root)
     with np.errstate(divide="ignore", invalid="ignore"):
-        return np.asarray(np.where(M[:, 0] > 0.0, M[:, 1] / (M[:, 0] * residual.Z), 0.0))
+        dense = np.where(M[:, 0] > 0.0, M[:, 1] / (M[:, 0] * residual.Z), 0.0)
+    return dense, ~residual.two
 
 
 def chosen_members(cases: RealCases, active: tuple[int, ...], preference: Array) -> tuple[int, ...]:

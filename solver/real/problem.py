@@ -117,5 +117,10 @@ class RealCases:
         return len(self.T)
 
     def of(self, which: Indices) -> RealCases:
-        """Some of the cases."""
-        return RealCases(self.real, self.feed.of(which), self.T[which], self.p[which])
+        """Some of the cases, nothing computed again."""
+        out = object.__new__(RealCases)
+        out.__dict__.update(self.__dict__)
+        out.feed, out.ideal = self.feed.of(which), self.ideal.part(which)
+        for name in ("T", "p", "q", "qT", "qTT", "qp"):
+            setattr(out, name, getattr(self, name)[which])
+        return out

@@ -1,10 +1,11 @@
 """The figures that let a reviewer trust a real end state.
 
-Only amounts, potentials, the species' own g and the equation of state enter. For every
-species in every fluid phase ln(y phi p/p0) + g must equal a.lambda: that is the stationarity.
-The Gibbs energy of the state then lies over b.lambda by the gap. It is the least only if no
-phase of any composition lies below the tangent plane, which the starts of the tangent-plane
-test look for and cannot exclude: no better state found, no rigorous bound.
+Only amounts, potentials, the species' own g and the equation of state enter, and the least
+distance that the tangent-plane test came to at the same potentials. For every species in
+every fluid phase ln(y phi p/p0) + g must equal a.lambda: that is the stationarity. The Gibbs
+energy of the state then lies over b.lambda by the gap. It is the least only if no phase of any
+composition lies below the tangent plane, which the starts of the test look for and cannot
+exclude: no better state found, no rigorous bound.
 """
 
 from __future__ import annotations
@@ -15,7 +16,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from solver.real.problem import ROOTS, RealCases
-from solver.real.stability import STARTS, Trials, tangent_plane
+from solver.real.stability import STARTS
 
 Array = NDArray[np.float64]
 
@@ -47,7 +48,9 @@ class RealProof:
     starts: int = STARTS
 
 
-def prove(cases: RealCases, fluids: Array, n: Array, potentials: Array) -> RealProof:
+def prove(
+    cases: RealCases, fluids: Array, n: Array, potentials: Array, distance: Array
+) -> RealProof:
     """Judge states by their amounts and potentials.
 
     Parameters
@@ -55,6 +58,8 @@ def prove(cases: RealCases, fluids: Array, n: Array, potentials: Array) -> RealP
     fluids : ndarray, shape (cases, slots, gas species)
     n : ndarray, shape (cases, species)
     potentials : ndarray, shape (cases, rows)
+    distance : ndarray, shape (cases,)
+        What the tangent-plane test came to at these potentials.
     """
     mixture, gas = cases.mixture, cases.gas
     force = potentials @ mixture.A.T - cases.ideal.c
@@ -63,6 +68,8 @@ def prove(cases: RealCases, fluids: Array, n: Array, potentials: Array) -> RealP
     excess = -np.where(mixture.is_gas, 0.0, n * force).sum(axis=1)
     for slot, root in enumerate(ROOTS):
         amounts = fluids[:, slot]
+        if not amounts.any():
+            continue
         N = amounts.sum(axis=1, keepdims=True)
         residual = cases.fluid.residual((amounts[:, None, :] @ cases.q)[:, 0], root)
         log_phi = (cases.q @ residual.grad[:, :, None])[:, :, 0]
@@ -71,13 +78,6 @@ def prove(cases: RealCases, fluids: Array, n: Array, potentials: Array) -> RealP
         seen = amounts > _FAINT
         stationarity = np.maximum(stationarity, np.abs(np.where(seen, off, 0.0)).max(axis=1))
         excess += (amounts * off).sum(axis=1)
-    size = fluids.sum(axis=2, keepdims=True)
-    present = fluids / np.maximum(size, 1e-300)
-    trials = (
-        tangent_plane(cases, d, d > -650.0, present)
-        if gas.size
-        else Trials(np.zeros(len(cases)), np.zeros((len(cases), 0)))
-    )
     atoms = mixture.A @ mixture.atoms
     shift = np.zeros(len(cases))
     condensed = cases.real.condensed
@@ -85,7 +85,7 @@ def prove(cases: RealCases, fluids: Array, n: Array, potentials: Array) -> RealP
         shift = np.maximum(shift, (force[:, condensed] / atoms[condensed]).max(axis=1))
     if gas.size:
         least = min(float(atoms[gas].min()), 1.0)
-        shift = np.maximum(shift, -trials.distance / least)
+        shift = np.maximum(shift, -distance / least)
     b = cases.feed.totals
     gap = excess + ((n @ mixture.A - b) * potentials).sum(axis=1) + shift * (b @ mixture.atoms)
-    return RealProof(stationarity, trials.distance, gap / n.sum(axis=1), force)
+    return RealProof(stationarity, distance, gap / n.sum(axis=1), force)

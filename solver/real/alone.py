@@ -30,7 +30,9 @@ Indices = NDArray[np.intp]
 
 _P_LEAST = 1e-30  # Pa
 _MAX_EVALUATIONS = 160
-_NARROW = 4e-15
+_NARROW = 1e-15
+_MET = 1e-13
+_SLIVER = 1e-12  # of ln p: the Gibbs energies of two phases tell no more
 
 
 @dataclass(frozen=True)
@@ -171,27 +173,30 @@ class _Seeker:
 
     def at_volume(self, T: float, V: float, p: float) -> Ends:
         """The minimum at T whose volume is V, sought from p."""
-        ends: dict[bool, Ends] = {}
-        x = float(np.log(p))
+        large: Ends | None = None
+        small: Ends | None = None
+        x, width, tries = float(np.log(p)), np.inf, 0
         for count in range(_MAX_EVALUATIONS):
             at = self.at(T, float(np.exp(x)))
             off = float(np.log(at.value("V") / V))
-            if abs(off) <= 1e-14:
+            if abs(off) <= _MET:
                 return at
             if at.fluids.sum() <= 0.0 and off < 0.0 and at.p <= _P_LEAST:
                 return at  # nothing evaporates: condensed phases need not fill a vessel
-            ends[off > 0.0] = at
-            if len(ends) < 2:
-                step = float(np.clip(off, -8.0, 8.0))
-                step += np.sign(step) * 0.02 * 2.0**count
-                x += float(np.clip(step, -30.0, 30.0))
+            if off > 0.0:
+                large = at
+            else:
+                small = at
+            if large is None or small is None:
+                x += float(np.sign(off)) * min(abs(off) + 1e-3, 0.02 * 4.0**count)
                 if x > np.log(P_HIGHEST) or x < np.log(_P_LEAST):
                     raise Unsettled(f"no pressure up to {P_HIGHEST:g} Pa fits the volume")
                 continue
-            large, small = ends[True], ends[False]
-            if np.log(small.p / large.p) <= 16.0 * _NARROW:
+            last, width = width, float(np.log(small.p / large.p))
+            if width <= (_SLIVER if _jumps(large, small) else 16.0 * _NARROW):
                 return self._filled(large, small, V)
-            x = float(np.log(_meeting(large, small, V, count)))
+            tries = (tries + 1) % 3 if width > 0.5 * last else 0
+            x = _pressure(large, small, V, tries)
         raise Unsettled("no end of the search for the pressure")
 
     def _filled(self, large: Ends, small: Ends, V: float) -> Ends:
@@ -199,28 +204,36 @@ class _Seeker:
         return self.blend(large, small, (top - V) / (top - bottom))
 
 
-def _meeting(large: Ends, small: Ends, V: float, count: int) -> float:
-    """A pressure between two ends for the volume V between theirs.
+def _jumps(first: Ends, second: Ends) -> bool:
+    """Whether two ends have different phases, so that something may jump between them."""
+    there = (first.fluids.sum(axis=1) > 0.0) != (second.fluids.sum(axis=1) > 0.0)
+    return bool(there.any() or ((first.n > 0.0) != (second.n > 0.0)).any())
+
+
+def _pressure(large: Ends, small: Ends, V: float, tries: int) -> float:
+    """ln of a pressure between two ends, for the volume V between theirs.
 
     Where the volume jumps between them, their Gibbs energies, carried on with the volumes,
-    meet at the pressure of the jump; else the logarithms of the volumes lead there.
+    meet at the pressure of the jump; else the logarithms of the volumes lead there. What
+    creeps is halved.
     """
-    x_low, x_high = np.log(large.p), np.log(small.p)
-    middle = float(np.exp(0.5 * (x_low + x_high)))
-    if count % 3 == 2:
-        return middle
-    if count % 3 == 0:
-        V_l, V_s = large.value("V"), small.value("V")
+    x_low, x_high = float(np.log(large.p)), float(np.log(small.p))
+    if tries == 2:
+        return 0.5 * (x_low + x_high)
+    if _jumps(large, small) and tries == 0:
+        V_l, V_s, middle = large.value("V"), small.value("V"), 0.5 * (large.p + small.p)
         p = middle + (
             (small.value("G") + V_s * (middle - small.p))
             - (large.value("G") + V_l * (middle - large.p))
         ) / (V_l - V_s)
+        x = float(np.log(p)) if large.p < p < small.p else 0.5 * (x_low + x_high)
     else:
         share = np.log(large.value("V") / V) / np.log(large.value("V") / small.value("V"))
-        p = float(np.exp(x_low + share * (x_high - x_low)))
-    reach = 2.0 ** (count % 9) * 4e-16 * middle
-    p = min(max(p, large.p + reach), small.p - reach)
-    return p if large.p < p < small.p else middle
+        x = x_low + float(share) * (x_high - x_low)
+    # a little beyond it as seen from the nearer end, so that the farther end comes up
+    reach = max(0.4 * _SLIVER, 0.25 * (x_high - x_low) ** 2)
+    x += reach if x - x_low < x_high - x else -reach
+    return min(max(x, x_low + 4.0 * _NARROW), x_high - 4.0 * _NARROW)
 
 
 def _seek(
@@ -234,11 +247,12 @@ def _seek(
     low: Ends | None = None
     high: Ends | None = None
     T = float(np.clip(T, T_LOWEST, T_HIGHEST))
+    width, tries = np.inf, 0
     for count in range(_MAX_EVALUATIONS):
         ends = at(T)
         excess = ends.value(variable) - value
         unit = R * float(ends.n.sum()) * (1.0 if variable == "S" else T)
-        if abs(excess) <= 2e-13 * unit:
+        if abs(excess) <= (2e-13 if width > 1e-9 * T else 5e-12) * unit:
             return ends
         if excess < 0.0:
             low = ends
@@ -249,33 +263,38 @@ def _seek(
             if T <= T_LOWEST:
                 raise OutOfReach("below", T, ends.value(variable))
         if low is None or high is None:
-            factor = 1.03 if count < 2 else 1.5
+            factor = 1.0 + 0.01 * 3.0 ** min(count, 4)
             T = float(np.clip(T * factor if high is None else T / factor, T_LOWEST, T_HIGHEST))
             continue
-        if high.T - low.T <= 4.0 * np.spacing(high.T):
+        last, width = width, high.T - low.T
+        if width <= 4.0 * np.spacing(high.T):
             bottom, top = low.value(variable), high.value(variable)
             if abs(excess) <= 1e-11 * unit:
                 return ends
             return blend(low, high, (value - bottom) / (top - bottom))
-        T = _between(low, high, variable, value, count)
+        tries = (tries + 1) % 3 if width > 0.5 * last else 0
+        T = _temperature(low, high, variable, value, tries)
     raise Unsettled("no end of the search for the temperature")
 
 
-def _between(low: Ends, high: Ends, variable: str, value: float, count: int) -> float:
-    """A temperature between two ends."""
+def _temperature(low: Ends, high: Ends, variable: str, value: float, tries: int) -> float:
+    """A temperature between two ends, as `_pressure`."""
     middle = 0.5 * (low.T + high.T)
-    if count % 3 == 2:
+    if tries == 2:
         return middle
-    if count % 3 == 0 and low.p == high.p:
-        # where the free energies of the ends meet, carried on with their entropies
+    if low.p == high.p and _jumps(low, high) and tries == 0:
+        # where the Gibbs energies of the ends meet, carried on with their entropies
         S_low, S_high = low.value("S"), high.value("S")
         T = middle + (
             (high.value("G") + S_high * (high.T - middle))
             - (low.value("G") + S_low * (low.T - middle))
         ) / max(S_high - S_low, 1e-300)
+        T = T if low.T < T < high.T else middle
     else:
         bottom, top = low.value(variable), high.value(variable)
         T = low.T + (high.T - low.T) * (value - bottom) / (top - bottom)
-    reach = 2.0 ** (count % 9) * float(np.spacing(middle))
-    T = min(max(T, low.T + reach), high.T - reach)
+    ulp = float(np.spacing(middle))
+    reach = max(2e-14 * middle, (high.T - low.T) ** 2 / middle)
+    T += reach if T - low.T < high.T - T else -reach
+    T = min(max(T, low.T + ulp), high.T - ulp)
     return float(T) if low.T < T < high.T else middle

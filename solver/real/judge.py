@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 from solver.core.basis import choose_members
 from solver.real.newton import Solved
 from solver.real.problem import ROOTS, SLOTS, RealCases
-from solver.real.stability import UNSTABLE, tangent_plane
+from solver.real.stability import tangent_plane
 from solver.real.states import Minima, PhaseSet
 
 Array = NDArray[np.float64]
@@ -116,7 +116,7 @@ class Judge:
             present = np.zeros((len(rows), 1, cases.gas.size))
         trials = tangent_plane(part, d, live, present)
         self.out.distance[self.which[rows]] = trials.distance
-        low = trials.distance < UNSTABLE
+        low = trials.distance < -cases.ideal.force_tolerance[self.which[rows]]
         for row, w in zip(rows[low], trials.w[low], strict=True):
             self._take_in(int(row), w)
         return np.asarray(rows[~low])
@@ -148,7 +148,9 @@ class Judge:
         amounts[slot] = w * max(_ENTERS * most, 1e-12)
         slots = tuple(sorted(amounts))
         if len(slots) + len(self.chosen.active) > cases.mixture.rank:
-            return  # a phase must go for it: the linear program says which
+            if len(slots) > 2 or self.chosen.active:
+                return  # a phase must go for it: the linear program says which
+            slots, amounts = (slot,), {slot: w * max(most, 1e-12)}
         self._change(np.array([row]), self.chosen.active, slots)
         for s, fluid in amounts.items():
             size = fluid.sum()

@@ -35,6 +35,7 @@ Flags = NDArray[np.bool_]
 _MAX_STEPS = 30
 _CLOSED = 2e-13
 _ROUNDING = 2e-11
+_STALE = 4  # steps that come no nearer, as on a jump
 _T_STEP, _P_STEP = 0.4, 1.5  # largest change of ln T and ln p
 
 
@@ -80,11 +81,12 @@ def find_states(
         _keep(out, np.arange(len(T)), minima, state_functions(whole, minima.fluids, minima.n))
         out.why.update(minima.why)
         return out
+    T, p = T.copy(), p.copy()  # the search moves on from these
     left = _seek(real, feed, target, features, out)
     for i in left:
         one = feed.of(np.array([i]))
         try:
-            ends = seek_alone(real, one, target.of(np.array([i])), float(out.T[i]), float(out.p[i]))
+            ends = seek_alone(real, one, target.of(np.array([i])), float(T[i]), float(p[i]))
         except (OutOfReach, Unsettled) as error:
             out.why[int(i)] = error
             continue
@@ -125,6 +127,7 @@ def _seek(real: RealMixture, feed: Feed, target: Target, features: Array, out: F
     lost: list[int] = []
     minima: Minima | None = None
     low, high = np.full(count, -np.inf), np.full(count, np.inf)  # of the one unknown
+    best, stale = np.full(count, np.inf), np.zeros(count, dtype=np.intp)
     for _ in range(_MAX_STEPS):
         if not going.size:
             break
@@ -150,7 +153,11 @@ def _seek(real: RealMixture, feed: Feed, target: Target, features: Array, out: F
         size = np.abs(step).max(axis=1)
         # rounding decides: nothing nearer can be asked for
         ended |= minima.found & (size <= 1e-15) & (np.abs(F).max(axis=1) <= _ROUNDING)
-        bad = ~minima.found | ~np.isfinite(size)
+        worst = np.abs(F).max(axis=1)
+        nearer = worst < 0.5 * best[going]
+        stale[going] = np.where(nearer, 0, stale[going] + 1)
+        best[going] = np.where(nearer, worst, best[going])
+        bad = ~minima.found | ~np.isfinite(size) | (stale[going] > _STALE)
         shrink = np.maximum(np.abs(step[:, 0]) / _T_STEP, np.abs(step[:, 1]) / _P_STEP)
         step /= np.maximum(shrink, 1.0)[:, None]
         if not (move_T and move_p):
@@ -164,7 +171,6 @@ def _seek(real: RealMixture, feed: Feed, target: Target, features: Array, out: F
             astray &= np.isfinite(low[going]) & np.isfinite(high[going])
             middle = 0.5 * (low[going] + high[going])
             step[:, k] = np.where(astray, middle - x, step[:, k])
-            bad |= ~ended & (high[going] - low[going] < 1e-13)
         _keep(out, going, minima, state, ended)
         T = cases.T * np.exp(step[:, 0])
         p = cases.p * np.exp(step[:, 1])

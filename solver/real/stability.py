@@ -26,11 +26,9 @@ Flags = NDArray[np.bool_]
 PURE = 3
 """Trial phases that start from a nearly pure substance."""
 STARTS = 2 + PURE
-UNSTABLE = -1e-10
-"""Tangent-plane distance, in RT, from which a trial phase is taken in."""
-
 _MAX_STEPS, _STEPS_AT_FIRST = 120, 12
 _DONE, _SAME = 1e-11, 1e-5
+_LOW = -1e-7
 _PURE = 0.98
 _LIQUEFIES = 1.3  # T/Tc up to which a substance is tried as a liquid
 
@@ -85,7 +83,7 @@ def tangent_plane(cases: RealCases, d: Array, live: Flags, present: Array) -> Tr
             same = np.abs(new[:, None, :] - present[case]).max(axis=2).min(axis=1) < _SAME
             going = (change > _DONE) & ~same & np.isfinite(change)
             if step >= _STEPS_AT_FIRST:  # a case is lost to the state by its first low trial
-                going &= best[case] > 1e3 * UNSTABLE
+                going &= best[case] > _LOW
             if not going.any():
                 break
             case, w, may = case[going], new[going], may[going]

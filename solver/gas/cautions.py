@@ -85,8 +85,8 @@ def _no_attraction(fluid: Fluid, T: float, y: Array) -> str:
     if not found:
         return ""
     return (
-        f"At {T:.4g} K the attraction of {found} has faded out in the equation of state; what is left "
-        "is the volume of the molecules."
+        f"At {T:.4g} K the attraction of {found} has faded out in the equation of state; what is "
+        "left is the volume of the molecules."
     )
 
 

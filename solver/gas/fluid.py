@@ -99,29 +99,36 @@ class Fluid:
 
     def at(self, T: Array, p: Array) -> Moments:
         """Moments per mole at T in K and p in Pa, arrays (cases,)."""
-        cases, S, m = T.size, self.modelled.size, self.count
-        real = self.modelled
+        eq, real = self.equation, np.flatnonzero(self.modelled)
         Tc, pc = self.Tc[real], self.pc[real]
-        hot, ratio = T[:, None] / Tc, p[:, None] / pc
-        slope = self.equation.m(self.acentric[real])
-        alpha, alpha_T, alpha_TT = self.equation.root_alpha(T[:, None], Tc, slope)
-        front = np.sqrt(self.equation.omega_a * ratio) / hot  # falls as 1/T
-        s = front * alpha
-        s_T = front * (alpha_T - alpha)
-        s_TT = front * (alpha_TT - 2.0 * alpha_T + alpha)
+        alpha, alpha_T, alpha_TT = eq.root_alpha(T[:, None], Tc, eq.m(self.acentric[real]))
+        # sqrt(A) = sqrt(omega_a p / pc) Tc / T sqrt(alpha): the front falls as 1/T
+        front = (np.sqrt(p) / T)[:, None] * (np.sqrt(eq.omega_a / pc) * Tc)
+        covolume = (p / T)[:, None] * (eq.omega_b * Tc / pc)
+        count = self.count
+        mix = np.zeros((real.size, count))
+        mix[:, 2:] = self.mix[real]
+        power = np.full(count, 0.5)
+        power[:2] = 0.0, 1.0
 
-        mix = self.mix[real]
-        q = np.zeros((cases, S, m))
-        qT, qTT, qp = np.zeros_like(q), np.zeros_like(q), np.zeros_like(q)
-        q[:, real, 0] = 1.0
-        covolume = self.equation.omega_b * ratio / hot
-        q[:, real, 1] = qp[:, real, 1] = qTT[:, real, 1] = covolume
-        qT[:, real, 1] = -covolume
-        q[:, real, 2:] = s[:, :, None] * mix
-        qT[:, real, 2:] = s_T[:, :, None] * mix
-        qTT[:, real, 2:] = s_TT[:, :, None] * mix
-        qp[:, :, 2:] = 0.5 * q[:, :, 2:]
-        return Moments(q, qT, qTT, qp)
+        def spread(part: Array, of_amount: float, of_covolume: float) -> Array:
+            """Rows of the modelled species, the others zero."""
+            rows = np.repeat(front * part, count, axis=1)
+            rows *= mix.ravel()
+            rows = rows.reshape(T.size, real.size, count)
+            rows[:, :, 0] = of_amount
+            rows[:, :, 1] = of_covolume * covolume
+            out = np.zeros((T.size, self.modelled.size, count))
+            out[:, real] = rows
+            return out
+
+        q = spread(alpha, 1.0, 1.0)
+        return Moments(
+            q=q,
+            qT=spread(alpha_T - alpha, 0.0, -1.0),
+            qTT=spread(alpha_TT - 2.0 * alpha_T + alpha, 0.0, 1.0),
+            qp=q * power,
+        )
 
     def residual(self, M: Array, root: str = "least") -> Residual:
         """G_res / RT at moments M (cases, count), with first and second derivatives.

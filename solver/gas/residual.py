@@ -25,6 +25,14 @@ Flags = NDArray[np.bool_]
 ROOTS = ("least", "vapour", "liquid")
 SERIES_BELOW = 0.06
 SERIES_TERMS = 14
+# of artanh(t) / t = sum y^k / (2 k + 1), y = t^2, and of its first two derivatives by y
+SERIES: Array = np.array(
+    [
+        [1.0 / (2 * k + 1) for k in range(SERIES_TERMS)],
+        [(k + 1.0) / (2 * k + 3) for k in range(SERIES_TERMS)],
+        [(k + 1.0) * (k + 2) / (2 * k + 5) for k in range(SERIES_TERMS)],
+    ]
+)
 
 
 @dataclass(frozen=True)
@@ -92,29 +100,16 @@ def _lump(t: Array) -> tuple[Array, Array, Array]:
     """artanh(t) / t and its first two derivatives by t^2, for 0 <= t < 1."""
     y = t**2
     series = y < SERIES_BELOW
-    if np.all(series):
-        return _lump_series(y)
-    with np.errstate(divide="ignore", invalid="ignore"):
-        value = np.arctanh(t) / t
-        first = (1.0 / (1.0 - y) - value) / (2.0 * y)
-        second = (1.0 / (1.0 - y) ** 2 - 3.0 * first) / (2.0 * y)
-    if np.any(series):
-        for part, near in zip((value, first, second), _lump_series(y[series]), strict=True):
-            part[series] = near
+    # the closed forms would cancel near zero: a power series there
+    value, first, second = SERIES @ np.vander(np.where(series, y, 0.0), SERIES_TERMS, True).T
+    if not np.all(series):
+        far = ~series
+        t, y = t[far], y[far]
+        a = np.arctanh(t) / t
+        a1 = (1.0 / (1.0 - y) - a) / (2.0 * y)
+        value[far], first[far] = a, a1
+        second[far] = (1.0 / (1.0 - y) ** 2 - 3.0 * a1) / (2.0 * y)
     return value, first, second
-
-
-def _lump_series(y: Array) -> tuple[Array, Array, Array]:
-    """sum y^k / (2 k + 1) and its derivatives, where the closed forms would cancel."""
-    value = np.zeros_like(y)
-    first = np.zeros_like(y)
-    second = np.zeros_like(y)
-    for k in range(SERIES_TERMS, 0, -1):
-        value = value * y + 1.0 / (2 * k + 1)
-        first = first * y + k / (2 * k + 1)
-        if k > 1:
-            second = second * y + k * (k - 1) / (2 * k + 1)
-    return value * y + 1.0, first, second
 
 
 def _derivatives(

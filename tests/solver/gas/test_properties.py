@@ -166,3 +166,17 @@ def test_a_species_left_out_is_ideal():
     )
     assert both.H == one.H
     assert both.V[0] == pytest.approx(one.V[0] + 3.0 * R * T[0] / p[0], rel=1e-14)
+
+
+@BOTH
+@pytest.mark.parametrize("root", ["least", "vapour", "liquid"])
+def test_finite_at_any_temperature_and_pressure(key: str, root: str):
+    """10 to 10,000 K, 1e-30 to 1e13 Pa, traces and tonnes: finite, and never below the covolume."""
+    fluid = fluid_of((*MIXED, "He"), key)
+    rng = np.random.default_rng(6)
+    T, p = 10.0 ** rng.uniform(1, 4, 3000), 10.0 ** rng.uniform(-30, 13, 3000)
+    n = rng.dirichlet(np.full(8, 0.2), 3000) * 10.0 ** rng.uniform(-20, 10, (3000, 1))
+    at = residual_properties(fluid, T, p, n, root)
+    for part in (at.G, at.H, at.S, at.U, at.cp, at.V_res, dlnphi_dn(fluid, T, p, n, root)):
+        assert np.isfinite(part).all()
+    assert np.all(at.V > n @ fluid.b)

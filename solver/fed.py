@@ -3,21 +3,24 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
+from numpy.typing import NDArray
 
 from solver.core.mixture import condensed_volume
 from solver.core.thermo import ThermoTable
-from solver.core.totals import totals
+from solver.core.totals import Totals, totals
 from solver.errors import InputError
 from solver.fixed import checked_value
 from solver.gas_model import GasModel, gas_model
 
 if TYPE_CHECKING:
     from species_db import Species
+
+Array = NDArray[np.float64]
 
 MOST = 1e30  # mol
 
@@ -35,7 +38,14 @@ class Fed:
     G: float
 
 
-def as_fed(feed: Mapping[Species, float], T: float, p: float, gas: str | GasModel = "ideal") -> Fed:
+def as_fed(
+    feed: Mapping[Species, float],
+    T: float,
+    p: float,
+    gas: str | GasModel = "ideal",
+    *,
+    species: Sequence[Species] | None = None,
+) -> Fed:
     """State of the mixture as fed: gases mixed, condensed species beside them, no reaction.
 
     Parameters
@@ -46,7 +56,10 @@ def as_fed(feed: Mapping[Species, float], T: float, p: float, gas: str | GasMode
         K, Pa.
     gas : str or GasModel
         Gas model. With an equation of state the gases mix by it, and split into gas and liquid
-        where they do at T and p.
+        where they do at T and p; a pure liquid whose gas it holds is its liquid too.
+    species : sequence of Species, optional
+        The candidates that the feed will be settled among: a pure liquid is taken by its own
+        record if its gas is none of them. Without them the library is asked for the gas.
 
     Raises
     ------
@@ -55,8 +68,8 @@ def as_fed(feed: Mapping[Species, float], T: float, p: float, gas: str | GasMode
     """
     model = gas_model(gas)
     T, p = checked_value("T", T), checked_value("p", p)
-    species = list(feed)
-    for sp in species:
+    fed = list(feed)
+    for sp in fed:
         if isinstance(sp, str):
             raise InputError(
                 f"The feed as fed needs Species, not the key {sp!r}; look it up in the library.",
@@ -67,22 +80,50 @@ def as_fed(feed: Mapping[Species, float], T: float, p: float, gas: str | GasMode
     n = np.array([checked_amount(sp.key, amount) for sp, amount in feed.items()])
     if not n.sum() > 0.0:
         raise InputError("The feed is empty; give at least one amount.", "feed", 0.0, "above 0 mol")
-    thermo = ThermoTable(species)
-    is_gas = np.array([sp.phase == "gas" for sp in species])
-    at_T, at_p = np.array([T]), np.array([p])
-    g, h, _ = thermo.over(at_T)
-    volume = np.array([condensed_volume(sp) for sp in species])
-    fluid = is_gas & (n > 0.0)
-    ideal = n if model.is_ideal else np.where(is_gas, 0.0, n)
-    state = totals(ideal[None, :], is_gas, volume, g, h, at_T, at_p, None)
-    values = {name: float(getattr(state, name)[0]) for name in ("V", "H", "U", "S", "G")}
-    if not model.is_ideal and fluid.any():
-        from solver.real.feed import fluid_as_fed  # an ideal gas does without
+    parts = [_beside(fed, n, T, p)] if model.is_ideal else _real_parts(fed, n, T, p, model, species)
+    names = ("V", "H", "U", "S", "G")
+    return Fed(
+        T=T, p=p, **{name: sum(float(getattr(part, name)[0]) for part in parts) for name in names}
+    )
 
-        gases = [sp for sp, held in zip(species, fluid, strict=True) if held]
-        real = fluid_as_fed(gases, n[fluid], T, p, model)
-        values = {name: value + float(getattr(real, name)[0]) for name, value in values.items()}
-    return Fed(T=T, p=p, **values)
+
+def _beside(species: Sequence[Species], n: Array, T: float, p: float) -> Totals:
+    """An ideal gas and pure condensed species beside it."""
+    at_T, at_p = np.array([T]), np.array([p])
+    g, h, _ = ThermoTable(species).over(at_T)
+    is_gas = np.array([sp.phase == "gas" for sp in species])
+    volume = np.array([condensed_volume(sp) for sp in species])
+    return totals(n[None, :], is_gas, volume, g, h, at_T, at_p, None)
+
+
+def _real_parts(
+    fed: Sequence[Species],
+    n: Array,
+    T: float,
+    p: float,
+    gas: GasModel,
+    candidates: Sequence[Species] | None,
+) -> list[Totals]:
+    """The fluid, each liquid that the equation of state holds, and the rest."""
+    from solver.real.feed import (  # an ideal gas does without
+        fluid_as_fed,
+        held_by_equation,
+        liquid_as_fed,
+    )
+
+    own = held_by_equation(fed, candidates, gas)
+    gases = [k for k, sp in enumerate(fed) if sp.phase == "gas" and n[k] > 0.0]
+    rest = [k for k, sp in enumerate(fed) if sp.phase != "gas" and sp.key not in own]
+    parts = [
+        liquid_as_fed(own[sp.key], float(amount), T, p, gas)
+        for sp, amount in zip(fed, n, strict=True)
+        if sp.key in own and amount > 0.0
+    ]
+    if gases:
+        parts.append(fluid_as_fed([fed[k] for k in gases], n[gases], T, p, gas))
+    if rest:
+        parts.append(_beside([fed[k] for k in rest], n[rest], T, p))
+    return parts
 
 
 def checked_amount(key: str, amount: object) -> float:

@@ -8,7 +8,8 @@ A_i = a_i(T) p / (RT)^2:
     A M_0^2 = M_2^2 - sum_r lambda_r M_r^2,
 
 where lambda_r and U_r are the eigenvalues and eigenvectors of the matrix k. A species that is not
-modelled has a row of zeros: it is ideal in the mixture.
+modelled has no volume and no attraction of its own: it adds to the number of moles alone, as an
+ideal gas does, and stays out of dense phases by itself, ln phi = -ln(Z - B).
 """
 
 from __future__ import annotations
@@ -112,13 +113,14 @@ class Fluid:
         power[:2] = 0.0, 1.0
 
         def spread(part: Array, of_amount: float, of_covolume: float) -> Array:
-            """Rows of the modelled species, the others zero."""
+            """Rows of the modelled species; the others are points without attraction."""
             rows = np.repeat(front * part, count, axis=1)
             rows *= mix.ravel()
             rows = rows.reshape(T.size, real.size, count)
             rows[:, :, 0] = of_amount
             rows[:, :, 1] = of_covolume * covolume
             out = np.zeros((T.size, self.modelled.size, count))
+            out[:, :, 0] = of_amount
             out[:, real] = rows
             return out
 

@@ -5,8 +5,8 @@ Everything follows from F = G_res / RT of the moments M = n @ q. With ' for T d/
     ln phi = q grad F                     H_res / RT = -F' = -grad F . (n @ qT)
     p V_res / RT = grad F . (n @ qp)      cp_res / R = -(F' + F'')
 
-"Residual" is against the ideal gas of the same T, p and amounts. A species that is not modelled
-has phi = 1 and adds nothing. Shapes: T, p (cases,) in K and Pa, n (cases, S) in mol.
+"Residual" is against the ideal gas of the same T, p and amounts.
+Shapes: T, p (cases,) in K and Pa, n (cases, S) in mol.
 """
 
 from __future__ import annotations
@@ -78,9 +78,6 @@ def residual_properties(
     volume_ideal = R * T / p
     G, H = R * T * at.F, -R * T * F_T
     V_res = volume_ideal * _dot(at.grad, _sum(n, moments.qp))
-    total = n.sum(axis=1)
-    # from Z itself: in a liquid V is a small rest of the ideal volume
-    amount = total - M[:, 0] + M[:, 0] * at.Z
     return ResidualProperties(
         G=G,
         H=H,
@@ -88,8 +85,9 @@ def residual_properties(
         U=H - p * V_res,
         cp=-R * (F_T + F_TT),
         V_res=V_res,
-        V=volume_ideal * amount,
-        Z=amount / np.where(total > 0.0, total, 1.0),
+        # from Z itself: in a liquid V is a small rest of the ideal volume
+        V=volume_ideal * M[:, 0] * at.Z,
+        Z=at.Z,
     )
 
 

@@ -40,7 +40,7 @@ class Residual:
     """F = G_res / RT of each case and its derivatives by the moments.
 
     F (cases,) in mol, grad (cases, m) without unit, hess (cases, m, m) in 1/mol, Z (cases,) the
-    compressibility factor of the modelled species, two (cases,) whether the equation of state
+    compressibility factor, two (cases,) whether the equation of state
     has three distinct real roots here. hess @ M = 0 and grad . M = F (F is homogeneous).
     """
 

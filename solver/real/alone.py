@@ -188,7 +188,10 @@ class _Seeker:
             else:
                 small = at
             if large is None or small is None:
-                x += float(np.sign(off)) * min(abs(off) + 1e-3, 0.02 * 4.0**count)
+                step = min(0.02 * 4.0**count, 30.0)
+                if at.fluids[0].sum() > 0.0:  # a gas gives way as much as it is pressed
+                    step = min(step, 1.05 * abs(off) + 1e-12 * 4.0**count)
+                x += float(np.sign(off)) * step
                 if x > np.log(P_HIGHEST) or x < np.log(_P_LEAST):
                     raise Unsettled(f"no pressure up to {P_HIGHEST:g} Pa fits the volume")
                 continue

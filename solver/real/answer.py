@@ -113,7 +113,7 @@ def _named(cases: RealCases, fluids: Array) -> Array:
         dense, one_root = packing(cases, every, fluids[:, slot], ROOTS[slot])
         dense_enough = dense > LIQUID
         cold = cases.T < _pseudocritical(cases, fluids[:, slot])
-        liquid = dense_enough & cold & ~(fluids[:, slot][:, ~cases.modelled] > 0.0).any(axis=1)
+        liquid = dense_enough & cold
         move = alone & one_root & (liquid if slot == 0 else ~dense_enough)
         out[move, other], out[move, slot] = fluids[move, slot], 0.0
     return out
@@ -121,7 +121,7 @@ def _named(cases: RealCases, fluids: Array) -> Array:
 
 def _pseudocritical(cases: RealCases, n: Array) -> Array:
     """Mean critical temperature by mole fraction (Kay's rule), K."""
-    modelled = cases.modelled
+    modelled = cases.fluid.modelled
     part = n[:, modelled]
     with np.errstate(divide="ignore", invalid="ignore"):
         mean = part @ cases.fluid.Tc[modelled] / part.sum(axis=1)

@@ -84,7 +84,6 @@ class Columns:
         for w, _ in (part for part in parts if part[1] <= _DENSE):
             fluids[0] = fluids.get(0, np.zeros(gas.size)) + w
         for w, _ in (part for part in parts if part[1] > _DENSE):
-            w = np.where(cases.modelled, w, 0.0)
             slot = 1
             if 1 in fluids:
                 apart = np.abs(w / w.sum() - fluids[1] / fluids[1].sum()).max()

@@ -42,8 +42,7 @@ def state_functions(cases: RealCases, fluids: Array, n: Array) -> Totals:
         residual = cases.fluid.residual((amounts[:, None, :] @ cases.q)[:, 0], root)
         heat = -_times(residual.grad, amounts, cases.qT)
         # from Z itself: a liquid takes but a small part of the ideal volume
-        held = amounts[:, cases.modelled].sum(axis=1)
-        V += RT / p * (amounts[:, ~cases.modelled].sum(axis=1) + held * residual.Z)
+        V += RT / p * amounts.sum(axis=1) * residual.Z
         H += RT * heat
         S += R * (heat - residual.F)
     return Totals(V=V, H=H, U=H - p * V, S=S, G=H - T * S)

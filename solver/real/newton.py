@@ -216,10 +216,9 @@ def _iterate(
 ) -> tuple[_State, Flags, Indices]:
     count, r = b.shape
     q = cases.q
-    inside = np.array([live & (cases.modelled if slot else True) for slot in slots])
     log_n = (log_a @ a.T - kappa)[:, None, :] + nu[:, :, None]
     log_n -= np.einsum("cgm,cfm->cfg", q, theta)
-    log_n[:, ~inside] = -np.inf
+    log_n[:, :, ~live] = -np.inf
     state = _State(log_a.copy(), nu.copy(), theta.copy(), log_n)
     whole = _State(state.log_a.copy(), state.nu.copy(), state.theta.copy(), log_n.copy())
     index = np.arange(count)
@@ -344,4 +343,5 @@ def _apply(state: _State, move: Array, a: Array, q: Array, fluids: int) -> Array
     change -= np.einsum("cgm,cfm->cfg", q, dtheta)
     state.log_n += change
     there = state.log_n > state.nu[:, :, None] - 690.0
-    return np.asarray(np.where(there, np.abs(change), 0.0).max(axis=(1, 2), initial=0.0))
+    size = np.where(there, np.abs(change), 0.0).max(axis=(1, 2), initial=0.0)
+    return np.asarray(np.where(np.isfinite(move).all(axis=1), size, np.nan))

@@ -111,7 +111,6 @@ class RealCases:
         moments = real.fluid.at(T, p)
         self.q, self.qT, self.qTT, self.qp = moments.q, moments.qT, moments.qTT, moments.qp
         self.gas = real.mixture.gas
-        self.modelled = real.fluid.modelled
 
     def __len__(self) -> int:
         return len(self.T)

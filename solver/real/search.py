@@ -169,8 +169,8 @@ def _seek(real: RealMixture, feed: Feed, target: Target, features: Array, out: F
             new = x + step[:, k]
             astray = (new <= low[going]) | (new >= high[going])
             astray &= np.isfinite(low[going]) & np.isfinite(high[going])
-            middle = 0.5 * (low[going] + high[going])
-            step[:, k] = np.where(astray, middle - x, step[:, k])
+            middle = 0.5 * (low[going][astray] + high[going][astray])
+            step[astray, k] = middle - x[astray]
         _keep(out, going, minima, state, ended)
         T = cases.T * np.exp(step[:, 0])
         p = cases.p * np.exp(step[:, 1])

@@ -66,8 +66,7 @@ def tangent_plane(cases: RealCases, d: Array, live: Flags, present: Array) -> Tr
     count, tries, gases = starts.shape
     case = np.repeat(np.arange(count), tries)
     w = starts.reshape(-1, gases)
-    # what stays ideal has no part in a liquid
-    may = live[case] & (cases.modelled | (np.tile(np.arange(tries), count) == 0)[:, None])
+    may = live[case]
     used = w.sum(axis=1) > 0.0
     case, w, may = case[used], w[used], may[used]
     best = np.zeros(count)
@@ -114,10 +113,11 @@ def _starts(cases: RealCases, d: Array, live: Flags) -> Array:
     count, gases = d.shape
     out = np.zeros((count, STARTS, gases))
     d = np.where(live, d, -np.inf)
-    out[:, 0] = np.exp(d - d.max(axis=1, keepdims=True))
-    out[:, 0] /= out[:, 0].sum(axis=1, keepdims=True)
+    some = np.flatnonzero(live.any(axis=1))
+    out[some, 0] = np.exp(d[some] - d[some].max(axis=1, keepdims=True))
+    out[some, 0] /= out[some, 0].sum(axis=1, keepdims=True)
     fluid = cases.fluid
-    cold = cases.modelled & (cases.T[:, None] < _LIQUEFIES * fluid.Tc) & (d > -60.0)
+    cold = cases.fluid.modelled & (cases.T[:, None] < _LIQUEFIES * fluid.Tc) & (d > -60.0)
     pairs = np.nonzero(cold)
     if not pairs[0].size:
         return out

@@ -152,20 +152,20 @@ def test_enthalpy_passes_smoothly_where_an_attraction_ends(key: str):
         assert abs(above.H - below.H)[0] < 1e-5 * R * T[0]
 
 
-def test_a_species_left_out_is_ideal():
-    """phi = 1 exactly, its volume nRT/p, and no change to the others but through T and p."""
-    with_radical = fluid_of(("CO2", "OH"), "srk")
-    alone = fluid_of(("CO2",), "srk")
+def test_a_species_left_out_has_no_volume_and_no_attraction():
+    """ln phi = -ln(Z - B), alone an ideal gas, and nearly none of it in a liquid."""
+    mixed, alone = fluid_of(("CO2", "OH"), "srk"), fluid_of(("OH",), "srk")
     T, p = np.array([400.0]), np.array([1e7])
     n = np.array([[2.0, 3.0]])
-    assert ln_phi(with_radical, T, p, n)[0, 1] == 0.0
-    assert ln_phi(with_radical, T, p, n)[0, 0] == ln_phi(alone, T, p, n[:, :1])[0, 0]
-    both, one = (
-        residual_properties(fluid, T, p, amounts)
-        for fluid, amounts in ((with_radical, n), (alone, n[:, :1]))
-    )
-    assert both.H == one.H
-    assert both.V[0] == pytest.approx(one.V[0] + 3.0 * R * T[0] / p[0], rel=1e-14)
+    M = np.einsum("cs,csm->cm", n, mixed.at(T, p).q)
+    Z, B = mixed.residual(M).Z[0], M[0, 1] / M[0, 0]
+    assert ln_phi(mixed, T, p, n)[0, 1] == pytest.approx(-np.log(Z - B), abs=1e-14)
+    assert residual_properties(mixed, T, p, n).Z[0] == Z
+    assert ln_phi(alone, T, p, n[:, :1])[0, 0] == 0.0
+    assert residual_properties(alone, T, p, n[:, :1]).V[0] == pytest.approx(2.0 * R * T[0] / p[0])
+    cold, trace = np.array([250.0]), np.array([[1.0, 1e-9]])
+    liquid, gas = (ln_phi(mixed, cold, np.array([2e6]), trace, r) for r in ("liquid", "vapour"))
+    assert liquid[0, 1] - gas[0, 1] > 3.0
 
 
 @BOTH

@@ -125,7 +125,8 @@ def test_nothing_modelled_is_ideal():
         assert np.isfinite(at.grad).all()
         assert np.isfinite(at.hess).all()
         assert not at.two.any()
-    assert np.all(moments.q[:, :2] == 0.0)
+    assert np.all(moments.q[:, :2, 0] == 1.0)
+    assert np.all(moments.q[:, :2, 1:] == 0.0)
 
 
 def test_unknown_root_is_named():

@@ -20,7 +20,7 @@ from solver.core.mixture import R
 from solver.core.temperature import OutOfReach
 from solver.core.totals import Totals
 from solver.fixed import P_HIGHEST, T_HIGHEST, T_LOWEST, Pair
-from solver.real.functions import Response, state_functions
+from solver.real.functions import Response, respond, state_functions
 from solver.real.minimise import minimise_real
 from solver.real.problem import RealCases, RealMixture
 from solver.real.states import Minima
@@ -99,10 +99,32 @@ class Ends:
     potentials: Array
     distance: float
     state: Totals
+    answer: Response | None = None
+    """How it answers to ln T and ln p; None for a split."""
 
     def value(self, name: str) -> float:
         """One state function, or ``p``."""
         return float(getattr(self.state, name)[0])
+
+    def volume_by_log_p(self) -> float:
+        """d(ln V)/d(ln p) at fixed T, or zero where it is not known."""
+        slope = 0.0 if self.answer is None else float(self.answer.V_p[0]) / self.value("V")
+        return slope if np.isfinite(slope) and slope < 0.0 else 0.0
+
+    def by_log_T(self, variable: str, holds_volume: bool) -> float:
+        """d(variable)/d(ln T) at fixed p or V, or zero where it is not known."""
+        if self.answer is None:
+            return 0.0
+        H_T, V_T, H_p, V_p = (
+            float(getattr(self.answer, k)[0]) for k in ("H_T", "V_T", "H_p", "V_p")
+        )
+        T, p, V = self.T, self.p, self.value("V")
+        slope = {"H": H_T, "U": H_T - p * V_T, "S": H_T / T}[variable]
+        if holds_volume:
+            by_p = {"H": H_p, "U": H_p - p * (V_p + V), "S": (H_p - V * p) / T}[variable]
+            with np.errstate(all="ignore"):
+                slope -= by_p * float(np.float64(V_T) / V_p)
+        return slope if np.isfinite(slope) and slope > 0.0 else 0.0
 
 
 def seek_alone(real: RealMixture, feed: Feed, target: Target, T: float, p: float) -> Ends:
@@ -132,7 +154,7 @@ def seek_alone(real: RealMixture, feed: Feed, target: Target, T: float, p: float
         def at(T: float) -> Ends:
             return seeker.at(T, p)
 
-    return _seek(at, seeker.blend, pair.searched, value, T)
+    return _seek(at, seeker.blend, pair, value, T)
 
 
 class _Seeker:
@@ -152,6 +174,8 @@ class _Seeker:
             raise minima.why.get(0, Unsettled("a real mixture was not settled"))
         self._last = minima
         state = state_functions(cases, minima.fluids, minima.n)
+        chosen = minima.set_of(0)
+        answer = respond(cases, chosen, minima.fluids[:, list(chosen.fluids)], minima.n)
         return Ends(
             T,
             p,
@@ -160,6 +184,7 @@ class _Seeker:
             minima.potentials[0],
             float(minima.distance[0]),
             state,
+            answer,
         )
 
     def blend(self, low: Ends, high: Ends, share: float) -> Ends:
@@ -175,30 +200,32 @@ class _Seeker:
         """The minimum at T whose volume is V, sought from p."""
         large: Ends | None = None
         small: Ends | None = None
-        x, width, tries = float(np.log(p)), np.inf, 0
-        for count in range(_MAX_EVALUATIONS):
+        x, width, last, tries = float(np.log(p)), np.inf, np.inf, 0
+        for _ in range(_MAX_EVALUATIONS):
             at = self.at(T, float(np.exp(x)))
             off = float(np.log(at.value("V") / V))
             if abs(off) <= _MET:
                 return at
             if at.fluids.sum() <= 0.0 and off < 0.0 and at.p <= _P_LEAST:
                 return at  # nothing evaporates: condensed phases need not fill a vessel
-            if off > 0.0:
-                large = at
-            else:
-                small = at
+            large, small = (at, small) if off > 0.0 else (large, at)
+            slope, slow, last = at.volume_by_log_p(), abs(off) > 0.5 * last, abs(off)
+            step = -off / slope if slope else np.copysign(np.inf, off)
             if large is None or small is None:
-                step = min(0.02 * 4.0**count, 30.0)
-                if at.fluids[0].sum() > 0.0:  # a gas gives way as much as it is pressed
-                    step = min(step, 1.05 * abs(off) + 1e-12 * 4.0**count)
-                x += float(np.sign(off)) * step
-                if x > np.log(P_HIGHEST) or x < np.log(_P_LEAST):
+                tries = tries + 1 if slow else 0
+                reach = 0.02 * 4.0**tries if slow or not slope else 2.0
+                if not np.log(_P_LEAST) < x < np.log(P_HIGHEST):
                     raise Unsettled(f"no pressure up to {P_HIGHEST:g} Pa fits the volume")
+                x += float(np.clip(step * (1.0 + 1e-6) * 2.0**tries, -reach, reach))
+                x = float(np.clip(x, np.log(_P_LEAST), np.log(P_HIGHEST)))
                 continue
-            last, width = width, float(np.log(small.p / large.p))
+            before, width = width, float(np.log(small.p / large.p))
             if width <= (_SLIVER if _jumps(large, small) else 16.0 * _NARROW):
                 return self._filled(large, small, V)
-            tries = (tries + 1) % 3 if width > 0.5 * last else 0
+            if np.log(large.p) < x + step < np.log(small.p) and not slow:
+                x += step
+                continue
+            tries = (tries + 1) % 3 if width > 0.5 * before else 0
             x = _pressure(large, small, V, tries)
         raise Unsettled("no end of the search for the pressure")
 
@@ -242,16 +269,17 @@ def _pressure(large: Ends, small: Ends, V: float, tries: int) -> float:
 def _seek(
     at: Callable[[float], Ends],
     blend: Callable[[Ends, Ends, float], Ends],
-    variable: str,
+    pair: Pair,
     value: float,
     T: float,
 ) -> Ends:
-    """The T at which a state function has its value."""
+    """The T at which the state function that a pair holds has its value."""
+    variable = str(pair.searched)
     low: Ends | None = None
     high: Ends | None = None
     T = float(np.clip(T, T_LOWEST, T_HIGHEST))
-    width, tries = np.inf, 0
-    for count in range(_MAX_EVALUATIONS):
+    width, last, tries = np.inf, np.inf, 0
+    for _ in range(_MAX_EVALUATIONS):
         ends = at(T)
         excess = ends.value(variable) - value
         unit = R * float(ends.n.sum()) * (1.0 if variable == "S" else T)
@@ -265,17 +293,29 @@ def _seek(
             high = ends
             if T <= T_LOWEST:
                 raise OutOfReach("below", T, ends.value(variable))
+        slope, slow, last = (
+            ends.by_log_T(variable, pair.holds_volume),
+            abs(excess) > 0.5 * last,
+            abs(excess),
+        )
+        step = -excess / slope if slope else np.copysign(np.inf, -excess)
         if low is None or high is None:
-            factor = 1.0 + 0.01 * 3.0 ** min(count, 4)
-            T = float(np.clip(T * factor if high is None else T / factor, T_LOWEST, T_HIGHEST))
+            tries = tries + 1 if slow else 0
+            reach = 0.01 * 3.0**tries if slow or not slope else 0.7
+            T *= float(np.exp(np.clip(step * (1.0 + 1e-6) * 2.0**tries, -reach, reach)))
+            T = float(np.clip(T, T_LOWEST, T_HIGHEST))
             continue
-        last, width = width, high.T - low.T
+        before, width = width, high.T - low.T
         if width <= 4.0 * np.spacing(high.T):
             bottom, top = low.value(variable), high.value(variable)
             if abs(excess) <= 1e-11 * unit:
                 return ends
             return blend(low, high, (value - bottom) / (top - bottom))
-        tries = (tries + 1) % 3 if width > 0.5 * last else 0
+        proposal = T * float(np.exp(step))
+        if low.T < proposal < high.T and not slow:
+            T = proposal
+            continue
+        tries = (tries + 1) % 3 if width > 0.5 * before else 0
         T = _temperature(low, high, variable, value, tries)
     raise Unsettled("no end of the search for the temperature")
 

@@ -205,6 +205,24 @@ def _model(gas: GasModel, state: Judged) -> str:
     return text
 
 
+def _below_freezing(real: RealMixture, liquid: Array, T: float) -> list[str]:
+    """Substances in a fluid liquid colder than their own liquid's record begins."""
+    species = real.mixture.species
+    held = dict(zip(real.mixture.gas.tolist(), liquid.tolist(), strict=True))
+    least = 1e-3 * float(liquid.sum())
+    cold = [
+        f"{species[own].key} ({species[own].T_min:.5g} K)"
+        for own, gas in real.stands_for.items()
+        if held[gas] > least and T < species[own].T_min - 0.05
+    ]
+    if not cold:
+        return []
+    return [
+        f"At {T:.4g} K the liquid is colder than the data of {', '.join(cold)} begin: it may "
+        "freeze, and a cubic equation of state can miss a freezing point by tens of K."
+    ]
+
+
 def _end_state(
     posed: Posed,
     species: Sequence[Species],
@@ -235,6 +253,7 @@ def _end_state(
         if state.fluids[0, slot].sum() > 0.0:
             said += cautions(state.cases.fluid, T, p, state.fluids[0, slot])
     real = state.cases.real
+    said += _below_freezing(real, state.fluids[0, 1:].sum(axis=0), T)
     total = {name: float(values[0] / scale) for name, values in found.totals.items()}
     if PAIRS[fixed.pair].holds_volume:
         total["V"] = fixed.values[1]

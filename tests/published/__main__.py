@@ -5,7 +5,7 @@ from __future__ import annotations
 from rich.console import Console
 from rich.table import Table
 
-from tests.published.evaluate import EVALUATORS, Deviation, deviation, rows
+from tests.published.evaluate import EVALUATORS, Deviation, ammonia, deviation, rows
 
 
 def main() -> None:
@@ -32,6 +32,33 @@ def main() -> None:
     console.print(table)
     outside = sum(one.used > 1 for one in found)
     console.print(f"{len(found)} values, {outside} outside their tolerance")
+    console.print(ammonia_by_model())
+
+
+def ammonia_by_model() -> Table:
+    """Yield of ammonia less the published one, by gas model, mol %."""
+    by_conditions: dict[str, dict[str, Deviation]] = {}
+    models: list[str] = []
+    for row in ammonia():
+        conditions, _, model = row.cells["held"].partition("; gas=")
+        by_conditions.setdefault(conditions, {})[model] = deviation(row)
+        models += [model] if model not in models else []
+    table = Table(
+        "ammonia from 3 H2 + N2",
+        "published, mol %",
+        "tolerance",
+        *models,
+        title="Deviation in mol % by gas model; * outside the tolerance",
+        box=None,
+    )
+    for conditions, found in by_conditions.items():
+        cells = next(iter(found.values())).row.cells
+        off = [
+            f"{one.own - one.row.value:+.2f}{'*' if one.used > 1 else ''}" for one in found.values()
+        ]
+        mark = " (extrapolated)" if "extrapolated" in cells["source"] else ""
+        table.add_row(conditions + mark, cells["value"], cells["tolerance"], *off)
+    return table
 
 
 if __name__ == "__main__":

@@ -1,7 +1,8 @@
 """Work out what one row of a table of published values asks for.
 
 `reactions.csv` needs the library alone: an equilibrium constant from g(T). `mixtures.csv` is
-settled. What is held is written as an engineer would say it:
+settled, and so is `real_gases.csv`, with the gas model that its rows name. What is held is
+written as an engineer would say it:
 
 | held | means |
 | --- | --- |
@@ -13,6 +14,11 @@ settled. What is held is written as an engineer would say it:
 | `T where X appears; p=1 atm` | the temperature above which X is present |
 | `T where K = 1: REACTION; p=...` | the temperature at which the constant passes one |
 | `transition N of X` | a transition inside the record of X |
+| `isentropic from T=300 K; p=100 bar; to=10 bar` | entropy as fed, last pressure |
+| `isenthalpic from T=300 K; p=100 bar; to=10 bar` | enthalpy as fed, last pressure |
+| `T where liquid leaves; p=1 atm` | the temperature above which no fluid liquid is present |
+| `...; gas=srk` | any of these with that gas model, which has its published k_ij |
+| `...; gas=srk, k_ij=0` | the same with every k_ij put to zero |
 """
 
 from __future__ import annotations
@@ -29,6 +35,7 @@ from scipy.optimize import brentq, minimize_scalar
 
 import solver
 import species_db
+from solver.gas.fluid import make_fluid
 from species_db import Species
 
 HERE = Path(__file__).parent
@@ -67,6 +74,11 @@ def rows(table: str) -> list[Row]:
     """The rows of one table."""
     with (HERE / f"{table}.csv").open(newline="", encoding="utf-8") as file:
         return [Row(table, n, cells) for n, cells in enumerate(csv.DictReader(file), start=2)]
+
+
+def ammonia() -> list[Row]:
+    """The rows of ammonia at pressure, one for each gas model."""
+    return [row for row in rows("real_gases") if row.cells["quantity"] == "x NH3"]
 
 
 def deviation(row: Row) -> Deviation:
@@ -172,20 +184,36 @@ def of_mixture(cells: dict[str, str]) -> float:
     return read_off(settle(species, feed, held), feed, cells["quantity"], cells["unit"])
 
 
+def gas_model(species: list[Species], held: str) -> solver.GasModel:
+    """The gas model that a row names, ideal where it names none."""
+    if "gas=" not in held:
+        return solver.GasModel()
+    key, _, without = at(held, "gas").partition(", ")
+    if not without:
+        return solver.GasModel(key)
+    assert without == "k_ij=0"
+    pairs = make_fluid([s for s in species if s.phase == "gas"], key).k
+    return solver.GasModel(key, tuple((pair.a, pair.b, 0.0) for pair in pairs))
+
+
 def settle(
     species: list[Species], feed: dict[Species, float], held: str
 ) -> tuple[solver.EndState, float]:
     """The end state and the pressure of the feed, Pa."""
     T, p = kelvin(at(held, "T")), pascal(at(held, "p"))
+    gas = gas_model(species, held)
     if held.startswith("T="):
-        return solver.settle(species, feed, solver.Fixed("T,p", T=T, p=p)), p
-    fed = solver.as_fed(feed, T=T, p=p)
-    fixed = (
-        solver.Fixed("U,V", U=fed.U, V=fed.V)
-        if held.startswith("sealed")
-        else solver.Fixed("H,p", H=fed.H, p=p)
-    )
-    return solver.settle(species, feed, fixed), p
+        return solver.settle(species, feed, solver.Fixed("T,p", T=T, p=p), gas=gas), p
+    fed = solver.as_fed(feed, T=T, p=p, gas=gas)
+    if held.startswith("sealed"):
+        fixed = solver.Fixed("U,V", U=fed.U, V=fed.V)
+    elif held.startswith("isentropic"):
+        fixed = solver.Fixed("S,p", S=fed.S, p=pascal(at(held, "to")))
+    elif held.startswith("isenthalpic"):
+        fixed = solver.Fixed("H,p", H=fed.H, p=pascal(at(held, "to")))
+    else:
+        fixed = solver.Fixed("H,p", H=fed.H, p=p)
+    return solver.settle(species, feed, fixed, gas=gas), p
 
 
 def onset(species: list[Species], feed: dict[Species, float], held: str) -> float:
@@ -193,9 +221,12 @@ def onset(species: list[Species], feed: dict[Species, float], held: str) -> floa
     p = pascal(at(held, "p"))
     _, _, key, verb = held.partition(";")[0].split()
     n_feed = sum(feed.values())
+    gas = gas_model(species, held)
 
     def present(T: float) -> bool:
-        end = solver.settle(species, feed, solver.Fixed("T,p", T=T, p=p))
+        end = solver.settle(species, feed, solver.Fixed("T,p", T=T, p=p), gas=gas)
+        if key == "liquid":
+            return key in end.fluids
         return end.amounts[key] > 1e-12 * n_feed
 
     low, high = 210.0, 2400.0
@@ -255,6 +286,15 @@ def read_off(
             return end.amounts[keys[0]] / end.amounts[keys[2]]
         case "T":
             return in_unit(end.T, unit)
+        case "Z":
+            return end.p * end.V / (sum(end.amounts.values()) * species_db.R * end.T)
+        case "phi" | "residual":
+            n = sum(end.amounts.values())
+            ideal = solver.as_fed(feed, T=end.T, p=end.p)
+            if kind == "residual":
+                assert keys == ["H"]
+                return (end.H - ideal.H) / n
+            return math.exp((end.G - ideal.G) / (n * species_db.R * end.T))
         case "p" if keys[:1] == ["/"]:
             return end.p / p_fed
         case "p" if unit == "bar(g)":
@@ -270,6 +310,7 @@ def in_unit(value: float, unit: str) -> float:
         return value / PRESSURE[unit]
     convert: dict[str, Callable[[float], float]] = {
         "1": lambda x: x,
+        "J/mol": lambda x: x,
         "K": lambda x: x,
         "%": lambda x: 100 * x,
         "degC": lambda x: x - 273.15,
@@ -282,4 +323,5 @@ def in_unit(value: float, unit: str) -> float:
 EVALUATORS: dict[str, Callable[[dict[str, str]], float]] = {
     "reactions": of_reaction,
     "mixtures": of_mixture,
+    "real_gases": of_mixture,
 }

@@ -51,6 +51,7 @@ ACTIONS = (
     ActionRow("tab_reactions", "Reactions", ("Ctrl+3",), "View"),
     ActionRow("tab_energy", "Energy", ("Ctrl+4",), "View"),
     ActionRow("tab_proof", "Proof", ("Ctrl+5",), "View"),
+    ActionRow("tab_gas", "Gas model", ("Ctrl+6",), "View"),
     ActionRow("log_plot", "Logarithmic plot", ("Ctrl+L",), "View"),
     ActionRow("log_bars", "Logarithmic bars", ("Ctrl+Shift+L",), "View"),
     ActionRow("theme", "Light, dark or as the system", ("Ctrl+Shift+T",), "View"),

@@ -40,6 +40,8 @@ class Line:
     held: str
     """What is held besides T, in words of the axis: 'p' or 'V' and its SI value."""
     value: float
+    fluids: tuple[tuple[str, NDArray[np.bool_]], ...] = ()
+    """Liquids of the equation of state, each with the points where it is present, (points,)."""
 
 
 def range_of(case: Case) -> tuple[float, float]:
@@ -76,6 +78,7 @@ def composition_line(
     keys = tuple(sp.key for sp in species)
     T = np.linspace(low, high, points)
     shares = np.full((points, len(keys)), np.nan)
+    liquids: dict[str, NDArray[np.bool_]] = {}
     failed = 0
     for start in range(0, points, PART):
         if should_stop():
@@ -87,9 +90,13 @@ def composition_line(
             pair,
             T[part],
             np.full(T[part].size, held),
+            gas=answer.prepared.gas,
             restrictions=answer.prepared.restrictions,
         )
         shares[part] = ends.amounts / ends.amounts.sum(axis=1, keepdims=True)
+        for name, amounts in ends.liquids.items():
+            there = liquids.setdefault(name, np.zeros(points, dtype=bool))
+            there[part] = np.nan_to_num(amounts).sum(axis=1) > 0.0
         failed += int((~ends.settled).sum())
         progress(part.stop / points)
     condensed = tuple(sp.key for sp in species if sp.phase != "gas")
@@ -102,6 +109,7 @@ def composition_line(
         perf_counter() - began,
         "V" if sealed else "p",
         held,
+        tuple(liquids.items()),
     )
 
 
@@ -117,15 +125,17 @@ def shown_keys(line: Line, logarithmic: bool, most: int = 14) -> list[str]:
 
 
 def phase_changes(line: Line) -> list[tuple[float, str]]:
-    """Temperatures (K) at which condensed phases appear or go on heating, each in words.
+    """Temperatures (K) at which liquids and condensed phases appear or go on heating, in words.
 
     Changes between the same two points share a place: "Fe3O4(s) gone, Fe(s) forms".
     """
     words: dict[int, list[str]] = {}
-    for key in line.condensed:
-        present = line.shares[:, line.keys.index(key)] > 0
+    found = [
+        (formula_text(key), line.shares[:, line.keys.index(key)] > 0) for key in line.condensed
+    ]
+    for name, present in (*found, *line.fluids):
         for i in np.flatnonzero(present[1:] != present[:-1]):
-            text = f"{formula_text(key)} {'forms' if present[i + 1] else 'gone'}"
+            text = f"{name} {'forms' if present[i + 1] else 'gone'}"
             words.setdefault(int(i), []).append(text)
     return [
         (float(line.T[i] + line.T[i + 1]) / 2, _joined(sorted(texts, key=_gone_first)))

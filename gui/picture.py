@@ -63,7 +63,7 @@ def draw(out: Path, file: Path | None, size: tuple[int, int], theme: str, tab: s
         while monotonic() < until:
             QApplication.processEvents(QEventLoop.ProcessEventsFlag.AllEvents, 50)
             loaded = window.what_if.plot is not None
-            if loaded and window.session.is_idle() and window.what_if.is_idle():
+            if loaded and window.is_idle():
                 break
         window.resize(*size)
         window.setFocus()

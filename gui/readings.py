@@ -97,7 +97,7 @@ def volume(si: float, flow: bool) -> tuple[float, str]:
 
 @dataclass(frozen=True, slots=True)
 class SpeciesRow:
-    """One species at the end; shares are of the gas, or of the whole for condensed ones."""
+    """One species in one phase; shares are of the fluid, or of the whole for condensed ones."""
 
     key: str
     name: str
@@ -106,6 +106,15 @@ class SpeciesRow:
     share: float
     mass_share: float
     outside: bool
+
+
+@dataclass(frozen=True, slots=True)
+class FluidRows:
+    """A gas or a liquid of the equation of state: its share of all moles, and what is in it."""
+
+    name: str
+    share: float
+    rows: tuple[SpeciesRow, ...]
 
 
 @dataclass(frozen=True, slots=True)
@@ -119,15 +128,13 @@ class PhaseRow:
     mass_share: float
 
 
-def composition(end: Any) -> tuple[list[SpeciesRow], list[SpeciesRow]]:
-    """Gas rows and condensed rows, the most abundant first; absent condensed ones left out."""
-    total, mass = _totals(end.species, end)
-    gas = [sp for sp in end.species if sp.phase == "gas"]
-    gas_total, gas_mass = _totals(gas, end)
+def composition(end: Any) -> tuple[list[FluidRows], list[SpeciesRow]]:
+    """Fluid phases and condensed rows, the most abundant first; absent condensed ones left out."""
+    total, mass = _totals(end.species, end.amounts)
+    by_key = {sp.key: sp for sp in end.species}
     outside = set(end.outside_range)
 
-    def row(sp: Any, of: float, of_mass: float) -> SpeciesRow:
-        n = end.amounts[sp.key]
+    def row(sp: Any, n: float, of: float, of_mass: float) -> SpeciesRow:
         return SpeciesRow(
             sp.key,
             sp.name,
@@ -138,33 +145,33 @@ def composition(end: Any) -> tuple[list[SpeciesRow], list[SpeciesRow]]:
             sp.key in outside,
         )
 
-    gases = [row(sp, gas_total, gas_mass) for sp in gas] if gas_total > 0 else []
-    others = [
-        row(sp, total, mass) for sp in end.species if sp.phase != "gas" and end.amounts[sp.key] > 0
-    ]
     by_amount = lambda r: (-r.amount, r.key)  # noqa: E731
-    return sorted(gases, key=by_amount), sorted(others, key=by_amount)
+    fluids, others = [], []
+    for name, held in end.phases.items():
+        if name in by_key:
+            others.append(row(by_key[name], held[name], total, mass))
+            continue
+        members = [by_key[key] for key in held]
+        own, own_mass = _totals(members, held)
+        rows = sorted((row(sp, held[sp.key], own, own_mass) for sp in members), key=by_amount)
+        fluids.append(FluidRows(name, own / total, tuple(rows)))
+    return fluids, sorted(others, key=by_amount)
 
 
 def phases(end: Any) -> list[PhaseRow]:
     """The phases that are present."""
-    total, mass = _totals(end.species, end)
+    total, mass = _totals(end.species, end.amounts)
     by_key = {sp.key: sp for sp in end.species}
     rows = []
-    for name, amount in end.phase_amounts.items():
-        if amount <= 0:
-            continue
-        members = (
-            [sp for sp in end.species if sp.phase == "gas"] if name == "gas" else [by_key[name]]
-        )
-        kilograms = _totals(members, end)[1]
+    for name, held in end.phases.items():
+        amount, kilograms = _totals([by_key[key] for key in held], held)
         rows.append(PhaseRow(name, amount, amount / total, kilograms, kilograms / mass))
     return rows
 
 
-def _totals(species: Any, end: Any) -> tuple[float, float]:
-    amounts = [(end.amounts[sp.key], sp.molar_mass) for sp in species]
-    return sum(n for n, _ in amounts), sum(n * m for n, m in amounts)
+def _totals(species: Any, amounts: Any) -> tuple[float, float]:
+    pairs = [(amounts[sp.key], sp.molar_mass) for sp in species]
+    return sum(n for n, _ in pairs), sum(n * m for n, m in pairs)
 
 
 def stream_shares(stream: Any) -> tuple[float | None, ...]:

@@ -137,6 +137,27 @@ def with_about(restriction: Any, text: str) -> Any:
     return replaced(restriction, **{name: about})
 
 
+def with_key(restriction: Any, key: str) -> Any:
+    """A held reaction whose shift is carried by `key`; "": the choice is left to the solver."""
+    return replaced(restriction, key=key)
+
+
+def carriers(reaction: str, candidates: Any) -> tuple[str, ...]:
+    """Keys of the species of a reaction, any of which may carry its shift; () while unreadable."""
+    import species_db
+    from solver.errors import InputError
+    from solver.project.case_names import CaseNames
+    from solver.reactions import Reaction
+
+    if not reaction.strip():
+        return ()
+    try:
+        names = CaseNames(candidates, species_db.load())
+        return tuple(sp.key for sp in Reaction.parse(reaction, names).species)
+    except InputError:
+        return ()
+
+
 def with_value(restriction: Any, quantity: Quantity | None) -> Any:
     """The restriction with another value; None: nothing is said."""
     kind = KINDS[restriction.kind]

@@ -44,6 +44,7 @@ QComboBox { background: {panel}; border: 1px solid {line}; border-radius: 3px;
             padding: 4px 8px; }
 QComboBox:hover { border-color: {muted}; }
 QComboBox:focus { border-color: {accent}; }
+QComboBox[faulty="true"] { border-color: {error}; }
 QComboBox QAbstractItemView { background: {panel}; border: 1px solid {line}; outline: 0;
             selection-background-color: {accent_wash}; selection-color: {text}; }
 QComboBox::drop-down { border: 0; width: 24px; }
@@ -96,7 +97,7 @@ QHeaderView::section { background: {panel}; color: {muted}; border: 0;
 
 QTabBar { background: transparent; border: 0; qproperty-drawBase: 0; }
 QTabBar::tab { background: transparent; border: 0; border-bottom: 2px solid transparent;
-             padding: 4px 2px 5px 2px; margin-right: 22px; color: {muted}; }
+             padding: 4px 2px 5px 2px; margin-right: 16px; color: {muted}; }
 QTabBar::tab:selected { color: {accent}; border-bottom-color: {accent}; font-weight: 600; }
 QTabBar::tab:focus { color: {accent}; }
 

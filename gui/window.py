@@ -12,6 +12,7 @@ from PySide6.QtWidgets import (
     QInputDialog,
     QMainWindow,
     QMenu,
+    QScrollArea,
     QSplitter,
     QVBoxLayout,
     QWidget,
@@ -75,16 +76,23 @@ class Window(QMainWindow):
         outer.addWidget(self.header)
         below = QHBoxLayout()
         below.setContentsMargins(GRID * 2, GRID * 2, GRID * 2, GRID * 2)
-        below.setSpacing(GRID * 2)
-        left = QWidget()
-        left.setFixedWidth(LEFT_WIDTH)
-        column = QVBoxLayout(left)
+        below.setSpacing(GRID)
+        inner = QWidget()
+        inner.setFixedWidth(LEFT_WIDTH)
+        column = QVBoxLayout(inner)
         column.setContentsMargins(0, 0, 0, 0)
         column.setSpacing(GRID * 2)
         self.going_in.setMinimumHeight(184)
         column.addWidget(self.going_in, 5)
         column.addWidget(self.held_fixed, 0)
         column.addWidget(self.may_form, 4)
+        # Where the screen is too low for all that is typed in, it is scrolled, not squeezed.
+        left = QScrollArea()
+        left.setWidgetResizable(True)
+        left.setFocusPolicy(Qt.FocusPolicy.NoFocus)
+        left.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
+        left.setFixedWidth(LEFT_WIDTH + GRID)
+        left.setWidget(inner)
         self.right = QSplitter(Qt.Orientation.Vertical)
         self.right.setHandleWidth(GRID * 2)
         self.right.setChildrenCollapsible(False)
@@ -108,6 +116,7 @@ class Window(QMainWindow):
         stack.indexChanged.connect(lambda _: self._follow_stack())
         self.header.recent.aboutToShow.connect(lambda: self._fill_recent(self.header.recent))
         self.ends_up.copy_button.clicked.connect(self.copy_view)
+        self.held_fixed.gas.details.clicked.connect(self.actions_by_name["tab_gas"].trigger)
 
     def _callbacks(self):  # type: ignore[no-untyped-def]
         session, files = self.session, self.files
@@ -145,6 +154,7 @@ class Window(QMainWindow):
             "tab_reactions": lambda: self.ends_up.show_tab("Reactions"),
             "tab_energy": lambda: self.ends_up.show_tab("Energy"),
             "tab_proof": lambda: self.ends_up.show_tab("Proof"),
+            "tab_gas": lambda: self.ends_up.show_tab("Gas"),
             "log_plot": lambda: self.what_if.set_logarithmic(not session.case.plot.logarithmic),
             "log_bars": lambda: self.ends_up.toggle_bars(),
             "theme": self.next_theme,
@@ -194,6 +204,7 @@ class Window(QMainWindow):
             self.session.cancel()
         if not self.what_if.is_idle():
             self.what_if.cancel()
+        self.ends_up.gas.beside.cancel()
 
     def popup_recent(self) -> None:
         """Show the recent files."""
@@ -269,9 +280,16 @@ class Window(QMainWindow):
         self.shut()
         super().closeEvent(event)
 
+    def is_idle(self) -> bool:
+        """Whether all that is shown is as new as it will get."""
+        return (
+            self.session.is_idle() and self.what_if.is_idle() and self.ends_up.gas.beside.is_idle()
+        )
+
     def shut(self) -> None:
         """Stop all work in the background."""
         self.what_if.close_jobs()
+        self.ends_up.gas.beside.close_jobs()
         self.session.close()
 
     def dragEnterEvent(self, event: QDragEnterEvent) -> None:

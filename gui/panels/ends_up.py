@@ -16,7 +16,9 @@ from gui import readings
 from gui.parts.answer_line import AnswerLine
 from gui.parts.card import Card, Label, Sentence, choice, link, rule
 from gui.parts.composition_view import CompositionView
-from gui.parts.figures_view import EnergyView, PhasesView
+from gui.parts.figures_view import EnergyView
+from gui.parts.gas_view import GasView
+from gui.parts.phases_view import PhasesView
 from gui.parts.proof_view import ProofView
 from gui.parts.reactions_view import ReactionsView
 from gui.readings import something_fed
@@ -25,8 +27,11 @@ from gui.tables import clipboard
 from gui.theme import GRID, Theme, sized
 from solver.fixed import PAIRS
 from solver.project.cautions import JUDGEMENT, LIMIT, SEALED
+from solver.project.wording import typeset
 
-TABS = ("Composition", "Phases", "Reactions", "Energy", "Proof")
+ROOM = 340
+"""Pixels of height below which the views need the room of all remarks but the first."""
+TABS = ("Composition", "Phases", "Reactions", "Energy", "Proof", "Gas")
 
 EMPTY = (
     "Nothing to show yet. Type a species and an amount at the left, such as CH4 and 1 kmol; "
@@ -89,8 +94,16 @@ class EndsUp(Card):
         self.phases = PhasesView(theme)
         self.energy = EnergyView(theme)
         self.proof = ProofView(theme)
+        self.gas = GasView(session, theme)
         self.pages = QStackedWidget()
-        for page in (self.composition, self.phases, self.reactions, self.energy, self.proof):
+        for page in (
+            self.composition,
+            self.phases,
+            self.reactions,
+            self.energy,
+            self.proof,
+            self.gas,
+        ):
             self.pages.addWidget(page)
         self.empty = Label(EMPTY, "muted")
         self.empty.setWordWrap(True)
@@ -117,7 +130,9 @@ class EndsUp(Card):
 
     def _show_page(self, page: int) -> None:
         answer = self._session.answer
-        if answer.value is None and answer.state == "faulty":
+        # What is typed in the gas model's view must stay in reach while it is what is wrong.
+        nothing = answer.value is None and answer.state == "faulty"
+        if nothing and not (TABS[page] == "Gas" and something_fed(self._session.case)):
             self.empty.setText(MISSING if something_fed(self._session.case) else EMPTY)
             self.pages.setCurrentWidget(self.empty)
         else:
@@ -152,11 +167,10 @@ class EndsUp(Card):
             self._shown = None
             self.line.clear()
             self.composition.model.clear()
-            for table in (self.phases, self.energy):
-                table.model.show((), [], False)
-                table.note.say("")
-            self.proof.clear()
-            self.reactions.clear()
+            self.energy.model.show((), [], False)
+            self.energy.note.say("")
+            for view in (self.phases, self.proof, self.reactions, self.gas):
+                view.clear()
             self.notes.say("")
             return
         if not stale:
@@ -164,7 +178,11 @@ class EndsUp(Card):
             units = readings.units_for(self._session.case, answer.value)
             self.line.show_answer(self._session.case, answer.value, units)
         self._fill()
-        self.notes.say("" if stale else notes_text(answer.value.messages))
+        end = answer.value.end
+        said = tuple(typeset(text) for text in (*end.cautions, *answer.value.messages))
+        most = 3 if self.height() > ROOM else 1
+        self.notes.say("" if stale else notes_text(said, most))
+        self.notes.setToolTip("\n".join(said) if len(said) > most else "")
 
     def _fill(self) -> None:
         """Fill the page that is looked at."""
@@ -182,6 +200,8 @@ class EndsUp(Card):
             self.reactions.show_answer(answer.value, units, stale)
         elif page is self.energy:
             self.energy.show_answer(answer.value, units, stale)
+        elif page is self.gas:
+            self.gas.show_answer(answer.value, units, stale)
         else:
             self.proof.show_answer(answer.value, stale)
 
@@ -211,14 +231,11 @@ class EndsUp(Card):
     def copy(self) -> None:
         """Put the view that is looked at on the clipboard."""
         page = self._page()
-        if page is self.reactions:
-            self.reactions.copy()
-        elif page is self.proof:
-            self.proof.copy()
+        if page is self.composition or page is self.energy:
+            page.table.clearSelection()
+            clipboard.copy(page.table)
         else:
-            table = page.table
-            table.clearSelection()
-            clipboard.copy(table)
+            page.copy()
 
     def toggle_bars(self) -> None:
         """Linear bars to logarithmic ones and back."""

@@ -139,8 +139,16 @@ class Header(QWidget):
     def _show_pill(self) -> None:
         answer = self._session.answer
         if answer.state == "settled" and answer.value is not None:
-            gap = gap_text(answer.value.end.proof.gap)
-            self._set_pill("good", f"proven: gap {gap}", "Look at the proof (Ctrl+5)")
+            proof = answer.value.end.proof
+            if proof.rigorous:
+                text, tip = f"proven: gap {gap_text(proof.gap)}", "Look at the proof (Ctrl+5)"
+            else:
+                text = "no better state found"
+                tip = (
+                    f"From {proof.starts} starts; with an equation of state there is no rigorous "
+                    "bound. Look at the proof (Ctrl+5)"
+                )
+            self._set_pill("good", text, tip)
         elif answer.state == "settling":
             self._set_pill("wait", "settling", "")
         elif not something_fed(self._session.case):

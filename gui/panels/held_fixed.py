@@ -8,12 +8,13 @@ from itertools import pairwise
 from PySide6.QtCore import Qt
 from PySide6.QtWidgets import QComboBox, QGridLayout, QWidget
 
-from gui import edits, pairs, readings
+from gui import edits, gas_edits, pairs, readings
 from gui.fields.quantity_field import QuantityField
 from gui.parts.card import Card, Label, Sentence, link
 from gui.parts.restrictions_section import RestrictionsSection
 from gui.session import Session
-from gui.theme import GRID
+from gui.theme import GRID, sized
+from solver.gas_model import GAS_MODELS
 from solver.project.model import Quantity
 from solver.project.units import UnitError, canonical, from_si, to_si
 from solver.project.wording import quantity_text
@@ -54,8 +55,50 @@ class ValueRow:
         self.sentence.say(text)
 
 
+class GasRow:
+    """The gas model: a menu, and the way to its k_ij and to what it is worth."""
+
+    def __init__(self, session: Session, grid: QGridLayout, row: int) -> None:
+        self._session = session
+        self.label = Label("gas", "muted")
+        self.menu = QComboBox()
+        self.menu.setAccessibleName("gas model")
+        self.menu.setToolTip(
+            "An ideal gas, or an equation of state for high pressure, with a liquid of its own"
+        )
+        for key, words in GAS_MODELS.items():
+            self.menu.addItem(words, key)
+        self.menu.activated.connect(self._pick)
+        self.details = link(
+            "k_ij, compare", "The gas model's parameters, and the ideal answer beside (Ctrl+6)"
+        )
+        self.details.setFont(sized(self.details.font(), "small"))
+        self.sentence = Sentence()
+        self.label.setBuddy(self.menu)
+        grid.addWidget(self.label, row, 0)
+        grid.addWidget(self.menu, row, 1, 1, 2)
+        grid.addWidget(self.details, row, 3, Qt.AlignmentFlag.AlignRight)
+        grid.addWidget(self.sentence, row + 1, 1, 1, 3)
+
+    def refresh(self) -> None:
+        """Show the model of the session's case."""
+        key = self._session.case.gas
+        self.menu.setCurrentIndex(self.menu.findData(key))
+        self.details.setVisible(key != "ideal" or bool(self._session.case.interactions))
+
+    def show_faults(self) -> None:
+        """What is wrong with the model or one of its pairs."""
+        found = self._session.faults_at("gas") + self._session.faults_at("interactions")
+        self.sentence.say("\n".join(dict.fromkeys(fault.text for fault in found)))
+
+    def _pick(self, at: int) -> None:
+        key = self.menu.itemData(at)
+        case = gas_edits.set_gas(self._session.case, key)
+        self._session.edit_case(case, f"gas: {GAS_MODELS[key]}")
+
+
 class HeldFixed(Card):
-    """The pair menu and a row for each value it needs."""
+    """The pair menu, a row for each value it needs, and the gas model."""
 
     def __init__(
         self,
@@ -86,7 +129,7 @@ class HeldFixed(Card):
         self.heat = ValueRow(grid, 20, heat, "none")
         self.heat.field.typed.connect(self._type_heat)
         self.heat.as_fed.clicked.connect(lambda: self._type_heat(None))
-        self.remark.setText("ideal gas")
+        self.gas = GasRow(session, grid, 30)
         self.body.addLayout(grid)
         self.sentence = Sentence()
         self.body.addWidget(self.sentence)
@@ -99,6 +142,7 @@ class HeldFixed(Card):
         order: list[QWidget] = [self.menu]
         for row in (*self.rows.values(), self.heat):
             order += [row.field, row.as_fed]
+        order += [self.gas.menu, self.gas.details]
         for a, b in pairwise(order):
             QWidget.setTabOrder(a, b)
         session.document_changed.connect(self.refresh)
@@ -132,6 +176,7 @@ class HeldFixed(Card):
         energy = any(v in wanted for v in pairs.ENERGY)
         self.heat.set_visible(energy)
         self.heat.as_fed.setVisible(energy and fixed.heat is not None)
+        self.gas.refresh()
         self.show_answer()
 
     def show_answer(self) -> None:
@@ -153,6 +198,7 @@ class HeldFixed(Card):
             f for f in session.answer.faults if f.field in ("fixed", "fixed.pair", "restrictions")
         ]
         self.sentence.say("\n".join(f.text for f in own))
+        self.gas.show_faults()
         self.heat.echo.setText(
             "" if session.case.fixed.heat is not None or settled is None else "adiabatic"
         )

@@ -197,7 +197,8 @@ class MayForm(Card):
 
     def _remarks(self, end) -> dict[str, str]:  # type: ignore[no-untyped-def]
         out = {k: f"activity {number_text(a, 2)}" for k, a in end.proof.absent.items()}
-        out |= {k: "forms" for k, n in end.phase_amounts.items() if k != "gas" and n > 0}
+        out |= {k: "forms" for k, n in end.phase_amounts.items() if n > 0}
+        out |= dict.fromkeys(end.left_out, "left out, see Phases")
         return out | dict.fromkeys(end.outside_range, "outside data range")
 
     def _show_chips(self, fed: set[str]) -> None:

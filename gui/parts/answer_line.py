@@ -131,7 +131,7 @@ def figures(case: Case, answer, units: readings.Units) -> list[Figure]:  # type:
     if flow:
         what = {"heat": "heat flow added", "work": "power put in"}.get(kind, "heat and work")
     given = "given off" if kind == "heat" else "gained"
-    gap = end.proof.gap
+    gap, rigorous = end.proof.gap, end.proof.rigorous
     return [
         Figure(
             "temperature",
@@ -162,11 +162,16 @@ def figures(case: Case, answer, units: readings.Units) -> list[Figure]:  # type:
             f"{answer.heat!r} {'W' if flow else 'J'}, negative when {given}",
         ),
         Figure(
-            "proof: gap to the minimum",
+            "proof: gap to the minimum" if rigorous else "proof: gap, no bound",
             gap_text(gap),
             "nRT",
-            "proven to rounding" if abs(gap) < 1e-9 else "see Proof",
-            f"{gap!r}: no mixture of the candidates has a Gibbs energy lower by more than this",
+            ("proven to rounding" if rigorous else "no better state found")
+            if abs(gap) < 1e-9
+            else "see Proof",
+            f"{gap!r}: no mixture of the candidates has a Gibbs energy lower by more than this"
+            if rigorous
+            else f"{gap!r}; no better state was found from {end.proof.starts} starts, which is no "
+            "rigorous bound",
         ),
     ]
 

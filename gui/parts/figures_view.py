@@ -1,4 +1,4 @@
-"""The views "Phases" and "Energy": small tables read off the answer."""
+"""Small tables of figures, and the view "Energy", which is one."""
 
 from __future__ import annotations
 
@@ -11,7 +11,7 @@ from gui.tables.delegates import CellDelegate, FigureDelegate
 from gui.tables.figures_model import Cell, FiguresModel
 from gui.theme import GRID, Theme
 from solver.project.units import from_si
-from solver.project.wording import SIGNIFICANT, formula_text, quantity_text, unit_text
+from solver.project.wording import SIGNIFICANT, quantity_text, unit_text
 
 _ROUNDING = 1e-9
 """Share of the figures that a difference of less is the rounding of."""
@@ -58,38 +58,6 @@ class FiguresTable(QWidget):
         if not stretch:
             return
         self.table.horizontalHeader().setSectionResizeMode(column, QHeaderView.ResizeMode.Stretch)
-
-
-class PhasesView(FiguresTable):
-    """Each phase with its amount and mass."""
-
-    def __init__(self, theme: Theme) -> None:
-        super().__init__(theme, "phases at the end")
-
-    def show_answer(self, answer, units: readings.Units, stale: bool) -> None:  # type: ignore[no-untyped-def]
-        """Show the phases of an answer."""
-        names = {sp.key: sp.name for sp in answer.end.species}
-        rows: list[tuple[Cell, ...]] = []
-        for row in readings.phases(answer.end):
-            name = "gas"
-            if row.name != "gas":
-                name = f"{formula_text(row.name)}  {names[row.name]}"
-            rows.append(
-                (
-                    name,
-                    units.amount_of(row.amount),
-                    100 * row.share,
-                    units.mass_of(row.mass),
-                    100 * row.mass_share,
-                )
-            )
-        heads = ("phase", unit_text(units.amount), "mol %", unit_text(units.mass), "mass %")
-        self.model.show(heads, rows, stale)
-        count = len(answer.end.proof.absent)
-        absent = f"{count} condensed candidates did not form; Proof has their margins."
-        if count == 1:
-            absent = "1 condensed candidate did not form; Proof has its margin."
-        self.note.say(absent if count else "")
 
 
 class EnergyView(FiguresTable):

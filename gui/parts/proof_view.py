@@ -14,7 +14,7 @@ from gui.tables import clipboard
 from gui.tables.figures_model import Cell, Words
 from gui.theme import GRID, ROW_HEIGHT, Theme
 from solver.fixed import PAIRS
-from solver.project.wording import formula_text, number_text
+from solver.project.wording import formula_text, number_text, typeset
 
 MEANING = {
     "element closure": "Largest difference between the atoms at the end and the atoms fed, over "
@@ -23,6 +23,16 @@ MEANING = {
     "energy closure": "Distance of the energy or entropy from the value held, over nRT.",
     "gap": "No mixture of the candidates lies lower in Gibbs energy by more than this, over nRT.",
 }
+OF_SEARCH = {
+    "gap": "Distance of the Gibbs energy from the tangent plane, over nRT; no rigorous bound here.",
+    "stationarity": "Largest difference of a species' potential, in any fluid, from that of its "
+    "elements.",
+    "tangent plane": "Lowest that any trial phase came, over RT; below zero would be a better "
+    "state.",
+    "starts": "Trial phases tried. No better state found; no rigorous bound.",
+}
+"""What the figures mean where the end state was searched for and cannot be bounded."""
+BOUND = " The gap is a bound by weak duality, whatever way the state was found."
 _HEADER = 26
 
 
@@ -70,8 +80,9 @@ class ProofView(QScrollArea):
         )
         self.absent.setVisible(bool(near))
         self.model_line.say(
-            proof.model + " The gap is a bound by weak duality, whatever way the state was found."
-            " A condensed candidate forms where its activity would reach 1."
+            typeset(proof.model)
+            + (BOUND if proof.rigorous else "")
+            + " A condensed candidate forms where its activity would reach 1."
         )
 
     def clear(self) -> None:
@@ -84,6 +95,7 @@ class ProofView(QScrollArea):
 
     def _show_figures(self, end, stale: bool) -> None:  # type: ignore[no-untyped-def]
         from solver import proof as limits
+        from solver.real.proof import STATIONARITY_LIMIT
 
         proof = end.proof
         energy = end.fixed.pair[0] in "HUS"
@@ -101,9 +113,19 @@ class ProofView(QScrollArea):
             ),
             ("gap", gap_text(proof.gap), limits.GAP_LIMIT),
         )
+        meaning = MEANING if proof.rigorous else MEANING | OF_SEARCH
         rows: list[tuple[Cell, ...]] = [
-            (name, value, _limit(limit), MEANING[name]) for name, value, limit in values
+            (name, value, _limit(limit), meaning[name]) for name, value, limit in values
         ]
+        if not proof.rigorous:
+            rows += [
+                (name, value, limit, meaning[name])
+                for name, value, limit in (
+                    ("stationarity", _small(proof.stationarity), _limit(STATIONARITY_LIMIT)),
+                    ("tangent plane", _signed(proof.tangent_distance), ""),
+                    ("starts", f"{proof.starts}", ""),
+                )
+            ]
         figures = self.figures
         figures.model.show(("figure", "value", "limit", "what it means"), rows, stale)
         for column in (1, 2, 3):
@@ -145,6 +167,10 @@ class ProofView(QScrollArea):
 
 
 def _small(value: float) -> str:
+    return "0" if value == 0 else number_text(value, 2)
+
+
+def _signed(value: float) -> str:
     return "0" if value == 0 else number_text(value, 2)
 
 

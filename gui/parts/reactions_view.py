@@ -28,6 +28,11 @@ from solver.errors import SettleError
 
 SET, AMOUNTS, ENERGY = range(3)
 _MOST_NOTES = 3
+REFUSED = (
+    "Nothing is shown here: reactions are worked out for an ideal gas only, and this end state was "
+    "settled with an equation of state. K, Q and the hand calculation appear when the gas in Held "
+    "fixed is ideal."
+)
 
 
 class ReactionsView(QWidget):
@@ -195,7 +200,8 @@ class ReactionsView(QWidget):
             self._view = self._reactions_of(own)
         except SettleError as error:
             self._view = None
-            self.line.say(str(error))
+            self._fill()
+            self.line.say(REFUSED if not self._answer.prepared.gas.is_ideal else str(error))
             return
         self._own = bool(own)
         names = [r.pretty for r in self._view.reactions]

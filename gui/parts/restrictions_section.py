@@ -11,6 +11,7 @@ from gui import restriction_edits as edits
 from gui.fields.quantity_field import LiveLine, QuantityField
 from gui.fields.species_completer import SpeciesCompleter
 from gui.parts.card import Label, Sentence, link
+from gui.parts.carrier_choice import CarrierChoice
 from gui.restriction_edits import KINDS, Kind
 from gui.session import Session
 from gui.theme import GRID, sized
@@ -42,6 +43,7 @@ class RestrictionLine(QWidget):
         self.remove.setFixedWidth(22)
         self.remove.setAccessibleName("remove this restriction")
         self.sentence = Sentence()
+        self.carrier = CarrierChoice(session)
         row = QHBoxLayout()
         row.setContentsMargins(0, 0, 0, 0)
         row.setSpacing(GRID // 2)
@@ -54,7 +56,9 @@ class RestrictionLine(QWidget):
         column.setContentsMargins(0, 0, 0, 0)
         column.setSpacing(2)
         column.addLayout(row)
+        column.addWidget(self.carrier)
         column.addWidget(self.sentence)
+        self.carrier.picked.connect(self._pick_carrier)
         self.kind.activated.connect(self._pick)
         self.about.textEdited.connect(self._type_about)
         self.completer.activated.connect(
@@ -94,6 +98,9 @@ class RestrictionLine(QWidget):
             quantity = getattr(typed, kind.value)
             empty = quantity is None or quantity.value == ""
             self.values[kind.name].show_quantity(None if empty else quantity)
+        self.carrier.setVisible(kind.name == "approach")
+        if kind.name == "approach":
+            self.carrier.show_choice(typed.reaction, typed.key)
         self.show_faults()
 
     def _complete(self, kind: Kind) -> None:
@@ -110,10 +117,12 @@ class RestrictionLine(QWidget):
         kind = KINDS[self._typed().kind]
         found = self._session.faults_at(path)
         at_value = [f.text for f in found if kind.value and f.field == f"{path}.{kind.value}"]
-        others = [f.text for f in found if f.text not in at_value]
+        others = [f.text for f in found if f.text not in at_value and f.field != f"{path}.key"]
         self.about.set_fault("\n".join(others))
         if kind.value:
             self.values[kind.name].set_fault("\n".join(at_value))
+        at_key = [f for f in found if f.field == f"{path}.key"]
+        self.carrier.set_fault(at_key[0].text if at_key else "")
         self.sentence.say("\n".join(dict.fromkeys(f.text for f in found)))
 
     # -- editing
@@ -132,6 +141,10 @@ class RestrictionLine(QWidget):
 
     def _type_value(self, quantity: Quantity | None) -> None:
         self._edit(edits.with_value(self._typed(), quantity), "type restriction", "value")
+
+    def _pick_carrier(self, key: str) -> None:
+        label = f"shift carried by {key or 'the solver’s choice'}"
+        self._edit(edits.with_key(self._typed(), key), label, None)
 
     def _remove(self) -> None:
         case = edits.removed(self._session.case, self.index)
@@ -182,7 +195,9 @@ class RestrictionsSection(QWidget):
             line = RestrictionLine(self._session, len(self.lines))
             self.lines.append(line)
             self._column.addWidget(line)
+            line.show()  # a line that is hidden would not count in the height
             line.sentence.shown_or_hidden.connect(self._fit)
+            line.carrier.shown_or_hidden.connect(self._fit)
         for line in self.lines:
             line.refresh()
         self.setVisible(count > 0)

@@ -163,6 +163,8 @@ class CompositionPlot(QWidget):
         line = self._line
         if line is None:
             return False
+        if any(present.any() for _, present in line.fluids):
+            return True
         at = [line.keys.index(k) for k in line.condensed]
         return bool(np.nan_to_num(line.shares[:, at]).any()) if at else False
 

@@ -1,4 +1,4 @@
-"""The composition at the end: gas first, condensed after it, the most abundant on top."""
+"""The composition at the end: fluids first, condensed after them, the most abundant on top."""
 
 from __future__ import annotations
 
@@ -8,7 +8,7 @@ from typing import Any
 from PySide6.QtCore import QAbstractTableModel, QModelIndex, QObject, Qt
 
 from gui.colours import SpeciesColours
-from gui.readings import SpeciesRow, Units, composition
+from gui.readings import FluidRows, SpeciesRow, Units, composition
 from gui.tables.clipboard import COPY_ROLE
 from gui.tables.delegates import BAR_ROLE, MUTED_ROLE, SECTION_ROLE, WARNING_ROLE
 from gui.theme import Theme
@@ -44,20 +44,11 @@ class CompositionModel(QAbstractTableModel):
 
     def show(self, end: Any, units: Units) -> None:
         """Show an end state."""
-        gases, condensed = composition(end)
-        new: list[_Row] = []
-        if condensed:
-            # Condensed phases stand before the traces of the gas, or nobody would see them.
-            main = [r for r in gases if r.share >= TRACE]
-            traces = gases[len(main) :]
-            new += ["Gas", *main] if main else []
-            new += ["Condensed, as share of the whole", *condensed]
-            new += ["Traces in the gas", *traces] if traces else []
-        else:
-            new += gases
+        fluids, condensed = composition(end)
+        new = _rows(fluids, condensed)
         heads = (self._units, self._full)
         self._units = units
-        top = max((r.share for r in (*gases, *condensed)), default=1.0)
+        top = max((r.share for r in new if not isinstance(r, str)), default=1.0)
         self._full = min(math.ceil(top * 10 - 1e-9) / 10, 1.0) or 1.0
         kinds = [isinstance(r, str) for r in new]
         if kinds == [isinstance(r, str) for r in self._rows]:
@@ -187,3 +178,22 @@ class CompositionModel(QAbstractTableModel):
         if self.logarithmic:
             return max(1.0 + math.log10(share) / DECADES, 0.0)
         return share / self._full
+
+
+def _rows(fluids: list[FluidRows], condensed: list[SpeciesRow]) -> list[_Row]:
+    """Phase by phase, each under its title; a gas alone needs none."""
+    if not condensed and [f.name for f in fluids] == ["gas"]:
+        return list(fluids[0].rows)
+    # Condensed phases stand before the traces of the fluids, or nobody would see them.
+    out: list[_Row] = []
+    traces: list[_Row] = []
+    for fluid in fluids:
+        main = [r for r in fluid.rows if r.share >= TRACE]
+        title = fluid.name.capitalize()
+        if len(fluids) > 1:
+            title += f", {number_text(100 * fluid.share, 3)} % of all moles"
+        out += [title, *main] if main else []
+        rest = fluid.rows[len(main) :]
+        traces += [f"Traces in the {fluid.name}", *rest] if rest else []
+    out += ["Condensed, as share of the whole", *condensed] if condensed else []
+    return out + traces

@@ -127,7 +127,7 @@ class StreamModel(QAbstractTableModel):
         shown = role == Qt.ItemDataRole.DisplayRole
         if column == SPECIES:
             typed = amount.species
-            return formula_text(typed) if shown and _is_key(typed) else typed
+            return formula_text(typed) if shown and is_key(typed) else typed
         if column == AMOUNT:
             return typed_number(amount.value)
         if column == UNIT:
@@ -196,7 +196,8 @@ class StreamModel(QAbstractTableModel):
             self._session.edit_case(case, f"paste {len(new)} rows" if len(new) > 1 else "paste")
 
 
-def _is_key(text: str) -> bool:
+def is_key(text: str) -> bool:
+    """Whether a typed text reads as a formula."""
     return text[:1].isupper() and " " not in text.partition("(")[0]
 
 

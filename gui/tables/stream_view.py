@@ -3,13 +3,12 @@
 from __future__ import annotations
 
 from PySide6.QtCore import QModelIndex, QObject, QSize, Qt, Signal
-from PySide6.QtGui import QGuiApplication, QKeyEvent, QKeySequence
+from PySide6.QtGui import QGuiApplication, QKeyEvent
 from PySide6.QtWidgets import (
     QAbstractItemDelegate,
     QAbstractItemView,
     QCompleter,
     QHeaderView,
-    QTableView,
     QWidget,
 )
 
@@ -18,13 +17,12 @@ from gui.fields.species_completer import SpeciesCompleter
 from gui.session import Session
 from gui.tables import clipboard
 from gui.tables.delegates import CellDelegate, EditDelegate
+from gui.tables.edit_view import HEADER, EditView
 from gui.tables.stream_model import AMOUNT, SHARE, SPECIES, UNIT, StreamModel
 from gui.theme import ROW_HEIGHT, Theme
 
-_HEADER = 22
 
-
-class StreamView(QTableView):
+class StreamView(EditView):
     """Shows a `StreamModel` at its full height."""
 
     left_at_end = Signal()
@@ -32,23 +30,11 @@ class StreamView(QTableView):
     def __init__(
         self, session: Session, model: StreamModel, theme: Theme, parent: QWidget | None = None
     ) -> None:
-        super().__init__(parent)
+        super().__init__("species of the stream", parent)
         self._session = session
         self._model = model
         self.setModel(model)
-        self.setShowGrid(False)
-        self.setTabKeyNavigation(False)
-        self.setWordWrap(False)
         self.setVerticalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
-        self.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
-        self.setEditTriggers(
-            QAbstractItemView.EditTrigger.DoubleClicked
-            | QAbstractItemView.EditTrigger.SelectedClicked
-            | QAbstractItemView.EditTrigger.AnyKeyPressed
-            | QAbstractItemView.EditTrigger.EditKeyPressed
-        )
-        self.setSelectionMode(QAbstractItemView.SelectionMode.ContiguousSelection)
-        self.setAccessibleName("species of the stream")
         end = session.end_visit
         self._delegates = {
             SPECIES: _SpeciesDelegate(
@@ -60,14 +46,7 @@ class StreamView(QTableView):
         }
         for column, delegate in self._delegates.items():
             self.setItemDelegateForColumn(column, delegate)
-        self.verticalHeader().hide()
-        self.verticalHeader().setDefaultSectionSize(ROW_HEIGHT)
-        self.verticalHeader().setMinimumSectionSize(ROW_HEIGHT)
         header = self.horizontalHeader()
-        header.setHighlightSections(False)
-        header.setFixedHeight(_HEADER)
-        header.setSectionsClickable(False)
-        header.setSectionResizeMode(QHeaderView.ResizeMode.Fixed)
         header.setSectionResizeMode(SPECIES, QHeaderView.ResizeMode.Stretch)
         for column, width in ((AMOUNT, 92), (UNIT, 78), (SHARE, 70)):
             header.resizeSection(column, width)
@@ -80,7 +59,7 @@ class StreamView(QTableView):
 
     def sizeHint(self) -> QSize:
         """Tall enough for all rows."""
-        return QSize(320, _HEADER + ROW_HEIGHT * self._model.rowCount() + 2)
+        return QSize(320, HEADER + ROW_HEIGHT * self._model.rowCount() + 2)
 
     def moveCursor(
         self, action: QAbstractItemView.CursorAction, modifiers: Qt.KeyboardModifier
@@ -98,26 +77,12 @@ class StreamView(QTableView):
         return to
 
     def keyPressEvent(self, event: QKeyEvent) -> None:
-        """Copy, paste, remove, insert and move rows."""
-        at = self.currentIndex()
+        """Insert and move rows, besides what every such table does."""
         key, alt = event.key(), event.modifiers() == Qt.KeyboardModifier.AltModifier
-        if event.matches(QKeySequence.StandardKey.Copy):
-            clipboard.copy(self)
-        elif event.matches(QKeySequence.StandardKey.Paste):
-            self.paste()
-        elif event.matches(QKeySequence.StandardKey.Cut):
-            clipboard.copy(self)
-            self.remove_rows()
-        elif key in (Qt.Key.Key_Delete, Qt.Key.Key_Backspace) and not alt:
-            self.remove_rows()
-        elif key == Qt.Key.Key_Insert:
-            self._edit(edits.insert_amount, max(at.row(), 0), "insert row")
+        if key == Qt.Key.Key_Insert:
+            self._edit(edits.insert_amount, max(self.currentIndex().row(), 0), "insert row")
         elif alt and key in (Qt.Key.Key_Up, Qt.Key.Key_Down):
             self.move_row(-1 if key == Qt.Key.Key_Up else 1)
-        elif key in (Qt.Key.Key_Return, Qt.Key.Key_Enter):
-            # An editor passes its Enter on to here; then there is nothing to open.
-            if at.isValid() and self.state() != QAbstractItemView.State.EditingState:
-                self.edit(at)
         else:
             super().keyPressEvent(event)
 

@@ -73,7 +73,7 @@ def make_window(qtbot, preferences, monkeypatch):
         window.shut()
         window.theme.close()
         assert window.session.is_idle()
-        assert window.what_if.is_idle()
+        assert window.is_idle()
         assert not [t for t in window.findChildren(QTimer) if t.isActive() and not t.isSingleShot()]
         for pool in window.findChildren(QThreadPool):
             assert pool.activeThreadCount() == 0
@@ -98,7 +98,7 @@ def settled(qtbot, window, timeout=20.0):
     until = monotonic() + timeout
     while monotonic() < until:
         QApplication.processEvents()
-        if window.session.is_idle() and window.what_if.is_idle():
+        if window.is_idle():
             return
         qtbot.wait(5)
     raise AssertionError("not settled in time")

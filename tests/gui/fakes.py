@@ -4,6 +4,7 @@ import threading
 from dataclasses import dataclass, field
 from types import SimpleNamespace
 
+from solver.gas_model import GasModel
 from species_db import Segment, Species
 
 
@@ -26,9 +27,9 @@ def answer(amounts=None, T=1500.0, absent=None):
     """A CaseAnswer in shape, from amounts by key."""
     species = (H2, N2, GRAPHITE)
     amounts = {"H2": 1.0, "N2": 3.0, "C(gr)": 0.0} | (amounts or {})
-    phase_amounts = {"gas": amounts["H2"] + amounts["N2"]}
+    phases = {"gas": {key: amounts[key] for key in ("H2", "N2")}}
     if amounts["C(gr)"]:
-        phase_amounts["C(gr)"] = amounts["C(gr)"]
+        phases["C(gr)"] = {"C(gr)": amounts["C(gr)"]}
     proof = SimpleNamespace(
         element_residual=1e-16,
         trace_residual=1e-15,
@@ -36,6 +37,7 @@ def answer(amounts=None, T=1500.0, absent=None):
         gap=3e-12,
         absent={"C(gr)": 0.83} if absent is None else absent,
         model="Ideal gas mixture.",
+        rigorous=True,
     )
     end = SimpleNamespace(
         T=T,
@@ -47,7 +49,12 @@ def answer(amounts=None, T=1500.0, absent=None):
         G=-3e6,
         amounts=amounts,
         species=species,
-        phase_amounts=phase_amounts,
+        phases=phases,
+        phase_amounts={name: sum(held.values()) for name, held in phases.items()},
+        fluids={},
+        left_out={},
+        taken_as_ideal=(),
+        cautions=(),
         proof=proof,
         outside_range=(),
         fixed=SimpleNamespace(pair="T,p"),
@@ -58,6 +65,7 @@ def answer(amounts=None, T=1500.0, absent=None):
         candidates=species,
         fixed=end.fixed,
         fed=fed,
+        gas=GasModel(),
         basis="batch",
         restrictions=(),
         reactions=(),

@@ -158,3 +158,41 @@ def test_the_line_is_held_back_as_the_case_is(make_window, qtbot):
     share = line.shares[:, line.keys.index("CH4")]
     amounts = window.session.answer.value.end.amounts
     assert share.min() > 0.9 * amounts["CH4"] / sum(amounts.values())
+
+
+def test_the_species_that_carries_the_shift_is_chosen(window, section, qtbot):
+    press(window, "add_restriction")
+    line = section.lines[0]
+    assert not line.carrier.isVisible()
+    pick(line, "approach")
+    retype(qtbot, line.about, "CO + H2O = CO2 + H2")
+    retype(qtbot, line.value, "-300")
+    settled(qtbot, window)
+    menu = line.carrier.menu
+    assert line.carrier.isVisible()
+    assert [menu.itemText(i) for i in range(menu.count())] == [
+        "automatic",
+        *("CO", "H₂O", "CO₂", "H₂"),
+    ]
+    assert menu.currentText() == "automatic"
+    automatic = dict(window.session.answer.value.end.amounts)
+    menu.setCurrentIndex(menu.findData("CO2"))
+    menu.activated.emit(menu.currentIndex())
+    assert window.session.case.restrictions[0].key == "CO2"
+    settled(qtbot, window)
+    assert window.session.answer.value.prepared.restrictions[0].key == "CO2"
+    assert window.session.answer.value.end.amounts != automatic
+    press(window, "undo")
+    settled(qtbot, window)
+    assert menu.currentText() == "automatic"
+    assert dict(window.session.answer.value.end.amounts) == automatic
+
+
+def test_a_carrier_that_is_no_species_of_the_reaction_is_marked(make_window):
+    held = HeldApproach(reaction="CO + H2O = CO2 + H2", dT=q(-10.0, "K"), key="CH4")
+    window = make_window(project(burner(restrictions=(held,))))
+    line = window.held_fixed.restrictions.lines[0]
+    assert line.carrier.menu.property("faulty") == "true"
+    assert line.carrier.menu.currentData() == "CH4"
+    assert "CH4 is no species of" in line.sentence.text()
+    assert line.about.property("faulty") != "true"

@@ -32,6 +32,7 @@ _P_LEAST = 1e-30  # Pa
 _MAX_EVALUATIONS = 160
 _NARROW = 1e-15
 _MET = 1e-13
+_ASIDE = (0.0, 1e-7, -1e-6, 1e-5, -1e-4)
 _SLIVER = 1e-12  # of ln p: the Gibbs energies of two phases tell no more
 
 
@@ -152,7 +153,7 @@ def seek_alone(real: RealMixture, feed: Feed, target: Target, T: float, p: float
     else:
 
         def at(T: float) -> Ends:
-            return seeker.at(T, p)
+            return seeker.near_T(T, p)
 
     return _seek(at, seeker.blend, pair, value, T)
 
@@ -164,8 +165,23 @@ class _Seeker:
         self._real, self._feed = real, feed
         self._last: Minima | None = None
 
-    def at(self, T: float, p: float) -> Ends:
-        """The minimum at T and p."""
+    def near_T(self, T: float, p: float) -> Ends:
+        """The minimum at p and T, or close by where phases all but coexist."""
+        return self._first([(T * (1.0 + shift), p) for shift in _ASIDE])
+
+    def near_p(self, T: float, p: float) -> Ends:
+        """The minimum at T and p, or close by where phases all but coexist."""
+        return self._first([(T, p * (1.0 + shift)) for shift in _ASIDE])
+
+    def _first(self, places: list[tuple[float, float]]) -> Ends:
+        for T, p in places[:-1]:
+            try:
+                return self._at(T, p)
+            except Unsettled:
+                continue
+        return self._at(*places[-1])
+
+    def _at(self, T: float, p: float) -> Ends:
         cases = RealCases(self._real, self._feed, np.array([T]), np.array([p]))
         minima = minimise_real(cases, np.zeros((1, 1)), self._last)
         if not minima.found[0] and self._last is not None:
@@ -202,7 +218,8 @@ class _Seeker:
         small: Ends | None = None
         x, width, last, tries = float(np.log(p)), np.inf, np.inf, 0
         for _ in range(_MAX_EVALUATIONS):
-            at = self.at(T, float(np.exp(x)))
+            at = self.near_p(T, float(np.exp(x)))
+            x = float(np.log(at.p))
             off = float(np.log(at.value("V") / V))
             if abs(off) <= _MET:
                 return at
@@ -281,6 +298,7 @@ def _seek(
     width, last, tries = np.inf, np.inf, 0
     for _ in range(_MAX_EVALUATIONS):
         ends = at(T)
+        T = ends.T
         excess = ends.value(variable) - value
         unit = R * float(ends.n.sum()) * (1.0 if variable == "S" else T)
         if abs(excess) <= (2e-13 if width > 1e-9 * T else 5e-12) * unit:

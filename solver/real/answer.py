@@ -102,20 +102,34 @@ def judged(
 
 
 def _named(cases: RealCases, fluids: Array) -> Array:
-    """A lone fluid phase as liquid or gas by its density, whichever slot it was found in."""
-    out = fluids.copy()
-    sizes = fluids.sum(axis=2)
+    """Fluid phases in the slots they are called by, whichever they were found in.
+
+    The gas is what is not a liquid by its density; liquids follow by their amount.
+    """
+    there = fluids.sum(axis=2) > 0.0
+    liquid = there.copy()
     every = np.arange(len(cases))
-    for slot, other in ((0, 1), (1, 0)):
-        alone = (sizes[:, slot] > 0.0) & (np.delete(sizes, slot, axis=1).sum(axis=1) <= 0.0)
-        if not alone.any():
+    for slot, root in enumerate(ROOTS):
+        if not there[:, slot].any():
             continue
-        dense, one_root = packing(cases, every, fluids[:, slot], ROOTS[slot])
-        dense_enough = dense > LIQUID
-        cold = cases.T < _pseudocritical(cases, fluids[:, slot])
-        liquid = dense_enough & cold
-        move = alone & one_root & (liquid if slot == 0 else ~dense_enough)
-        out[move, other], out[move, slot] = fluids[move, slot], 0.0
+        dense, one_root = packing(cases, every, fluids[:, slot], root)
+        if slot == 0:  # of two roots the vapour's is a gas
+            cold = cases.T < _pseudocritical(cases, fluids[:, 0])
+            liquid[:, 0] &= (dense > LIQUID) & one_root & cold
+        else:
+            alone = there.sum(axis=1) == 1
+            liquid[:, slot] &= ~(alone & one_root & (dense <= LIQUID))
+    plain = np.zeros_like(liquid)
+    plain[:, 1] = liquid[:, 1]
+    out = fluids.copy()
+    for case in np.flatnonzero((liquid != plain).any(axis=1)):
+        out[case] = 0.0
+        if (gas := there[case] & ~liquid[case]).any():
+            out[case, 0] = fluids[case, gas.argmax()]
+        order = sorted(np.flatnonzero(liquid[case]), key=lambda k: -fluids[case, k].sum())
+        for slot, found in enumerate(order, start=1):
+            if slot < len(SLOTS):
+                out[case, slot] = fluids[case, found]
     return out
 
 

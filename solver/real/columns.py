@@ -13,7 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from solver.core.simplex import Simplex
-from solver.real.problem import RealCases
+from solver.real.problem import SLOTS, RealCases
 from solver.real.stability import tangent_plane
 
 Array = NDArray[np.float64]
@@ -42,11 +42,18 @@ class Columns:
     def improve(self) -> bool:
         """Add the trial phase that lies lowest; True where there is none to add."""
         cases, gas = self._cases, self._cases.gas
+        self._program.run()
         d = (self._program.potentials @ cases.mixture.A[gas].T - cases.ideal.c[0, gas])[None, :]
         trials = tangent_plane(cases, d, np.ones(d.shape, dtype=bool), np.zeros((1, 1, gas.size)))
         if trials.distance[0] > _CLOSE:
             return True
-        w = trials.w[0]
+        self.add(trials.w[0])
+        self._program.run()
+        return False
+
+    def add(self, w: Array) -> None:
+        """Add a fluid phase of composition w (gas species,); `improve` takes it into account."""
+        cases, gas = self._cases, self._cases.gas
         M = w @ cases.q[0]
         residual = cases.fluid.residual(M[None, :], "least")
         log_phi = cases.q[0] @ residual.grad[0]
@@ -55,8 +62,6 @@ class Columns:
         self._program.add(w @ cases.mixture.A[gas], cost)
         dense = float(M[1] / (M[0] * residual.Z[0])) if M[0] > 0.0 else 0.0
         self._trials.append((w, dense))
-        self._program.run()
-        return False
 
     def read(self) -> tuple[tuple[int, ...], dict[int, Array], Array]:
         """Condensed phases, amounts (gas species,) in each fluid slot, and potentials."""
@@ -84,9 +89,14 @@ class Columns:
         for w, _ in (part for part in parts if part[1] <= _DENSE):
             fluids[0] = fluids.get(0, np.zeros(gas.size)) + w
         for w, _ in (part for part in parts if part[1] > _DENSE):
-            slot = 1
-            if 1 in fluids:
-                apart = np.abs(w / w.sum() - fluids[1] / fluids[1].sum()).max()
-                slot = 1 if apart < _UNLIKE else 2
+            apart = {
+                slot: float(np.abs(w / w.sum() - held / held.sum()).max())
+                for slot, held in fluids.items()
+                if slot > 0
+            }
+            slot = min(apart, key=lambda k: apart[k], default=0)
+            free = [k for k in range(1, len(SLOTS)) if k not in fluids]
+            if free and (slot == 0 or apart[slot] > _UNLIKE):
+                slot = free[0]
             fluids[slot] = fluids.get(slot, np.zeros(gas.size)) + w
         return tuple(sorted(active)), fluids, self._program.potentials

@@ -138,6 +138,8 @@ class Judge:
             slot = next((s for s in range(len(SLOTS)) if s > max(fluids)), -1)
             if fluids == [1] and trial < dense[0]:
                 slot = 0
+        shares = [solved.fluids[row, f] for f in range(len(fluids))]
+        self.out.apart[int(case[0])] = np.array([w, *(n / n.sum() for n in shares)])
         if slot < 0:
             return  # more fluid phases than there is room for
         total = solved.fluids[row].sum(axis=0)

@@ -158,8 +158,11 @@ def _settle_alone(cases: RealCases, i: int, out: Minima) -> None:
             for slot, amounts in fluids.items():
                 _begin(one, np.zeros(1, dtype=np.intp), slot, amounts[None, :], own)
             _follow(one, np.zeros(1, dtype=np.intp), own, np.array([CALM_ENTERED]))
-            if own.found[0] or finished:
+            apart = own.apart.pop(0, None)
+            if own.found[0] or (finished and apart is None):
                 break
+            for w in apart if apart is not None else ():
+                columns.add(w)
     except Endless as error:
         own.why[0] = Unsettled(str(error))
     if not own.found[0] and not own.why:

@@ -25,9 +25,9 @@ if TYPE_CHECKING:
 Array = NDArray[np.float64]
 Indices = NDArray[np.intp]
 
-SLOTS = ("gas", "liquid", "second liquid")
+SLOTS = ("gas", "liquid", "second liquid", "third liquid")
 """The fluid phases that a mixture can have, lightest first."""
-ROOTS = ("vapour", "liquid", "liquid")
+ROOTS = ("vapour", "liquid", "liquid", "liquid")
 """Root of the equation of state that each of them takes."""
 
 

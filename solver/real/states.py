@@ -52,6 +52,9 @@ class Minima:
         Least tangent-plane distance found, in units of RT.
     found : ndarray of bool, shape (cases,)
     why : dict of int to Exception
+    apart : dict of int to ndarray, shape (phases, gas species)
+        Compositions among which the phases of a case must be chosen afresh: one lay lower
+        than what is present, and there was no room for it beside that.
     """
 
     sets: list[PhaseSet]
@@ -65,6 +68,7 @@ class Minima:
     distance: Array
     found: Flags
     why: dict[int, Exception]
+    apart: dict[int, Array]
 
     @classmethod
     def none_of(cls, cases: RealCases) -> Minima:
@@ -83,6 +87,7 @@ class Minima:
             distance=np.full(count, np.nan),
             found=np.zeros(count, dtype=bool),
             why={},
+            apart={},
         )
 
     def number(self, chosen: PhaseSet) -> int:
@@ -109,6 +114,7 @@ class Minima:
             distance=self.distance[keep].copy(),
             found=self.found[keep].copy(),
             why={},
+            apart={},
         )
 
     def take(self, which: Indices, other: Minima) -> None:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 from solver.errors import InputError
@@ -42,6 +43,8 @@ class GasModel:
                 self.key,
                 ", ".join(GAS_MODELS),
             )
+        for pair in self.interactions:
+            _check_pair(pair)
         if self.interactions and self.key == "ideal":
             raise InputError(
                 "An ideal gas has no interaction parameters; take them out, or choose srk or pr.",
@@ -59,6 +62,22 @@ class GasModel:
     def is_ideal(self) -> bool:
         """Whether gases mix ideally and have no liquid of their own."""
         return self.key == "ideal"
+
+
+def _check_pair(pair: object) -> None:
+    """Refuse what is no pair of species and a number."""
+    if isinstance(pair, tuple | list) and len(pair) == 3:
+        a, b, k = pair
+        number = isinstance(k, int | float) and not isinstance(k, bool) and math.isfinite(k)
+        if isinstance(a, str) and isinstance(b, str) and number:
+            return
+    raise InputError(
+        f"The interaction parameter {pair!r} is not two species and a number; "
+        'give it as in ("N2", "H2", 0.07).',
+        "interactions",
+        pair,
+        "(key, key, k_ij)",
+    )
 
 
 def gas_model(gas: str | GasModel) -> GasModel:

@@ -201,8 +201,8 @@ def explained(
     if isinstance(error, TooSmall):
         needed = error.needed / scale
         return InputError(
-            f"The vessel of {values[1]:.6g} m3 is smaller than the liquids and solids that must "
-            f"stay in it ({needed:.6g} m3); enlarge V or feed less.",
+            f"The vessel of {values[1]:.6g} m3 is smaller than {error.what} "
+            f"({needed:.6g} m3); enlarge V or feed less.",
             "fixed.V",
             values[1],
             f"above {needed:.6g} m3",

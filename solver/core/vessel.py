@@ -24,11 +24,13 @@ _MAX_EVALUATIONS = 300
 
 
 class TooSmall(ArithmeticError):
-    """The condensed phases need more than the vessel holds; `needed` is in m3."""
+    """The contents need more than the vessel holds; `needed` is in m3, `what` says of which."""
 
-    def __init__(self, needed: float) -> None:
+    def __init__(
+        self, needed: float, what: str = "the liquids and solids that must stay in it"
+    ) -> None:
         super().__init__("the vessel is smaller than what must stay condensed in it")
-        self.needed = needed
+        self.needed, self.what = needed, what
 
 
 class Unfilled(ArithmeticError):

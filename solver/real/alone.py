@@ -19,6 +19,7 @@ from solver.core.minimise import Unsettled
 from solver.core.mixture import R
 from solver.core.temperature import OutOfReach
 from solver.core.totals import Totals
+from solver.core.vessel import TooSmall
 from solver.fixed import P_HIGHEST, T_HIGHEST, T_LOWEST, Pair
 from solver.real.functions import Response, respond, state_functions
 from solver.real.minimise import minimise_real
@@ -231,8 +232,10 @@ class _Seeker:
             if large is None or small is None:
                 tries = tries + 1 if slow else 0
                 reach = 0.02 * 4.0**tries if slow or not slope else 2.0
-                if not np.log(_P_LEAST) < x < np.log(P_HIGHEST):
-                    raise Unsettled(f"no pressure up to {P_HIGHEST:g} Pa fits the volume")
+                if x >= np.log(P_HIGHEST):
+                    raise TooSmall(at.value("V"), f"its contents even at {P_HIGHEST:g} Pa")
+                if x <= np.log(_P_LEAST):
+                    raise Unsettled("no pressure fits the volume")
                 x += float(np.clip(step * (1.0 + 1e-6) * 2.0**tries, -reach, reach))
                 x = float(np.clip(x, np.log(_P_LEAST), np.log(P_HIGHEST)))
                 continue

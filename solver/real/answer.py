@@ -113,12 +113,13 @@ def _named(cases: RealCases, fluids: Array) -> Array:
         if not there[:, slot].any():
             continue
         dense, one_root = packing(cases, every, fluids[:, slot], root)
+        cold = cases.T < _pseudocritical(cases, fluids[:, slot])
+        dense_and_cold = (dense > LIQUID) & cold
         if slot == 0:  # of two roots the vapour's is a gas
-            cold = cases.T < _pseudocritical(cases, fluids[:, 0])
-            liquid[:, 0] &= (dense > LIQUID) & one_root & cold
+            liquid[:, 0] &= dense_and_cold & one_root
         else:
             alone = there.sum(axis=1) == 1
-            liquid[:, slot] &= ~(alone & one_root & (dense <= LIQUID))
+            liquid[:, slot] &= ~(alone & one_root & ~dense_and_cold)
     plain = np.zeros_like(liquid)
     plain[:, 1] = liquid[:, 1]
     out = fluids.copy()

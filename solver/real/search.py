@@ -21,6 +21,7 @@ from solver.core.mixture import R
 from solver.core.searches import Searches
 from solver.core.temperature import OutOfReach
 from solver.core.totals import Totals
+from solver.core.vessel import TooSmall
 from solver.fixed import P_HIGHEST, P_LOWEST, T_HIGHEST, T_LOWEST, Pair
 from solver.real.alone import Ends, Target, seek_alone
 from solver.real.functions import Response, respond, state_functions
@@ -87,7 +88,7 @@ def find_states(
         one = feed.of(np.array([i]))
         try:
             ends = seek_alone(real, one, target.of(np.array([i])), float(T[i]), float(p[i]))
-        except (OutOfReach, Unsettled) as error:
+        except (OutOfReach, TooSmall, Unsettled) as error:
             out.why[int(i)] = error
             continue
         _put(out, int(i), ends)

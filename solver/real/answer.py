@@ -120,10 +120,9 @@ def _named(cases: RealCases, fluids: Array) -> Array:
         else:
             alone = there.sum(axis=1) == 1
             liquid[:, slot] &= ~(alone & one_root & ~dense_and_cold)
-    plain = np.zeros_like(liquid)
-    plain[:, 1] = liquid[:, 1]
+    misplaced = liquid[:, 0] | (there & ~liquid)[:, 1:].any(axis=1) | liquid[:, 2:].any(axis=1)
     out = fluids.copy()
-    for case in np.flatnonzero((liquid != plain).any(axis=1)):
+    for case in np.flatnonzero(misplaced):
         out[case] = 0.0
         if (gas := there[case] & ~liquid[case]).any():
             out[case, 0] = fluids[case, gas.argmax()]

@@ -83,6 +83,26 @@ def notes(found: dict) -> str:
                 f"| {problem} | {kind} | {stats['min'] * 1e3:.3g} | {stats['median'] * 1e3:.3g} "
                 f"| {conic / stats['min'] * 1e3:.3g} |"
             )
+    lines += [
+        "",
+        "The same gas by an equation of state, at T and p; the last column is its fastest time "
+        "over that of the ideal gas.",
+        "",
+        "| mixture | cases | gas model | fastest, ms | median, ms | real over ideal |",
+        "| --- | --- | --- | ---: | ---: | ---: |",
+    ]
+    for problem in ("gas", "gas and graphite"):
+        for cases, real, ideal in (
+            ("one", "test_settle_real[{}-{}]", f"test_settle_one[Thalweg-{problem}]"),
+            ("1000", "test_settle_many_real[{}-{}]", f"test_settle_many[T,p-{problem}]"),
+        ):
+            base = runs[ideal]["stats"]["min"]
+            for gas in ("srk", "pr"):
+                stats = runs[real.format(gas, problem)]["stats"]
+                lines.append(
+                    f"| {problem} | {cases} | {gas} | {stats['min'] * 1e3:.3g} "
+                    f"| {stats['median'] * 1e3:.3g} | {stats['min'] / base:.3g} |"
+                )
     lines += ["", "| candidates of C, H, O, N, S | one cold case, fastest, ms |", "| ---: | ---: |"]
     for name, run in runs.items():
         if name.startswith("test_growth"):

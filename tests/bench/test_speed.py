@@ -127,6 +127,37 @@ def test_settle_many(benchmark, kind: str, with_graphite: bool):
         assert ends.G[i] == pytest.approx(one.G, rel=1e-9)
 
 
+@pytest.mark.parametrize("with_graphite", [False, True], ids=["gas", "gas and graphite"])
+@pytest.mark.parametrize("gas", ["srk", "pr"])
+@pytest.mark.benchmark(warmup=True, warmup_iterations=2, min_rounds=5, max_time=3.0)
+def test_settle_real(benchmark, gas: str, with_graphite: bool):
+    """One case with an equation of state, beside the ideal gas of `test_settle_one`."""
+    problem = mixture(with_graphite)
+    species = list(problem.species)
+    fixed = solver.Fixed("T,p", T=problem.T, p=problem.p)
+    end = benchmark(lambda: solver.settle(species, problem.feed, fixed, gas=gas))
+    assert end.proof.holds
+    assert end.fluids
+
+
+@pytest.mark.parametrize("with_graphite", [False, True], ids=["gas", "gas and graphite"])
+@pytest.mark.parametrize("gas", ["srk", "pr"])
+@pytest.mark.benchmark(warmup=True, warmup_iterations=1, min_rounds=5, max_time=3.0)
+def test_settle_many_real(benchmark, gas: str, with_graphite: bool):
+    """A thousand unordered cases with an equation of state."""
+    species, feeds, pair, X, Y = batch(with_graphite, "T,p")
+    ends = benchmark(lambda: solver.settle_many(species, feeds, pair, X, Y, gas=gas))
+    assert ends.settled.all()
+    for i in range(0, CASES, 97):
+        one = solver.settle(
+            species,
+            {s: float(n[i]) for s, n in feeds.items()},
+            solver.Fixed(pair, T=X[i], p=Y[i]),
+            gas=gas,
+        )
+        assert ends.G[i] == pytest.approx(one.G, rel=1e-9)
+
+
 GROWTH = (30, 70, 150, 300, 600, 1000)
 
 

@@ -18,6 +18,7 @@ from solver.project.units import from_si
 from solver.project.wording import formula_text, number_text, unit_text
 
 _HEADER = 26
+_DIFFERENCE = 3
 ROUNDING = 1e-9
 """Share of two figures that a difference of less is the rounding of."""
 IDEAL = (
@@ -44,7 +45,8 @@ class BesidePart(QWidget):
         self._answer: Any = None
         self._beside: Any = None
         self._units = readings.Units()
-        self.figures = FiguresTable(theme, "ideal beside real", 150, 98, ".0000")
+        self.figures = FiguresTable(theme, "ideal beside real", 140, 98, ".0000")
+        self.figures.model.modelReset.connect(self._widen)
         self.progress = QProgressBar()
         self.progress.setRange(0, 0)
         self.progress.setTextVisible(False)
@@ -99,6 +101,11 @@ class BesidePart(QWidget):
     def close_jobs(self) -> None:
         """Stop; waits for the worker."""
         self._channel.close()
+
+    def _widen(self) -> None:
+        """A difference has a sign, which must not be cut off."""
+        if self.figures.model.columnCount():
+            self.figures.table.setColumnWidth(_DIFFERENCE, 118)
 
     def _found(self, answer: Any, beside: Any) -> None:
         if answer is self._answer:

@@ -20,6 +20,7 @@ from gui.theme import GRID, ROW_HEIGHT, Theme
 
 BESIDE_WIDTH, PAIRS_WIDTH = 456, 380
 QWIDGETSIZE_MAX = (1 << 24) - 1
+TITLE = "interaction parameters k_ij"
 MEANING = (
     "k_ij lowers the attraction between two species below the mean of their own; what is not "
     "listed is zero. Type over a published value to use your own, Del takes yours away."
@@ -41,7 +42,7 @@ class GasView(QScrollArea):
         self.model = InteractionsModel(session, self)
         self.view = InteractionsView(session, self.model, theme)
         self.view.setMinimumHeight(HEADER + 5 * ROW_HEIGHT)
-        self.title = Label("interaction parameters k_ij", "muted", "small")
+        self.title = Label(TITLE, "muted", "small")
         self.title.setBuddy(self.view)
         self.faults = Sentence()
         self.note = Sentence("muted")
@@ -97,6 +98,7 @@ class GasView(QScrollArea):
         self.faults.say("\n".join(dict.fromkeys(fault.text for fault in found)))
         answer, key = self._session.answer.value, self._session.case.gas
         if answer is None:
+            self.title.setText(TITLE)
             self.model.show_published((), {})
             return
         candidates = answer.prepared.candidates
@@ -104,6 +106,8 @@ class GasView(QScrollArea):
             self._asked = (key, candidates, pairs_of(GasModel(key), candidates))
         own = {frozenset(pair[:2]): pair[2] for pair in answer.prepared.gas.interactions}
         self.model.show_published(self._asked[2], own)
+        none = key != "ideal" and not self._asked[2]
+        self.title.setText(f"{TITLE}; none published is at hand here" if none else TITLE)
 
     def show_answer(self, answer: Any, units: readings.Units, stale: bool) -> None:
         """Show the comparison of an answer."""

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from typing import Any
 
+from PySide6.QtCore import Qt
 from PySide6.QtGui import QGuiApplication
 from PySide6.QtWidgets import QScrollArea, QVBoxLayout, QWidget
 
@@ -29,6 +30,7 @@ class PhasesView(QScrollArea):
         self.setFocusPolicy(self.focusPolicy().NoFocus)
         self.phases = FiguresTable(theme, "phases at the end")
         self.split = FiguresTable(theme, "composition of gas and liquid", width=124)
+        self.split.table.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAsNeeded)
         self.left_out = Sentence("muted")
         page = QWidget()
         layout = QVBoxLayout(page)
@@ -78,7 +80,8 @@ class PhasesView(QScrollArea):
 
     def _fill(self, table: FiguresTable, heads: Any, rows: Any, stale: bool) -> None:
         table.model.show(heads, rows, stale)
-        table.table.setFixedHeight(_HEADER + ROW_HEIGHT * len(rows))
+        scrolled = GRID if table is self.split else 0
+        table.table.setFixedHeight(_HEADER + ROW_HEIGHT * len(rows) + scrolled)
 
     def clear(self) -> None:
         """Show nothing."""

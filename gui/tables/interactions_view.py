@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from PySide6.QtCore import Qt
+from PySide6.QtCore import QObject, Qt
 from PySide6.QtGui import QGuiApplication
 from PySide6.QtWidgets import QAbstractItemDelegate, QHeaderView, QWidget
 
@@ -33,12 +33,8 @@ class InteractionsView(EditView):
         self.setFont(sized(self.font(), "small"))
         end = session.end_visit
         self._delegates = {
-            FIRST: _InvitingDelegate(
-                theme, completer=lambda line: SpeciesCompleter(parent=line), done=end, parent=self
-            ),
-            SECOND: EditDelegate(
-                theme, completer=lambda line: SpeciesCompleter(parent=line), done=end, parent=self
-            ),
+            FIRST: _InvitingDelegate(theme, completer=self._completer, done=end, parent=self),
+            SECOND: EditDelegate(theme, completer=self._completer, done=end, parent=self),
             K: EditDelegate(theme, live=True, done=end, parent=self),
             SOURCE: CellDelegate(theme, self),
         }
@@ -48,6 +44,22 @@ class InteractionsView(EditView):
         for column, width in ((FIRST, 78), (SECOND, 64), (K, 62)):
             header.resizeSection(column, width)
         header.setSectionResizeMode(SOURCE, QHeaderView.ResizeMode.Stretch)
+
+    def _completer(self, line: QObject) -> SpeciesCompleter:
+        return SpeciesCompleter(self._search, line)
+
+    def _search(self, text: str, limit: int) -> list:  # type: ignore[type-arg]
+        """Gas candidates that answer to `text`; a pair of others would be refused."""
+        answer, low = self._session.answer.value, text.lower()
+        candidates = () if answer is None else answer.prepared.candidates
+        found = [
+            sp
+            for sp in candidates
+            if sp.phase == "gas" and (sp.key.lower().startswith(low) or low in sp.name.lower())
+        ]
+        # A formula that begins so comes before a name in which it occurs.
+        found.sort(key=lambda sp: (not sp.key.lower().startswith(low), len(sp.key)))
+        return found[:limit]
 
     def paste(self) -> None:
         """Write the clipboard's pairs over one's own from the current row on."""

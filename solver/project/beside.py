@@ -12,6 +12,9 @@ from solver.project.model import Case
 if TYPE_CHECKING:
     from species_db import Library
 
+LEAST = 1e-5
+"""Share of all moles in either answer from which a species is worth comparing."""
+
 
 @dataclass(frozen=True, slots=True)
 class CaseBeside:
@@ -77,5 +80,5 @@ def settle_beside(case: Case, answer: CaseAnswer, library: Library | None = None
         for key, amount in end.amounts.items():
             name = answer.end.left_out.get(key, key)
             most[name] = max(most.get(name, 0.0), amount / total)
-    ranked = sorted((key for key, share in most.items() if share > 0), key=lambda k: -most[k])
+    ranked = sorted((key for key, share in most.items() if share > LEAST), key=lambda k: -most[k])
     return CaseBeside(answer, ideal, tuple(ranked[:MAIN]))

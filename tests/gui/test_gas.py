@@ -225,6 +225,19 @@ def test_published_pairs_are_listed_with_their_source(cold):
     assert cell(cold, 1, K).flags() & Qt.ItemFlag.ItemIsEditable
 
 
+def test_where_none_is_published_that_is_said(make_window):
+    window = make_window(project(loop("srk")))
+    press(window, "tab_gas")
+    assert "none published" in window.ends_up.gas.title.text()
+    assert window.ends_up.gas.model.rowCount() == 1  # the empty row
+
+
+def test_gas_candidates_are_offered_for_a_pair(cold):
+    found = [sp.key for sp in cold.ends_up.gas.view._search("n", 12)]
+    assert found[:2] == ["N2", "NH3"]
+    assert cold.ends_up.gas.view._search("water", 12) == []
+
+
 def test_a_pair_is_typed_used_marked_and_undone(cold, qtbot):
     before = cold.session.answer.value.end.fluids["liquid"]["H2"]
     put(cold, 0, FIRST, "hydrogen")

@@ -174,6 +174,12 @@ def test_the_ideal_case_beside_has_an_ideal_feed_too():
     assert both.gas_shares() == (1.0, 1.0)
 
 
+def test_traces_are_not_compared():
+    typed = case("pr", added=("NH2", "H", "N2H4"), T=q(700, "K"), p=q(200, "bar"))
+    both = settle_beside(typed, settle_case(typed))
+    assert both.main == ("H2", "NH3", "N2")
+
+
 def test_where_the_ideal_case_has_no_end_state_it_says_so():
     typed = case("srk", pair="T,p", T=q(300, "K"), p=q(1, "bar"))
     found = settle_case(typed)

@@ -8,6 +8,7 @@ from types import MappingProxyType
 from typing import TYPE_CHECKING, Any
 
 from solver.fixed import Fixed
+from solver.gas_model import GasModel
 from solver.proof import Proof
 
 if TYPE_CHECKING:
@@ -51,6 +52,8 @@ class EndState:
         Gas species that the equation of state does not hold.
     cautions : tuple of str
         Where the gas model is not good here.
+    model : GasModel
+        The gas model with the interaction parameters given.
     """
 
     T: float
@@ -70,6 +73,7 @@ class EndState:
     left_out: Mapping[str, str] = field(default_factory=_nothing)
     taken_as_ideal: tuple[str, ...] = ()
     cautions: tuple[str, ...] = ()
+    model: GasModel = field(default_factory=GasModel)
 
     @property
     def phases(self) -> dict[str, Mapping[str, float]]:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Set
 from dataclasses import dataclass
 
 from solver.errors import InputError
@@ -52,6 +53,10 @@ class GasModel:
                 self.interactions,
                 "none",
             )
+
+    def among(self, keys: Set[str]) -> tuple[tuple[str, str, float], ...]:
+        """The interaction parameters between the given species."""
+        return tuple(pair for pair in self.interactions if {pair[0], pair[1]} <= keys)
 
     @property
     def name(self) -> str:

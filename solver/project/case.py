@@ -22,7 +22,7 @@ from solver.gas_model import GasModel
 from solver.project import units
 from solver.project.candidates import choose
 from solver.project.case_names import CaseNames
-from solver.project.gas import among, is_written, read_gas
+from solver.project.gas import is_written, read_gas
 from solver.project.held import check_fixed, read_fixed
 from solver.project.model import Case
 from solver.project.restrictions import (
@@ -185,7 +185,7 @@ def prepare(case: Case, library: Library | None = None) -> Prepared:
         check_fixed(case, faults)
         raise CaseFaults(faults)
     live = [stream for stream in streams if stream.feed]
-    fed = _totals(live, gas)
+    fed = _totals(live, gas, candidates)
     fixed, heat, notes = read_fixed(case, fed, basis, faults)
     if fixed is not None:
         check_approaches(restrictions, fields, fixed, faults)
@@ -239,7 +239,7 @@ def settle_prepared(prepared: Prepared) -> CaseAnswer:
     fed = prepared.fed
     at_volume = PAIRS[fixed.pair].holds_volume
     heat = end.U - fed.U if at_volume else end.H - fed.H
-    messages = (*prepared.messages, *_end_out_of_range(end), *_fed_as_pure(prepared, end))
+    messages = prepared.messages + tuple(_end_out_of_range(end))
     return CaseAnswer(end, fed, heat, prepared.basis, prepared, messages)
 
 
@@ -290,9 +290,11 @@ def _streams(case: Case, library: Library, faults: list[InputError]) -> list[Rea
     return streams
 
 
-def _totals(streams: Sequence[ReadStream], gas: GasModel) -> FedTotals:
+def _totals(
+    streams: Sequence[ReadStream], gas: GasModel, candidates: Sequence[Species]
+) -> FedTotals:
     """Sums over the streams, each at its own temperature and pressure."""
-    states = [_fed(stream, gas) for stream in streams]
+    states = [_fed(stream, gas, candidates) for stream in streams]
     return FedTotals(
         T=_common([stream.T for stream in streams]),
         p=_common([stream.p for stream in streams]),
@@ -305,9 +307,9 @@ def _totals(streams: Sequence[ReadStream], gas: GasModel) -> FedTotals:
     )
 
 
-def _fed(stream: ReadStream, gas: GasModel) -> Fed:
+def _fed(stream: ReadStream, gas: GasModel, candidates: Sequence[Species]) -> Fed:
     try:
-        return as_fed(stream.feed, stream.T, stream.p, gas=among(gas, stream.feed))
+        return as_fed(stream.feed, stream.T, stream.p, gas=gas, species=candidates)
     except SettleError as error:
         text, allowed = typeset(f"Stream {stream.name!r}: {error}"), typeset(error.allowed)
         if isinstance(error, InputError):
@@ -331,19 +333,6 @@ def _end_out_of_range(end: EndState) -> list[str]:
     by_key = {sp.key: sp for sp in end.species}
     beyond = [by_key[key] for key in end.outside_range]
     return [_beyond("End state", beyond, end.T)] if beyond else []
-
-
-def _fed_as_pure(prepared: Prepared, end: EndState) -> list[str]:
-    """Liquids that are fed by their own record and end up in that of the equation of state."""
-    fed = [sp.key for sp in prepared.feed if sp.key in end.left_out]
-    if not fed:
-        return []
-    listed = " and ".join(fed)
-    return [
-        f"{listed} {'is' if len(fed) == 1 else 'are'} fed by the record of the pure liquid and "
-        f"end{'s' if len(fed) == 1 else ''} up in the fluid of the equation of state; what the two "
-        "differ by in enthalpy and volume counts in the heat and in T."
-    ]
 
 
 def _beyond(where: str, species: Sequence[Species], T: float) -> str:

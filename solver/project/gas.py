@@ -81,13 +81,6 @@ def is_written(typed: Interaction) -> bool:
     return number or bool(typed.a.strip() or typed.b.strip())
 
 
-def among(gas: GasModel, species: Iterable[Species]) -> GasModel:
-    """The same model for a part of the species: pairs with any other left out."""
-    keys = {sp.key for sp in species}
-    kept = tuple(pair for pair in gas.interactions if keys >= {pair[0], pair[1]})
-    return GasModel(gas.key, kept)
-
-
 def modelled_keys(candidates: Iterable[Species]) -> frozenset[str]:
     """Keys of the gas candidates that an equation of state describes."""
     from solver.gas.constants import critical_constants

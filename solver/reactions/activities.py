@@ -3,20 +3,24 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from types import MappingProxyType
 from typing import TYPE_CHECKING
 
+import numpy as np
+
 from solver.core.mixture import P0, R, condensed_volume
 from solver.endstate import EndState
-from solver.errors import InputError
+from solver.gas_model import GasModel, gas_model
 from solver.reactions.reaction import Reaction
 
 if TYPE_CHECKING:
     from species_db import Species
 
 GAS = "y p / 1 bar"
+REAL_GAS = "phi y p / 1 bar"
+LEFT_OUT = "left out; by its substance in the fluid"
 PURE = "pure phase, present"
 ABSENT = "absent; activity at which it would be in equilibrium"
 GIVEN = "absent; activity as given"
@@ -24,17 +28,6 @@ UNKNOWN = "absent; activity not known"
 NO_GAS = "there is no gas"
 NOT_THERE = "amount zero"
 NO_CANDIDATE = "not among the candidates"
-
-
-def check_ideal(gas: str) -> None:
-    """Refuse any gas model but the ideal one: y p would not be its activity."""
-    if gas != "ideal":
-        raise InputError(
-            f"Reactions are worked out for the ideal gas only, not for {gas!r}; choose ideal.",
-            "gas",
-            gas,
-            "ideal",
-        )
 
 
 @dataclass(frozen=True, slots=True)
@@ -59,9 +52,9 @@ def activities(
     *,
     of_absent: Mapping[str, float] = MappingProxyType({}),
     how_absent: str = GIVEN,
-    gas: str = "ideal",
+    gas: str | GasModel = "ideal",
 ) -> dict[Species, Activity]:
-    """Activities of a composition: ideal gas, each condensed species a phase of its own.
+    """Activities of a composition: one gas or fluid, each condensed species its own phase.
 
     Parameters
     ----------
@@ -73,11 +66,13 @@ def activities(
         Activities of condensed species that are not there, relative to the pure phase at p.
     how_absent : str
         Where those come from.
-    gas : str
-        Gas model.
+    gas : str or GasModel
+        Gas model; with an equation of state the gas species are one phase, the stable one.
     """
-    check_ideal(gas)
+    model = gas_model(gas)
     total = math.fsum(n for sp, n in amounts.items() if sp.phase == "gas")
+    real = not model.is_ideal and total > 0.0 and p > 0.0
+    ln_phi = _ln_phi(amounts, T, p, model) if real else {}
     out = {}
     for sp, n in amounts.items():
         if sp.phase == "gas":
@@ -86,7 +81,8 @@ def activities(
             elif n <= 0.0:
                 out[sp] = Activity(-math.inf, NOT_THERE)
             else:
-                out[sp] = Activity(math.log(n / total) + math.log(p / P0), GAS)
+                ln = math.log(n / total) + math.log(p / P0) + ln_phi.get(sp, 0.0)
+                out[sp] = Activity(ln, REAL_GAS if real else GAS)
             continue
         # what pressure does to a phase of constant molar volume
         pressed = condensed_volume(sp) * (p - P0) / (R * T)
@@ -99,19 +95,45 @@ def activities(
     return out
 
 
-def activities_at(end: EndState, extra: tuple[Species, ...] = ()) -> dict[Species, Activity]:
+def _ln_phi(
+    amounts: Mapping[Species, float], T: float, p: float, gas: GasModel
+) -> dict[Species, float]:
+    """ln of the fugacity coefficients of the gas species."""
+    from solver.gas.fluid import make_fluid  # an ideal gas does without
+    from solver.gas.properties import ln_phi
+
+    gases = [sp for sp in amounts if sp.phase == "gas"]
+    n = np.array([[amounts[sp] for sp in gases]])
+    fluid = make_fluid(gases, gas.key, gas.among({sp.key for sp in gases}))
+    values = ln_phi(fluid, np.array([T]), np.array([p]), n)[0]
+    return dict(zip(gases, values.tolist(), strict=True))
+
+
+def activities_at(end: EndState, extra: Sequence[Species] = ()) -> dict[Species, Activity]:
     """Activities at an end state; a condensed candidate that is absent has that of the proof.
+
+    With an equation of state the gas species have those of the gas, or where there is none of
+    the liquid: they are the same in both.
 
     Parameters
     ----------
     end : EndState
-    extra : tuple of Species
+    extra : sequence of Species
         Species that are no candidates (amount zero).
     """
     amounts = {sp: end.amounts[sp.key] for sp in end.species}
+    if end.fluids:
+        first = next(iter(end.fluids.values()))
+        amounts |= {sp: first[sp.key] for sp in end.species if sp.phase == "gas"}
     out = activities(
-        amounts, end.T, end.p, of_absent=end.proof.absent, how_absent=ABSENT, gas=end.gas
+        amounts, end.T, end.p, of_absent=end.proof.absent, how_absent=ABSENT, gas=end.model
     )
+    by_key = {sp.key: sp for sp in end.species}
+    for liquid, gas in end.left_out.items():
+        held = out[by_key[gas]].ln
+        if held is not None:
+            shift = (by_key[gas].g(end.T) - by_key[liquid].g(end.T)) / (R * end.T)
+            out[by_key[liquid]] = Activity(held + float(shift), LEFT_OUT)
     for sp in extra:
         if sp not in amounts:
             out[sp] = Activity(-math.inf, NO_CANDIDATE)
@@ -126,7 +148,7 @@ def ln_quotient(
     notes = []
     for sp, nu in reaction.terms:
         activity = known.get(sp, Activity(None, UNKNOWN))
-        if activity.how not in (GAS, PURE):
+        if activity.how not in (GAS, REAL_GAS, PURE):
             shown = "" if activity.how != ABSENT else f", {exp_text(activity.ln)}"
             notes.append(f"{sp.key}: {activity.how}{shown}")
         if activity.ln is None or total is None:

@@ -10,6 +10,7 @@ from solver.endstate import EndState
 from solver.errors import InputError
 from solver.fed import checked_amount
 from solver.fixed import checked_value
+from solver.gas_model import GasModel
 from solver.reactions.activities import Activity, activities, activities_at, ln_quotient
 from solver.reactions.approach import Approach, equilibrium_temperature
 from solver.reactions.extents import Extents, extents_of
@@ -168,7 +169,7 @@ def reaction_figures(
     *,
     feed: Mapping[Species, float] | None = None,
     absent: Mapping[str, float] | None = None,
-    gas: str = "ideal",
+    gas: str | GasModel = "ideal",
 ) -> Figures:
     """One reaction at a measured or partly reacted composition.
 
@@ -183,7 +184,7 @@ def reaction_figures(
         mol; the extent is then given too (the best fit of this one reaction).
     absent : mapping of str to float, optional
         Activities to take for condensed species that are not there (1: about to form).
-    gas : str
+    gas : str or GasModel
         Gas model.
 
     Raises

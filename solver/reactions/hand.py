@@ -10,7 +10,6 @@ from typing import TYPE_CHECKING
 from solver.errors import InputError
 from solver.fed import checked_amount
 from solver.fixed import PAIRS, Fixed, checked_value
-from solver.reactions.activities import check_ideal
 from solver.reactions.hand_energy import Account, Term, account_of, find_state
 from solver.reactions.independence import reaction_count
 from solver.reactions.path import Path, Place
@@ -153,7 +152,13 @@ def hand_calculation(
     NoEndState
         No temperature has the energy held.
     """
-    check_ideal(gas)
+    if gas != "ideal":
+        raise InputError(
+            f"The hand calculation is for ideal gases only, not for {gas!r}; choose ideal.",
+            "gas",
+            gas,
+            "ideal",
+        )
     if fixed.pair not in ALLOWED_PAIRS:
         raise InputError(
             f"A hand calculation holds one of {', '.join(ALLOWED_PAIRS)}, not {fixed.pair}.",

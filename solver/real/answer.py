@@ -291,4 +291,5 @@ def _end_state(
         ),
         taken_as_ideal=real.fluid.not_modelled,
         cautions=tuple(dict.fromkeys(said)),
+        model=gas,
     )

@@ -95,8 +95,7 @@ def fluid_as_fed(species: Sequence[Species], n: Array, T: float, p: float, gas: 
     rows = {sp.key: k for k, sp in enumerate(species)}
     own = np.eye(len(species))
     mixture = make_mixture(species, rows, own, np.ones(len(species)))
-    known = {sp.key for sp in species}
-    pairs = tuple(pair for pair in gas.interactions if known.issuperset(pair[:2]))
+    pairs = gas.among({sp.key for sp in species})
     real = make_real(mixture, make_fluid(species, gas.key, pairs))
     scale = 2.0 ** -round(float(np.log2(n.max())))
     cases = RealCases(real, Feed((n * scale)[None, :], own), np.array([T]), np.array([p]))

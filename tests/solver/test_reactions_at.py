@@ -371,10 +371,42 @@ def test_absent_carbon_needs_its_activity():
     assert present.ln_q == pytest.approx(about_to_form.ln_q, abs=1e-12)
 
 
-def test_other_gas_models_are_refused():
+def test_unknown_gas_models_are_refused():
     with pytest.raises(InputError) as caught:
-        reaction_figures(parsed("N2 + O2 = 2 NO"), feed_of(N2=1.0, O2=1.0), 900.0, 1e5, gas="pr")
+        reaction_figures(parsed("N2 + O2 = 2 NO"), feed_of(N2=1.0, O2=1.0), 900.0, 1e5, gas="thin")
     assert caught.value.field == "gas"
+
+
+@pytest.mark.parametrize("gas", ["srk", "pr"])
+def test_real_gas_reactions_close_with_fugacities(gas):
+    """Q of fugacities equals K in a high-pressure converter; y p alone would be far off."""
+    lib = library()
+    species = [lib[key] for key in ("N2", "H2", "NH3")]
+    end = solver.settle(
+        species, {"N2": 1.0, "H2": 3.0}, solver.Fixed("T,p", T=700.0, p=3e7), gas=gas
+    )
+    view = reactions_at(end, {"N2": 1.0, "H2": 3.0})
+    assert view.figures[0].ln_q == pytest.approx(view.figures[0].ln_k, abs=1e-9)
+    amounts = {sp: end.amounts[sp.key] for sp in species}
+    reaction = view.figures[0].reaction
+    assert reaction_figures(reaction, amounts, 700.0, 3e7, gas=gas).ln_q == pytest.approx(
+        reaction.ln_k(700.0), abs=1e-9
+    )
+    assert abs(reaction_figures(reaction, amounts, 700.0, 3e7).ln_q - reaction.ln_k(700.0)) > 0.1
+
+
+def test_reactions_close_beside_a_fluid_liquid():
+    """Reactions among species of gas and liquid, and the pure liquid that was left out."""
+    lib = library()
+    species = [lib[key] for key in ("CO", "CO2", "H2", "H2O", "H2O(l)", "CH4")]
+    feed = {"CO": 1.0, "H2": 2.2, "H2O": 2.1}
+    end = solver.settle(species, feed, solver.Fixed("T,p", T=450.0, p=3e6), gas="pr")
+    assert "liquid" in end.phases
+    for figures in reactions_at(end, feed).figures:
+        assert figures.ln_q == pytest.approx(figures.ln_k, abs=1e-9)
+    condensing = reactions_at(end, feed, [parsed("H2O = H2O(l)")]).figures[0]
+    assert any("left out" in note for note in condensing.notes)
+    assert condensing.ln_q == pytest.approx(condensing.ln_k, abs=1e-9)
 
 
 def test_quotient_follows_pressure_and_inerts():

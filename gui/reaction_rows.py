@@ -16,6 +16,7 @@ SET_NOTE = (
     "ΔH°, ΔG° in kJ/mol of the reaction as written, at 1 bar; approach: T less the temperature "
     "at which K = Q."
 )
+REAL_NOTE = "Q is of activities φ y p / 1 bar, alike in gas and liquid."
 _STILL = 1e-6
 """K; an approach of less is rounding."""
 _NEGATIVE = re.compile(r"(?<![\w])-(?=\d)")

@@ -73,8 +73,11 @@ class PhasesView(QScrollArea):
         self.phases.note.say(absent if count else "")
         self._fill(self.split, *split_table(end, units), stale)
         self.split.setVisible(self.split.model.rowCount() > 0)
+        first_two = list(end.fluids)[:2]
         self.split.note.say(
-            "Ratio: mole fraction in the gas over that in the liquid." if rows else ""
+            f"Ratio: mole fraction in the {first_two[0]} over that in the {first_two[1]}."
+            if len(first_two) == 2
+            else ""
         )
         self.left_out.say("\n".join(left_out_text(end)))
 

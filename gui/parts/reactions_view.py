@@ -28,10 +28,9 @@ from solver.errors import SettleError
 
 SET, AMOUNTS, ENERGY = range(3)
 _MOST_NOTES = 3
-REFUSED = (
-    "Nothing is shown here: reactions are worked out for an ideal gas only, and this end state was "
-    "settled with an equation of state. K, Q and the hand calculation appear when the gas in Held "
-    "fixed is ideal."
+BY_HAND_IDEAL = (
+    "Nothing is shown here: a reaction is worked out by hand for an ideal gas only, and this end "
+    "state was settled with an equation of state. The set has K and Q of the real gas."
 )
 
 
@@ -201,7 +200,7 @@ class ReactionsView(QWidget):
         except SettleError as error:
             self._view = None
             self._fill()
-            self.line.say(REFUSED if not self._answer.prepared.gas.is_ideal else str(error))
+            self.line.say(str(error))
             return
         self._own = bool(own)
         names = [r.pretty for r in self._view.reactions]
@@ -235,6 +234,8 @@ class ReactionsView(QWidget):
             self.set.table.setColumnWidth(1, 94)  # for the unit in the header
             self._tables = [table]
             notes = reaction_rows.set_notes(self._view, self._own)
+            if not self._answer.prepared.gas.is_ideal:
+                notes.insert(0, reaction_rows.REAL_NOTE)
             more = len(notes) - _MOST_NOTES
             notes = notes[:_MOST_NOTES] + ([f"And {more} more notes."] if more > 0 else [])
             self.line.say("\n".join([" ".join([reaction_rows.SET_NOTE, *notes[:1]]), *notes[1:]]))
@@ -253,12 +254,15 @@ class ReactionsView(QWidget):
             return
         try:
             hand = hand_calculation(
-                self._view.reactions[at], dict(answer.prepared.feed), answer.prepared.fixed
+                self._view.reactions[at],
+                dict(answer.prepared.feed),
+                answer.prepared.fixed,
+                gas=answer.prepared.gas.key,
             )
         except SettleError as error:
             for table in (self.amounts, self.trials, self.energy):
                 table.model.show((), [], False)
-            self.line.say(str(error))
+            self.line.say(BY_HAND_IDEAL if error.field == "gas" else str(error))
             return
         amounts = reaction_rows.amounts_table(hand, flow)
         trials = reaction_rows.trials_table(hand, flow)

@@ -190,14 +190,18 @@ def test_the_proof_of_an_ideal_gas_is_as_it_was(window):
     assert window.header.pill.text().startswith("proven: gap")
 
 
-def test_reactions_are_shown_or_plainly_refused(cold):
-    press(cold, "tab_reactions")
-    view = cold.ends_up.reactions
-    if view.set.model.rowCount() == 0:
-        assert "nothing is shown here" in view.line.text().lower()
-        assert "ideal" in view.line.text()
-    else:
-        assert view.line.text()
+def test_reactions_are_of_the_real_gas_and_by_hand_plainly_refused(make_window, qtbot):
+    window = make_window(project(loop(T=440, restrictions=[])))
+    press(window, "tab_reactions")
+    view = window.ends_up.reactions
+    ((text, *_, ratio, _, _, _, _, _),) = shown(view.set)
+    assert "NH₃" in text
+    assert float(ratio) == pytest.approx(1.0, abs=1e-6)
+    assert "φ y p" in view.line.text()
+    qtbot.mouseClick(view.by_hand, Qt.MouseButton.LeftButton)
+    assert view.amounts.model.rowCount() == 0
+    assert view.line.text().startswith("Nothing is shown here")
+    assert "ideal gas only" in view.line.text()
 
 
 def test_the_plot_follows_the_gas_and_names_the_liquid(cold):

@@ -37,17 +37,59 @@ Array = NDArray[np.float64]
 NO_WEIGHT = 1e-14
 
 
-@dataclass(frozen=True)
 class Moments:
     """What each mole of each species adds to each moment, at given T and p.
 
-    q (cases, S, m); qT = T dq/dT, qTT = (T d/dT)^2 q, qp = p dq/dp, of the same shape.
+    Attributes
+    ----------
+    q : ndarray, shape (cases, S, m)
+    qT, qTT, qp : ndarray, shape (cases, S, m)
+        T dq/dT, (T d/dT)^2 q and p dq/dp; worked out when first asked for.
     """
 
-    q: Array
-    qT: Array
-    qTT: Array
-    qp: Array
+    def __init__(self, fluid: Fluid, T: Array, p: Array) -> None:
+        eq, real = fluid.equation, np.flatnonzero(fluid.modelled)
+        Tc, pc = fluid.Tc[real], fluid.pc[real]
+        self._roots = eq.root_alpha(T[:, None], Tc, eq.m(fluid.acentric[real]))
+        # sqrt(A) = sqrt(omega_a p / pc) Tc / T sqrt(alpha): the front falls as 1/T
+        self._front = (np.sqrt(p) / T)[:, None] * (np.sqrt(eq.omega_a / pc) * Tc)
+        self._covolume = (p / T)[:, None] * (eq.omega_b * Tc / pc)
+        self._mix = np.zeros((real.size, fluid.count))
+        self._mix[:, 2:] = fluid.mix[real]
+        self._real, self._species = real, fluid.modelled.size
+        self._power = np.full(fluid.count, 0.5)
+        self._power[:2] = 0.0, 1.0
+        self.q = self._spread(self._roots[0], 1.0, 1.0)
+
+    @cached_property
+    def qT(self) -> Array:
+        """T dq/dT."""
+        alpha, alpha_T, _ = self._roots
+        return self._spread(alpha_T - alpha, 0.0, -1.0)
+
+    @cached_property
+    def qTT(self) -> Array:
+        """(T d/dT)^2 q."""
+        alpha, alpha_T, alpha_TT = self._roots
+        return self._spread(alpha_TT - 2.0 * alpha_T + alpha, 0.0, 1.0)
+
+    @cached_property
+    def qp(self) -> Array:
+        """p dq/dp."""
+        return np.asarray(self.q * self._power)
+
+    def _spread(self, part: Array, of_amount: float, of_covolume: float) -> Array:
+        """Rows of the modelled species; the others are points without attraction."""
+        cases, count = len(part), self._mix.shape[1]
+        rows = np.repeat(self._front * part, count, axis=1)
+        rows *= self._mix.ravel()
+        rows = rows.reshape(cases, self._real.size, count)
+        rows[:, :, 0] = of_amount
+        rows[:, :, 1] = of_covolume * self._covolume
+        out = np.zeros((cases, self._species, count))
+        out[:, :, 0] = of_amount
+        out[:, self._real] = rows
+        return out
 
 
 @dataclass(frozen=True, eq=False)
@@ -100,37 +142,7 @@ class Fluid:
 
     def at(self, T: Array, p: Array) -> Moments:
         """Moments per mole at T in K and p in Pa, arrays (cases,)."""
-        eq, real = self.equation, np.flatnonzero(self.modelled)
-        Tc, pc = self.Tc[real], self.pc[real]
-        alpha, alpha_T, alpha_TT = eq.root_alpha(T[:, None], Tc, eq.m(self.acentric[real]))
-        # sqrt(A) = sqrt(omega_a p / pc) Tc / T sqrt(alpha): the front falls as 1/T
-        front = (np.sqrt(p) / T)[:, None] * (np.sqrt(eq.omega_a / pc) * Tc)
-        covolume = (p / T)[:, None] * (eq.omega_b * Tc / pc)
-        count = self.count
-        mix = np.zeros((real.size, count))
-        mix[:, 2:] = self.mix[real]
-        power = np.full(count, 0.5)
-        power[:2] = 0.0, 1.0
-
-        def spread(part: Array, of_amount: float, of_covolume: float) -> Array:
-            """Rows of the modelled species; the others are points without attraction."""
-            rows = np.repeat(front * part, count, axis=1)
-            rows *= mix.ravel()
-            rows = rows.reshape(T.size, real.size, count)
-            rows[:, :, 0] = of_amount
-            rows[:, :, 1] = of_covolume * covolume
-            out = np.zeros((T.size, self.modelled.size, count))
-            out[:, :, 0] = of_amount
-            out[:, real] = rows
-            return out
-
-        q = spread(alpha, 1.0, 1.0)
-        return Moments(
-            q=q,
-            qT=spread(alpha_T - alpha, 0.0, -1.0),
-            qTT=spread(alpha_TT - 2.0 * alpha_T + alpha, 0.0, 1.0),
-            qp=q * power,
-        )
+        return Moments(self, T, p)
 
     def residual(self, M: Array, root: str = "least") -> Residual:
         """G_res / RT at moments M (cases, count), with first and second derivatives.

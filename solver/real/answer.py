@@ -83,7 +83,10 @@ def judged(
     """Put what was found to the proof, and the fluid phases into the slots they are called by."""
     which = np.flatnonzero(found.minima.found)
     T, p = found.T[which], found.p[which]
-    cases = RealCases(real, feed.of(which), T, p)
+    if found.cases is not None:
+        cases = found.cases.of(which)
+    else:
+        cases = RealCases(real, feed.of(which), T, p)
     fluids, n = found.minima.fluids[which], found.minima.n[which]
     fluids = _named(cases, fluids)
     minima = found.minima

@@ -26,7 +26,7 @@ Array = NDArray[np.float64]
 Indices = NDArray[np.intp]
 
 _MAX_ROUNDS = 16
-_CALM_COLD = 2
+_CALM_GAS, _CALM_LIQUID = 1, 2  # steps by substitution from an ideal start
 _ATTEMPTS = (2, 4, 8, 16, 32, 64)
 
 
@@ -45,7 +45,8 @@ def minimise_real(cases: RealCases, features: Array, start: Minima | None = None
     calm = np.zeros(len(cases), dtype=np.intp)
     if start is None:
         _start_cold(cases, features, out)
-        calm[:] = _CALM_COLD
+        liquid = np.isfinite(out.nu[:, 1:]).any(axis=1)
+        calm[:] = np.where(liquid, _CALM_LIQUID, _CALM_GAS)
     else:
         known = np.flatnonzero(start.found)
         out.sets = list(start.sets)

@@ -108,18 +108,39 @@ class RealCases:
         self.real, self.mixture, self.fluid = real, real.mixture, real.fluid
         self.feed, self.T, self.p = feed, T, p
         self.ideal = Cases(real.mixture, feed, T, p, None)
-        moments = real.fluid.at(T, p)
-        self.q, self.qT, self.qTT, self.qp = moments.q, moments.qT, moments.qTT, moments.qp
+        self._moments = real.fluid.at(T, p)
+        self._rows: Indices | None = None  # of the moments, in some of the cases they are for
+        self.q = self._moments.q
         self.gas = real.mixture.gas
+
+    @property
+    def qT(self) -> Array:
+        """T dq/dT."""
+        return self._own(self._moments.qT)
+
+    @property
+    def qTT(self) -> Array:
+        """(T d/dT)^2 q."""
+        return self._own(self._moments.qTT)
+
+    @property
+    def qp(self) -> Array:
+        """p dq/dp."""
+        return self._own(self._moments.qp)
+
+    def _own(self, whole: Array) -> Array:
+        return whole if self._rows is None else whole[self._rows]
 
     def __len__(self) -> int:
         return len(self.T)
 
     def of(self, which: Indices) -> RealCases:
         """Some of the cases, nothing computed again."""
+        if len(which) == len(self) and np.array_equal(which, np.arange(len(self))):
+            return self
         out = object.__new__(RealCases)
         out.__dict__.update(self.__dict__)
         out.feed, out.ideal = self.feed.of(which), self.ideal.part(which)
-        for name in ("T", "p", "q", "qT", "qTT", "qp"):
-            setattr(out, name, getattr(self, name)[which])
+        out.T, out.p, out.q = self.T[which], self.p[which], self.q[which]
+        out._rows = which if self._rows is None else self._rows[which]
         return out

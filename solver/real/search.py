@@ -58,6 +58,8 @@ class Found:
     minima: Minima
     totals: dict[str, Array]
     why: dict[int, Exception]
+    cases: RealCases | None = None
+    """The cases at T and p, where they did not have to be sought."""
 
 
 def find_states(
@@ -81,6 +83,7 @@ def find_states(
         minima = minimise_real(whole, features)
         _keep(out, np.arange(len(T)), minima, state_functions(whole, minima.fluids, minima.n))
         out.why.update(minima.why)
+        out.cases = whole
         return out
     T, p = T.copy(), p.copy()  # the search moves on from these
     left = _seek(real, feed, target, features, out)

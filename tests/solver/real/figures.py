@@ -113,7 +113,11 @@ class Figures:
 
     def off_fluid(self, n: Array, root: str = "least") -> Array:
         """mu - a.lambda over RT of every gas species in a fluid phase of amounts n."""
-        return self.potentials(n, root) - self.formulas(self.gases) @ self.lagrange
+        return self.potentials(n, root) - self._lagrange_gases
+
+    @cached_property
+    def _lagrange_gases(self) -> Array:
+        return self.formulas(self.gases) @ self.lagrange
 
     @cached_property
     def off_condensed(self) -> Array:

@@ -88,6 +88,9 @@ def test_no_other_amounts_have_a_lower_gibbs_energy(real: RealMixture):
     lowest = figures.above(list(zip(start, roots, strict=True)), figures.solids)
     assert abs(lowest) <= 1e-11 * figures.total
     rng = np.random.default_rng(29)
+    A = np.concatenate(
+        [*[figures.formulas(figures.gases)] * len(start), figures.formulas(figures.condensed)]
+    )
     tried = 0
     while tried < 200:
         fluids = [n.copy() for n in start]
@@ -95,7 +98,7 @@ def test_no_other_amounts_have_a_lower_gibbs_energy(real: RealMixture):
         way = tried % 3
         share = 10.0 ** rng.uniform(-5.0, -0.1)
         if way == 0:
-            fluids, solids = along_reactions(figures, fluids, solids, share, rng)
+            fluids, solids = along_reactions(figures, A, fluids, solids, share, rng)
         elif way == 1 and len(fluids) > 1:
             a, b = rng.permutation(len(fluids))[:2]
             moved = share * fluids[a] * rng.uniform(0.0, 1.0, len(fluids[a]))
@@ -113,13 +116,15 @@ def test_no_other_amounts_have_a_lower_gibbs_energy(real: RealMixture):
 
 
 def along_reactions(
-    figures: Figures, fluids: list[Array], solids: Array, share: float, rng: np.random.Generator
+    figures: Figures,
+    A: Array,
+    fluids: list[Array],
+    solids: Array,
+    share: float,
+    rng: np.random.Generator,
 ) -> tuple[list[Array], Array]:
     """A step along what the balances leave free, each change in a phase drawn by lot."""
     n = np.concatenate([*fluids, solids])
-    A = np.concatenate(
-        [*[figures.formulas(figures.gases)] * len(fluids), figures.formulas(figures.condensed)]
-    )
     some = np.flatnonzero(n > 1e-9 * figures.total)
     some = some[rng.uniform(size=len(some)) < 0.8] if len(some) > 8 else some
     _, sizes, free = np.linalg.svd(A[some].T)

@@ -59,7 +59,7 @@ def test_interaction_beyond_one(door: str, gas: str, k: float):
     def model() -> solver.GasModel:
         return solver.GasModel(gas, (("H2", "N2", k),))
 
-    with pytest.raises(solver.InputError, match="H2.*N2") as caught:
+    with pytest.raises(solver.InputError, match=r"H2.*N2") as caught:
         DOORS[door](species(), model())
     assert caught.value.field == "interactions"
 

@@ -21,10 +21,9 @@ from solver.core.temperature import OutOfReach
 from solver.core.totals import Totals
 from solver.core.vessel import TooSmall
 from solver.fixed import P_HIGHEST, T_HIGHEST, T_LOWEST, Pair
-from solver.real.functions import Response, respond, state_functions
-from solver.real.minimise import minimise_real
+from solver.real.functions import Response
 from solver.real.problem import RealCases, RealMixture
-from solver.real.states import Minima
+from solver.real.seeker import Ends, Seeker
 
 Array = NDArray[np.float64]
 Indices = NDArray[np.intp]
@@ -33,7 +32,7 @@ _P_LEAST = 1e-30  # Pa
 _MAX_EVALUATIONS = 160
 _NARROW = 1e-15
 _MET = 1e-13
-_ASIDE = (0.0, 1e-7, -1e-6, 1e-5, -1e-4)
+_COEXIST = 0.2  # relative width of a bracket from which a transition in it is sought
 _SLIVER = 1e-12  # of ln p: the Gibbs energies of two phases tell no more
 
 
@@ -90,45 +89,6 @@ class Target:
             )
 
 
-@dataclass(frozen=True)
-class Ends:
-    """One end point: a minimum, or the split of two at one T and p."""
-
-    T: float
-    p: float
-    fluids: Array  # (slots, gas species)
-    n: Array
-    potentials: Array
-    distance: float
-    state: Totals
-    answer: Response | None = None
-    """How it answers to ln T and ln p; None for a split."""
-
-    def value(self, name: str) -> float:
-        """One state function, or ``p``."""
-        return float(getattr(self.state, name)[0])
-
-    def volume_by_log_p(self) -> float:
-        """d(ln V)/d(ln p) at fixed T, or zero where it is not known."""
-        slope = 0.0 if self.answer is None else float(self.answer.V_p[0]) / self.value("V")
-        return slope if np.isfinite(slope) and slope < 0.0 else 0.0
-
-    def by_log_T(self, variable: str, holds_volume: bool) -> float:
-        """d(variable)/d(ln T) at fixed p or V, or zero where it is not known."""
-        if self.answer is None:
-            return 0.0
-        H_T, V_T, H_p, V_p = (
-            float(getattr(self.answer, k)[0]) for k in ("H_T", "V_T", "H_p", "V_p")
-        )
-        T, p, V = self.T, self.p, self.value("V")
-        slope = {"H": H_T, "U": H_T - p * V_T, "S": H_T / T}[variable]
-        if holds_volume:
-            by_p = {"H": H_p, "U": H_p - p * (V_p + V), "S": (H_p - V * p) / T}[variable]
-            with np.errstate(all="ignore"):
-                slope -= by_p * float(np.float64(V_T) / V_p)
-        return slope if np.isfinite(slope) and slope > 0.0 else 0.0
-
-
 def seek_alone(real: RealMixture, feed: Feed, target: Target, T: float, p: float) -> Ends:
     """The end point of one case, sought from T and p.
 
@@ -139,15 +99,15 @@ def seek_alone(real: RealMixture, feed: Feed, target: Target, T: float, p: float
     Unsettled
         No end of the search.
     """
-    seeker = _Seeker(real, feed)
+    seeker = Seeker(real, feed)
     pair, value = target.pair, float(target.first[0])
     if pair.searched is None:
-        return seeker.at_volume(value, float(target.second[0]), p)
+        return _at_volume(seeker, value, float(target.second[0]), p)
     if pair.holds_volume:
         V, last = float(target.second[0]), [p]
 
         def at(T: float) -> Ends:
-            ends = seeker.at_volume(T, V, last[0])
+            ends = _at_volume(seeker, T, V, last[0])
             last[0] = max(ends.p, _P_LEAST)
             return ends
 
@@ -156,102 +116,59 @@ def seek_alone(real: RealMixture, feed: Feed, target: Target, T: float, p: float
         def at(T: float) -> Ends:
             return seeker.near_T(T, p)
 
-    return _seek(at, seeker.blend, pair, value, T)
+    return _seek(seeker, at, pair, value, T)
 
 
-class _Seeker:
-    """Evaluates one case at any T and p, each from the last."""
+def _at_volume(seeker: Seeker, T: float, V: float, p: float) -> Ends:
+    """The minimum at T whose volume is V, sought from p."""
+    large: Ends | None = None
+    small: Ends | None = None
+    x, width, last, tries, tried = float(np.log(p)), np.inf, np.inf, 0, False
+    for _ in range(_MAX_EVALUATIONS):
+        at = seeker.near_p(T, float(np.exp(x)))
+        x = float(np.log(at.p))
+        off = float(np.log(at.value("V") / V))
+        if abs(off) <= _MET:
+            return at
+        if at.fluids.sum() <= 0.0 and off < 0.0 and at.p <= _P_LEAST:
+            return at  # nothing evaporates: condensed phases need not fill a vessel
+        large, small = (at, small) if off > 0.0 else (large, at)
+        slope, slow, last = at.volume_by_log_p(), abs(off) > 0.5 * last, abs(off)
+        step = -off / slope if slope else np.copysign(np.inf, off)
+        if large is None or small is None:
+            tries = tries + 1 if slow else 0
+            reach = 0.02 * 4.0**tries if slow or not slope else 2.0
+            if x >= np.log(P_HIGHEST):
+                raise TooSmall(at.value("V"), f"its contents even at {P_HIGHEST:g} Pa")
+            if x <= np.log(_P_LEAST):
+                raise Unsettled("no pressure fits the volume")
+            x += float(np.clip(step * (1.0 + 1e-6) * 2.0**tries, -reach, reach))
+            x = float(np.clip(x, np.log(_P_LEAST), np.log(P_HIGHEST)))
+            continue
+        before, width = width, float(np.log(small.p / large.p))
+        if width < _COEXIST and not tried and _jumps(large, small):
+            tried = True
+            pair = seeker.coexisting(large, small, by_T=False)
+            if pair is not None and pair[1].value("V") <= V <= pair[0].value("V"):
+                return _filled(seeker, *pair, V)
+            if pair is not None:  # one phase alone fills the vessel
+                if V > pair[0].value("V") and pair[0].p < small.p:
+                    small = pair[0]
+                elif V < pair[1].value("V") and pair[1].p > large.p:
+                    large = pair[1]
+        if width <= (_SLIVER if _jumps(large, small) else 16.0 * _NARROW):
+            return _filled(seeker, large, small, V)
+        if np.log(large.p) < x + step < np.log(small.p) and not slow:
+            x += step
+            continue
+        tries = (tries + 1) % 3 if width > 0.5 * before else 0
+        x = _pressure(large, small, V, tries)
+    raise Unsettled("no end of the search for the pressure")
 
-    def __init__(self, real: RealMixture, feed: Feed) -> None:
-        self._real, self._feed = real, feed
-        self._last: Minima | None = None
 
-    def near_T(self, T: float, p: float) -> Ends:
-        """The minimum at p and T, or close by where phases all but coexist."""
-        return self._first([(T * (1.0 + shift), p) for shift in _ASIDE])
-
-    def near_p(self, T: float, p: float) -> Ends:
-        """The minimum at T and p, or close by where phases all but coexist."""
-        return self._first([(T, p * (1.0 + shift)) for shift in _ASIDE])
-
-    def _first(self, places: list[tuple[float, float]]) -> Ends:
-        for T, p in places[:-1]:
-            try:
-                return self._at(T, p)
-            except Unsettled:
-                continue
-        return self._at(*places[-1])
-
-    def _at(self, T: float, p: float) -> Ends:
-        cases = RealCases(self._real, self._feed, np.array([T]), np.array([p]))
-        minima = minimise_real(cases, np.zeros((1, 1)), self._last)
-        if not minima.found[0] and self._last is not None:
-            minima = minimise_real(cases, np.zeros((1, 1)))
-        if not minima.found[0]:
-            raise minima.why.get(0, Unsettled("a real mixture was not settled"))
-        self._last = minima
-        state = state_functions(cases, minima.fluids, minima.n)
-        chosen = minima.set_of(0)
-        answer = respond(cases, chosen, minima.fluids[:, list(chosen.fluids)], minima.n)
-        return Ends(
-            T,
-            p,
-            minima.fluids[0],
-            minima.n[0],
-            minima.potentials[0],
-            float(minima.distance[0]),
-            state,
-            answer,
-        )
-
-    def blend(self, low: Ends, high: Ends, share: float) -> Ends:
-        """A split with a share of `high` in it."""
-        fluids = (1.0 - share) * low.fluids + share * high.fluids
-        n = (1.0 - share) * low.n + share * high.n
-        cases = RealCases(self._real, self._feed, np.array([high.T]), np.array([high.p]))
-        state = state_functions(cases, fluids[None], n[None])
-        distance = min(low.distance, high.distance)
-        return Ends(high.T, high.p, fluids, n, high.potentials, distance, state)
-
-    def at_volume(self, T: float, V: float, p: float) -> Ends:
-        """The minimum at T whose volume is V, sought from p."""
-        large: Ends | None = None
-        small: Ends | None = None
-        x, width, last, tries = float(np.log(p)), np.inf, np.inf, 0
-        for _ in range(_MAX_EVALUATIONS):
-            at = self.near_p(T, float(np.exp(x)))
-            x = float(np.log(at.p))
-            off = float(np.log(at.value("V") / V))
-            if abs(off) <= _MET:
-                return at
-            if at.fluids.sum() <= 0.0 and off < 0.0 and at.p <= _P_LEAST:
-                return at  # nothing evaporates: condensed phases need not fill a vessel
-            large, small = (at, small) if off > 0.0 else (large, at)
-            slope, slow, last = at.volume_by_log_p(), abs(off) > 0.5 * last, abs(off)
-            step = -off / slope if slope else np.copysign(np.inf, off)
-            if large is None or small is None:
-                tries = tries + 1 if slow else 0
-                reach = 0.02 * 4.0**tries if slow or not slope else 2.0
-                if x >= np.log(P_HIGHEST):
-                    raise TooSmall(at.value("V"), f"its contents even at {P_HIGHEST:g} Pa")
-                if x <= np.log(_P_LEAST):
-                    raise Unsettled("no pressure fits the volume")
-                x += float(np.clip(step * (1.0 + 1e-6) * 2.0**tries, -reach, reach))
-                x = float(np.clip(x, np.log(_P_LEAST), np.log(P_HIGHEST)))
-                continue
-            before, width = width, float(np.log(small.p / large.p))
-            if width <= (_SLIVER if _jumps(large, small) else 16.0 * _NARROW):
-                return self._filled(large, small, V)
-            if np.log(large.p) < x + step < np.log(small.p) and not slow:
-                x += step
-                continue
-            tries = (tries + 1) % 3 if width > 0.5 * before else 0
-            x = _pressure(large, small, V, tries)
-        raise Unsettled("no end of the search for the pressure")
-
-    def _filled(self, large: Ends, small: Ends, V: float) -> Ends:
-        top, bottom = large.value("V"), small.value("V")
-        return self.blend(large, small, (top - V) / (top - bottom))
+def _filled(seeker: Seeker, large: Ends, small: Ends, V: float) -> Ends:
+    top, bottom = large.value("V"), small.value("V")
+    return seeker.blend(large, small, (top - V) / (top - bottom))
 
 
 def _jumps(first: Ends, second: Ends) -> bool:
@@ -287,8 +204,8 @@ def _pressure(large: Ends, small: Ends, V: float, tries: int) -> float:
 
 
 def _seek(
+    seeker: Seeker,
     at: Callable[[float], Ends],
-    blend: Callable[[Ends, Ends, float], Ends],
     pair: Pair,
     value: float,
     T: float,
@@ -298,7 +215,7 @@ def _seek(
     low: Ends | None = None
     high: Ends | None = None
     T = float(np.clip(T, T_LOWEST, T_HIGHEST))
-    width, last, tries = np.inf, np.inf, 0
+    width, last, tries, tried = np.inf, np.inf, 0, False
     for _ in range(_MAX_EVALUATIONS):
         ends = at(T)
         T = ends.T
@@ -327,11 +244,18 @@ def _seek(
             T = float(np.clip(T, T_LOWEST, T_HIGHEST))
             continue
         before, width = width, high.T - low.T
+        if width < _COEXIST * T and not tried and low.p == high.p and _jumps(low, high):
+            tried = True
+            ends_at = seeker.coexisting(low, high, by_T=True)
+            if ends_at is not None:
+                bottom, top = (end.value(variable) for end in ends_at)
+                if bottom <= value <= top:
+                    return seeker.blend(*ends_at, (value - bottom) / (top - bottom))
         if width <= 4.0 * np.spacing(high.T):
             bottom, top = low.value(variable), high.value(variable)
             if abs(excess) <= 1e-11 * unit:
                 return ends
-            return blend(low, high, (value - bottom) / (top - bottom))
+            return seeker.blend(low, high, (value - bottom) / (top - bottom))
         proposal = T * float(np.exp(step))
         if low.T < proposal < high.T and not slow:
             T = proposal

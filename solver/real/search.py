@@ -23,10 +23,11 @@ from solver.core.temperature import OutOfReach
 from solver.core.totals import Totals
 from solver.core.vessel import TooSmall
 from solver.fixed import P_HIGHEST, P_LOWEST, T_HIGHEST, T_LOWEST, Pair
-from solver.real.alone import Ends, Target, seek_alone
+from solver.real.alone import Target, seek_alone
 from solver.real.functions import Response, respond, state_functions
 from solver.real.minimise import minimise_real
 from solver.real.problem import RealCases, RealMixture
+from solver.real.seeker import Ends
 from solver.real.states import Minima
 
 Array = NDArray[np.float64]

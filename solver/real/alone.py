@@ -123,7 +123,8 @@ def _at_volume(seeker: Seeker, T: float, V: float, p: float) -> Ends:
     """The minimum at T whose volume is V, sought from p."""
     large: Ends | None = None
     small: Ends | None = None
-    x, width, last, tries, tried = float(np.log(p)), np.inf, np.inf, 0, False
+    x, width, last = float(np.log(p)), np.inf, np.inf
+    tries, grown, tried = 0, 0, False
     for _ in range(_MAX_EVALUATIONS):
         at = seeker.near_p(T, float(np.exp(x)))
         x = float(np.log(at.p))
@@ -134,15 +135,16 @@ def _at_volume(seeker: Seeker, T: float, V: float, p: float) -> Ends:
             return at  # nothing evaporates: condensed phases need not fill a vessel
         large, small = (at, small) if off > 0.0 else (large, at)
         slope, slow, last = at.volume_by_log_p(), abs(off) > 0.5 * last, abs(off)
-        step = -off / slope if slope else np.copysign(np.inf, off)
+        step = -off / slope if slope else float(np.copysign(np.inf, off))
         if large is None or small is None:
-            tries = tries + 1 if slow else 0
-            reach = 0.02 * 4.0**tries if slow or not slope else 2.0
             if x >= np.log(P_HIGHEST):
                 raise TooSmall(at.value("V"), f"its contents even at {P_HIGHEST:g} Pa")
             if x <= np.log(_P_LEAST):
                 raise Unsettled("no pressure fits the volume")
-            x += float(np.clip(step * (1.0 + 1e-6) * 2.0**tries, -reach, reach))
+            # the volume of nearly ideal gas tells the pressure, that of a liquid says little
+            reach = 25.0 if abs(slope + 1.0) < 0.2 else 0.05 * 3.0**grown
+            grown += 1
+            x += float(np.clip(step * (1.0 + 1e-6 * 4.0**grown), -reach, reach))
             x = float(np.clip(x, np.log(_P_LEAST), np.log(P_HIGHEST)))
             continue
         before, width = width, float(np.log(small.p / large.p))
@@ -215,7 +217,7 @@ def _seek(
     low: Ends | None = None
     high: Ends | None = None
     T = float(np.clip(T, T_LOWEST, T_HIGHEST))
-    width, last, tries, tried = np.inf, np.inf, 0, False
+    width, last, tries, grown, tried = np.inf, np.inf, 0, 0, False
     for _ in range(_MAX_EVALUATIONS):
         ends = at(T)
         T = ends.T
@@ -231,16 +233,13 @@ def _seek(
             high = ends
             if T <= T_LOWEST:
                 raise OutOfReach("below", T, ends.value(variable))
-        slope, slow, last = (
-            ends.by_log_T(variable, pair.holds_volume),
-            abs(excess) > 0.5 * last,
-            abs(excess),
-        )
-        step = -excess / slope if slope else np.copysign(np.inf, -excess)
+        slope = ends.by_log_T(variable, pair.holds_volume)
+        slow, last = abs(excess) > 0.5 * last, abs(excess)
+        step = -excess / slope if slope else float(np.copysign(np.inf, -excess))
         if low is None or high is None:
-            tries = tries + 1 if slow else 0
-            reach = 0.01 * 3.0**tries if slow or not slope else 0.7
-            T *= float(np.exp(np.clip(step * (1.0 + 1e-6) * 2.0**tries, -reach, reach)))
+            reach = min(0.1 * 2.0**grown, 0.7)
+            grown += 1
+            T *= float(np.exp(np.clip(step * (1.0 + 1e-6 * 4.0**grown), -reach, reach)))
             T = float(np.clip(T, T_LOWEST, T_HIGHEST))
             continue
         before, width = width, high.T - low.T

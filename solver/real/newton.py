@@ -164,7 +164,7 @@ def _solve(
         )
     else:
         state = _State(log_a[:, rows], nu, theta, np.full((len(cases), count, gas.size), -np.inf))
-        closed = np.ones(len(cases), dtype=bool)
+        closed = ~(b[:, rows] != 0.0).any(axis=1)  # without a fluid nothing else is held
         vanishing = np.full(len(cases), -1)
     fluids = np.exp(np.clip(state.log_n, None, _EXP_LIMIT))
     total = fluids.sum(axis=1)
@@ -344,4 +344,5 @@ def _apply(state: _State, move: Array, a: Array, q: Array, fluids: int) -> Array
     state.log_n += change
     there = state.log_n > state.nu[:, :, None] - 690.0
     size = np.where(there, np.abs(change), 0.0).max(axis=(1, 2), initial=0.0)
+    size = np.maximum(size, np.abs(move[:, : r + fluids]).max(axis=1))
     return np.asarray(np.where(np.isfinite(move).all(axis=1), size, np.nan))

@@ -59,6 +59,11 @@ class GasSystem:
     weights: Array
     """Columns that turn amounts into all sums a Newton step needs, one matrix product."""
 
+    @property
+    def rows(self) -> int:
+        """Balances: one for each component, and one for the volume of a shared vessel."""
+        return int(self.reactions.shape[1]) + (1 if self.extra == 2 else 0)
+
     @classmethod
     def of(cls, reactions: Array, holds_pressure: bool, swelling: Array | None = None) -> GasSystem:
         """Gather the weights of one set of components; `swelling` for a shared vessel."""
@@ -184,6 +189,55 @@ def _iterate(state: State, cases: int) -> GasSolution:
     return whole
 
 
+def residuals(
+    system: GasSystem,
+    n: Array,
+    nu: Array,
+    w: Array,
+    b_up: Array,
+    b_down: Array,
+    vessel: Vessel | None,
+) -> tuple[Array, Array, Array, Array]:
+    """Residuals F (cases, unknowns), slopes J, and the two sides P and M of each balance.
+
+    Parameters
+    ----------
+    n : ndarray, shape (cases, gas species)
+    nu, w : ndarray, shape (cases,)
+    b_up, b_down : ndarray, shape (cases, gas components)
+        What the component amounts add to the positive and the negative terms.
+    vessel : Vessel, optional
+        Where condensed phases share the volume.
+    """
+    rows, m = system.rows, b_up.shape[1]
+    unknowns = m + system.extra
+    cut1, cut2 = 2 * rows, 2 * rows + rows * unknowns
+    cut3 = cut2 + rows * unknowns
+    sums = n @ system.weights
+    P, M = sums[:, :rows], sums[:, rows:cut1]
+    P[:, :m] += b_up
+    M[:, :m] += b_down
+    J = np.empty((len(P), unknowns, unknowns))
+    F = np.empty((len(P), unknowns))
+    if vessel is not None:
+        free = np.exp(nu) * vessel.unit
+        P[:, m] += np.maximum(vessel.left, 0.0)
+        M[:, m] += np.maximum(-vessel.left, 0.0) + free
+    J[:, :rows] = sums[:, cut1:cut2].reshape(-1, rows, unknowns) / P[:, :, None]
+    J[:, :rows] -= sums[:, cut2:cut3].reshape(-1, rows, unknowns) / M[:, :, None]
+    F[:, :rows] = np.log(P / M)
+    if system.extra:
+        total = sums[:, -1:]
+        F[:, -1] = np.log(total[:, 0]) - nu
+        J[:, -1] = sums[:, cut3:-1] / total
+        J[:, -1, m] -= 1.0
+    if vessel is not None:
+        J[:, m, m] -= free / M[:, m]
+        F[:, -1] -= np.log(w * vessel.unit)
+        J[:, -1, -1] -= 1.0 / w
+    return F, J, P, M
+
+
 class State:
     """Unknowns, residuals and slopes of the cases that are still being iterated."""
 
@@ -199,8 +253,7 @@ class State:
     ) -> None:
         cases, m = b.shape
         self.system, self.vessel, self.b, self.nu_limit = system, vessel, b, nu_limit
-        self.m, self.rows = m, m + (1 if vessel is not None else 0)
-        self.unknowns = m + system.extra
+        self.m, self.rows, self.unknowns = m, system.rows, m + system.extra
         self.b_up, self.b_down = np.maximum(-b, 0.0), np.maximum(b, 0.0)
         self.log_a, self.nu = log_a.copy(), nu.copy()
         self.w = vessel.w.copy() if vessel is not None else np.zeros(cases)
@@ -223,34 +276,13 @@ class State:
 
     def evaluate(self) -> tuple[NDArray[np.bool_], NDArray[np.bool_]]:
         """Residuals F and slopes J at the present amounts; which cases are closed or lost."""
-        m, rows, unknowns, vessel = self.m, self.rows, self.unknowns, self.vessel
-        cut1, cut2 = 2 * rows, 2 * rows + rows * unknowns
-        cut3 = cut2 + rows * unknowns
-        sums = self.n @ self.system.weights
-        P, M = sums[:, :rows], sums[:, rows:cut1]
-        P[:, :m] += self.b_up
-        M[:, :m] += self.b_down
-        J = np.empty((len(P), unknowns, unknowns))
-        F = np.empty((len(P), unknowns))
-        if vessel is not None:
-            free = np.exp(self.nu) * vessel.unit
-            P[:, m] += np.maximum(vessel.left, 0.0)
-            M[:, m] += np.maximum(-vessel.left, 0.0) + free
-        J[:, :rows] = sums[:, cut1:cut2].reshape(-1, rows, unknowns) / P[:, :, None]
-        J[:, :rows] -= sums[:, cut2:cut3].reshape(-1, rows, unknowns) / M[:, :, None]
-        F[:, :rows] = np.log(P / M)
+        F, J, P, M = residuals(
+            self.system, self.n, self.nu, self.w, self.b_up, self.b_down, self.vessel
+        )
         if self.system.extra:
-            total = sums[:, -1:]
-            F[:, -1] = np.log(total[:, 0]) - self.nu
-            J[:, -1] = sums[:, cut3:-1] / total
-            J[:, -1, m] -= 1.0
             grown = self.nu > self.nu_limit
             self.too_large = (self.too_large + 1) * grown
-        if vessel is not None:
-            J[:, m, m] -= free / M[:, m]
-            F[:, -1] -= np.log(self.w * vessel.unit)
-            J[:, -1, -1] -= 1.0 / self.w
-        else:
+        if self.vessel is None:
             self._rescale_extremes(P, M, J, F)
         worst = np.abs(F).max(axis=1)
         closed = self.settled | (worst <= _CLOSED) | ((worst <= 1e-11) & (worst >= 0.5 * self.last))

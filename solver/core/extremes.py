@@ -18,8 +18,17 @@ _MANY = 24  # cases from which eliminating all of them side by side beats one by
 
 
 def newton_steps(J: Array, F: Array) -> Array:
-    """Newton steps (cases, unknowns); see `shortest` for those that are `wild`."""
-    return _eliminate(J, F) if len(J) >= _MANY else _one_by_one(J, F)
+    """Newton steps; see `shortest` for those that are `wild`.
+
+    Parameters
+    ----------
+    J : ndarray, shape (cases, unknowns, unknowns)
+    F : ndarray, shape (cases, unknowns) or (cases, unknowns, sides)
+        Several right-hand sides share the elimination.
+    """
+    sides = F if F.ndim == 3 else F[:, :, None]
+    step = _eliminate(J, sides) if len(J) >= _MANY else _one_by_one(J, sides)
+    return step if F.ndim == 3 else step[:, :, 0]
 
 
 def wild(step: Array) -> NDArray[np.bool_]:
@@ -35,7 +44,7 @@ def shortest(J: Array, F: Array) -> Array:
 def _one_by_one(J: Array, F: Array) -> Array:
     ridge = 1e-14 * np.eye(J.shape[1])
     try:
-        return np.asarray(-np.linalg.solve(J + ridge, F[:, :, None])[:, :, 0])
+        return np.asarray(-np.linalg.solve(J + ridge, F))
     except np.linalg.LinAlgError:  # one is singular to the last digit
         return np.array([shortest(one, right) for one, right in zip(J, F, strict=True)])
 
@@ -46,20 +55,20 @@ def _eliminate(J: Array, F: Array) -> Array:
     The rows are logarithmic balances with positive diagonals, so that exchanges are rarely
     needed; where the residual says otherwise the case is solved by itself.
     """
-    unknowns = J.shape[1]
-    A = np.empty((unknowns, unknowns + 1, len(J)))
+    unknowns, sides = F.shape[1:]
+    A = np.empty((unknowns, unknowns + sides, len(J)))
     A[:, :unknowns] = J.transpose(1, 2, 0)
-    A[:, unknowns] = -F.T
+    A[:, unknowns:] = -F.transpose(1, 2, 0)
     with np.errstate(all="ignore"):
         for k in range(unknowns):
             A[k, k + 1 :] /= A[k, k]
             if k + 1 < unknowns:
                 A[k + 1 :, k + 1 :] -= A[k + 1 :, k, None] * A[k, None, k + 1 :]
         for k in range(unknowns - 2, -1, -1):
-            A[k, unknowns] -= (A[k, k + 1 : unknowns] * A[k + 1 :, unknowns]).sum(axis=0)
-        step = np.ascontiguousarray(A[:, unknowns].T)
-        rest = np.abs((J @ step[:, :, None])[:, :, 0] + F).max(axis=1)
-        good = rest <= 1e-9 * np.abs(F).max(axis=1)
+            A[k, unknowns:] -= (A[k, k + 1 : unknowns, None] * A[k + 1 :, unknowns:]).sum(axis=0)
+        step = np.ascontiguousarray(A[:, unknowns:].transpose(2, 0, 1))
+        rest = np.abs(J @ step + F).max(axis=1)
+        good = (rest <= 1e-9 * np.abs(F).max(axis=1)).all(axis=1)
     if not good.all():
         bad = ~good
         step[bad] = _one_by_one(J[bad], F[bad])

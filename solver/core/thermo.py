@@ -31,8 +31,8 @@ class ThermoTable:
         self.T_min = np.array([sp.T_min for sp in species])
         self.T_max = np.array([sp.T_max for sp in species])
 
-    def _table(self, interval: int) -> tuple[Array, Array, Array]:
-        """Coefficient matrices (species, powers) of g, h and cp on one interval."""
+    def table(self, interval: int) -> tuple[Array, Array, Array]:
+        """Coefficient matrices (powers, species) of g, h and cp on one interval."""
         if interval not in self._tables:
             T = self._joins[interval - 1] if interval else 0.0
             rows = np.array(
@@ -50,25 +50,31 @@ class ThermoTable:
             self._tables[interval] = (g, h, cp)
         return self._tables[interval]
 
+    def intervals(self, T: Array) -> NDArray[np.intp]:
+        """Number of the interval between joins in which each T (cases,) lies."""
+        return np.searchsorted(self._joins, T, side="right")
+
     def over(self, T: Array) -> tuple[Array, Array, Array]:
         """g/RT, h/RT and cp/R at 1 bar at temperatures T (cases,), each (cases, species)."""
-        intervals = np.searchsorted(self._joins, T, side="right")
-        powers = _powers(T).T
+        intervals = self.intervals(T)
+        powers = powers_of(T).T
         first = int(intervals[0]) if T.size else 0
         if np.all(intervals == first):
-            g, h, cp = self._table(first)
+            g, h, cp = self.table(first)
             return powers @ g, powers @ h, powers @ cp
         shape = (T.size, len(self._pieces))
         out = (np.empty(shape), np.empty(shape), np.empty(shape))
         for interval in np.unique(intervals):
             rows = intervals == interval
-            for part, table in zip(out, self._table(int(interval)), strict=True):
+            for part, table in zip(out, self.table(int(interval)), strict=True):
                 part[rows] = powers[rows] @ table
         return out
 
 
-def _powers(T: Array | np.float64) -> Array:
-    return np.array([np.ones_like(T), T, T**2, T**3, T**4, 1.0 / T, np.log(T)])
+def powers_of(T: Array) -> Array:
+    """The powers of T that the coefficients multiply (powers, cases)."""
+    T2 = T * T
+    return np.array([np.ones_like(T), T, T2, T2 * T, T2 * T2, 1.0 / T, np.log(T)])
 
 
 def _extended(sp: Species) -> list[tuple[float, tuple[float, ...]]]:

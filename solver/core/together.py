@@ -100,15 +100,14 @@ class _Run:
                 active, members = minima.sets[number]
                 rows = pending[minima.of[pending] == number]
                 joint = solve_joint(
-                    self.cases_at,
-                    rows,
+                    self.mixture,
+                    self.feed.of(self.going[rows]),
+                    search.of(self.going[rows]),
                     active,
                     self.mixture.basis(members),
                     self.T[rows],
                     minima.log_a[rows],
                     minima.nu[rows],
-                    search.variable,
-                    search.values[self.going[rows]],
                 )
                 good = joint.closed & (joint.T > search.T_low) & (joint.T < search.T_high)
                 closed.append(rows[good])

@@ -290,7 +290,7 @@ def _end_state(
         n[None, :],
         feed.totals,
         point.potentials[None, :],
-        mixture.thermo.over(np.array([T]))[0] + mixture.shifted(np.array([T])),
+        mixture.thermo.gibbs(np.array([T])) + mixture.shifted(np.array([T])),
         np.array([T]),
         np.array([p]),
         V,

@@ -249,7 +249,9 @@ def _settle_chunk(
     rows, first, values, scale = rows[some], first[some], values[some], scale[some]
     feed, T, p, n = feed.of(some), found.T[some], found.p[some], found.n[some]
     V = None if V is None else V[some]
-    g = mixture.thermo.over(T)[0] + mixture.shifted(T)
+    g = mixture.thermo.gibbs(T)
+    if mixture.shifts:
+        g = g + mixture.shifted(T)
     closure, trace = element_residuals(mixture, n, feed)
     gap, _ = optimality_gap(mixture, n, feed.totals, found.potentials[some], g, T, p, V)
     energy = np.zeros(len(some))

@@ -16,8 +16,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from solver.core.cases import Cases
+from solver.core.lines import coarseness, weights_between
 from solver.core.minimise import Minimum, NotHeld, Unsettled, minimise
-from solver.core.mixture import Held
+from solver.core.mixture import Held, Mixture
 from solver.core.phaseset import Solved, solve_set
 from solver.core.vertices import walk
 from solver.core.vessel import TooSmall
@@ -27,7 +28,6 @@ Indices = NDArray[np.intp]
 
 _MAX_ROUNDS = 12
 _SEEDS = 1
-_COARSE = 8  # every so many cases of a line are settled first
 _AT_ONCE = 3
 _LARGE, _SCARCE = 20, -14.0  # cases of a group; ln activity of a component
 _NEAR = 0.3  # distance up to which a neighbour's activities are the better start
@@ -65,12 +65,10 @@ class Minima:
     nu: Array
 
     @classmethod
-    def none_of(cls, cases: Cases) -> Minima:
-        """Nothing found yet."""
-        count, species = cases.c.shape
-        mixture = cases.mixture
+    def of_size(cls, mixture: Mixture, count: int) -> Minima:
+        """Nothing found yet, for a number of cases."""
         return cls(
-            n=np.full((count, species), np.nan),
+            n=np.full((count, len(mixture.species)), np.nan),
             potentials=np.full((count, mixture.A.shape[1]), np.nan),
             p=np.full(count, np.nan),
             found=np.zeros(count, dtype=bool),
@@ -104,8 +102,8 @@ class Minima:
         self.of[i] = self.number((present.active, present.members))
         self.found[i] = True
 
-    def part(self, keep: NDArray[np.bool_]) -> Minima:
-        """The minima of some of the cases."""
+    def part(self, keep: NDArray[np.bool_] | Indices) -> Minima:
+        """The minima of some of the cases; the sets are shared."""
         return Minima(
             n=self.n[keep],
             potentials=self.potentials[keep],
@@ -114,9 +112,14 @@ class Minima:
             why={},
             sets=self.sets,
             of=self.of[keep],
-            log_a=self.log_a[keep].copy(),
-            nu=self.nu[keep].copy(),
+            log_a=self.log_a[keep],
+            nu=self.nu[keep],
         )
+
+    def take(self, rows: Indices, part: Minima) -> None:
+        """What has become of some of the cases, as `part` gave them out."""
+        for name in ("n", "potentials", "p", "found", "of", "log_a", "nu"):
+            getattr(self, name)[rows] = getattr(part, name)
 
 
 def minimise_many(cases: Cases, features: Array, start: Minima | None = None) -> Minima:
@@ -130,7 +133,7 @@ def minimise_many(cases: Cases, features: Array, start: Minima | None = None) ->
     start : Minima, optional
         Minima of the same cases at a slightly other temperature.
     """
-    out = Minima.none_of(cases)
+    out = Minima.of_size(cases.mixture, len(cases))
     if start is not None:
         out.sets = list(start.sets)
         known = np.flatnonzero(start.found)
@@ -143,8 +146,12 @@ def minimise_many(cases: Cases, features: Array, start: Minima | None = None) ->
     else:
         for i in spread(features, _SEEDS):
             settle_one(cases, int(i), out)
-        if _is_line(features):  # a coarse pass gives the rest near neighbours
-            _settle_together(cases, np.arange(len(cases))[::_COARSE], features, out)
+        step = coarseness(features)
+        if step:  # a coarse pass gives the rest near neighbours
+            coarse = np.arange(0, len(cases), step)
+            _settle_together(cases, coarse, features, out)
+            between = interpolate(cases, coarse, features, out)
+            _exchange_all(cases, between, out)
     # what a neighbour's start does not reach may be reached from a nearer neighbour
     for _ in range(_MAX_PASSES):
         left = _waiting(out)
@@ -163,14 +170,6 @@ def _waiting(out: Minima) -> Indices:
     waiting = ~out.found
     waiting[list(out.why)] = False
     return np.flatnonzero(waiting)
-
-
-def _is_line(features: Array) -> bool:
-    """Whether cases that follow each other are so near that one's end starts the other."""
-    if len(features) < 4 * _COARSE:
-        return False
-    steps = np.abs(np.diff(features, axis=0)).max(axis=1)
-    return bool(np.median(steps) * _COARSE < _NEAR)
 
 
 def _settle_together(cases: Cases, which: Indices, features: Array, out: Minima) -> None:
@@ -193,6 +192,25 @@ def _settle_together(cases: Cases, which: Indices, features: Array, out: Minima)
         far = to_vertices(cases, far, out, settled[near[~close]])
         gather(cases, far, out)
     _exchange_all(cases, np.concatenate([target, far]), out)
+
+
+def interpolate(cases: Cases, coarse: Indices, features: Array, out: Minima) -> Indices:
+    """Give the cases between settled ones of one set the activities that lie between theirs.
+
+    Returns the cases that have some.
+    """
+    which, nodes, weights = weights_between(features, coarse)
+    near = nodes[np.arange(len(which)), np.abs(weights).argmax(axis=1)]
+    good = out.found[nodes].all(axis=1) & (out.of[nodes] == out.of[near][:, None]).all(axis=1)
+    good &= ~out.found[which]
+    nodes, weights, near = nodes[good], weights[good], near[good]
+    target: Indices = which[good]
+    log_atoms = np.log(cases.atoms)
+    out.of[target] = out.of[near]
+    out.log_a[target] = np.einsum("ij,ijk->ik", weights, out.log_a[nodes])
+    size = out.nu - log_atoms
+    out.nu[target] = (weights * size[nodes]).sum(axis=1) + log_atoms[target]
+    return target
 
 
 def to_vertices(cases: Cases, which: Indices, out: Minima, near: Indices) -> Indices:

@@ -13,7 +13,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from solver.core.balance import GasSystem, Vessel, residuals
+from solver.core.balance import GasSystem, Residuals, Vessel, bounded_exp, residuals
 from solver.core.basis import Basis, component_amounts
 from solver.core.cases import Feed
 from solver.core.extremes import newton_steps, wild
@@ -24,11 +24,11 @@ from solver.core.searches import Searches
 
 Array = NDArray[np.float64]
 Indices = NDArray[np.intp]
+Flags = NDArray[np.bool_]
 
 _MAX_ITERATIONS = 25
-_MAX_STEP_T = 0.25  # of ln T
+_MAX_STEP_T = 0.4  # of ln T
 _MAX_STEP = 30.0  # of a component's ln activity
-_EXP_LIMIT = 690.0
 _CLOSED = 1e-13
 _STRAGGLERS = 0.05
 _TOGETHER = 9
@@ -112,7 +112,7 @@ class _Group:
         self.formation = Formation(mixture, basis, gas, present, search.variable)
         phases = np.array(basis.members, dtype=np.intp)[present]
         volume = mixture.volume[phases]
-        self.b, self.b_phases = b[:, rows], b[:, present]
+        self.b, self.b_phases = b[:, rows].T, b[:, present]
         self.room = self.b_phases @ volume  # of the phases if all components were condensed
         self.swelling = basis.reactions[np.ix_(gas, present)] @ volume
         self.shares = search.V is not None and bool(volume.any())
@@ -121,141 +121,157 @@ class _Group:
             search.p is not None,
             self.swelling if self.shares else None,
         )
-        sides = self.system.weights[:, : 2 * self.system.rows]
-        self.sides = np.concatenate([sides, np.ones((gas.size, 1))], axis=1)
+        sides = self.system.weights[: 2 * self.system.rows]
+        self.sides = np.concatenate([sides, np.ones((1, gas.size))])
 
     def iterate(self, out: Joint, some: Indices) -> None:
         """Newton's method on the cases `some` of `out`."""
-        search, m = self.search, len(self.rows)
-        index = np.arange(len(some))
-        T, nu = out.T[some], out.nu[some]
-        log_a = out.log_a[np.ix_(some, self.rows)]
-        w = np.zeros(len(some))
+        at = _At(
+            index=np.arange(len(some)),
+            T=out.T[some],
+            nu=out.nu[some],
+            w=np.zeros(len(some)),
+            log_a=out.log_a[np.ix_(some, self.rows)].T,
+        )
         for iteration in range(_MAX_ITERATIONS):
-            p = None if search.p is None else search.p[index]
-            V = None if search.V is None else search.V[index]
-            formed = self.formation.at(T, p)
-            b = self.b[index]
-            if V is not None and not self.shares:
-                nu = np.log(P0 * V / (R * T))
-            log_n = log_a @ self.system.reactions.T - formed.kappa + nu[:, None]
-            vessel = None
-            if V is not None and self.shares:
-                unit = R * T / P0
-                if iteration == 0:
-                    w = np.exp(log_n).sum(axis=1) * np.exp(-nu) / unit
-                vessel = Vessel(V - self.room[index], unit, w)
-                log_n += (w - 1.0 / unit)[:, None] * self.swelling
-            n = np.exp(np.clip(log_n, -_EXP_LIMIT, _EXP_LIMIT))
-            with np.errstate(all="ignore"):
-                F, J, P, M = residuals(
-                    self.system, n, nu, w, np.maximum(-b, 0.0), np.maximum(b, 0.0), vessel
-                )
-                F_T, heat = self._by_log_T(formed, n, P, M, nu, vessel)
-                energy, by_n, by_unknowns, by_T = self._energy(formed, n, log_n, nu, T, p, index)
-                off = energy - search.values[index] / R
-                steps = newton_steps(J, np.stack([F, F_T], axis=2))
-                delta, answer = steps[:, :, 0], steps[:, :, 1]
-                slope = np.einsum("ij,ij->i", by_unknowns, answer) + by_T
-                slope += np.einsum("ij,ij->i", by_n, heat)
-                tau = -(off + np.einsum("ij,ij->i", by_unknowns, delta)) / slope
-                unit_of = self.b_phases[index].sum(axis=1) + n.sum(axis=1)
-                if search.variable != "S":
-                    unit_of = unit_of * T
-                worst = np.abs(F).max(axis=1)
-                done = (worst <= _CLOSED) & (np.abs(off) <= _CLOSED * unit_of)
-                bad = wild(delta) | ~np.isfinite(tau) | ~(slope > 0.0) | ~np.isfinite(worst)
-            tau = np.clip(np.where(bad, 0.0, tau), -_MAX_STEP_T, _MAX_STEP_T)
-            step = np.where(bad[:, None], 0.0, delta + answer * tau[:, None])
-            if vessel is not None:
-                step[:, -1] /= w  # densities change by a factor of ten at most
-                fall = np.maximum(-step[:, -1], step[:, -1] / 9.0) / 0.9
-                step /= np.maximum(fall, 1.0)[:, None]
-                tau = tau / np.maximum(fall, 1.0)
-            largest = np.abs(step).max(axis=1)
-            certain = (largest <= 1e-9) & (np.abs(tau) <= 1e-10) & ~bad
-            damp = np.minimum(1.0, _MAX_STEP / np.maximum(largest, 1e-300))
-            damp[done] = 0.0
-            step *= damp[:, None]
-            log_a = log_a + step[:, :m]
-            if self.system.extra:
-                nu = nu + step[:, m]
-            if vessel is not None:
-                w = w * (1.0 + step[:, -1])
-            T = np.clip(T * np.exp(tau * damp), search.T_low, search.T_high)
-            going = ~(done | certain | bad)
+            with np.errstate(all="ignore"):  # infinities are looked for, and given up
+                closed, going = self._step(at)
             if not going.all():
                 ended = ~going
-                target = some[index[ended]]
-                out.T[target], out.nu[target] = T[ended], nu[ended]
-                out.log_a[np.ix_(target, self.rows)] = log_a[ended]
-                out.closed[target] = (done | certain)[ended]
-                index, T, nu, w, log_a = (x[going] for x in (index, T, nu, w, log_a))
-            few = iteration > _TOGETHER and index.size < _STRAGGLERS * len(some)
-            if not index.size or few:
+                target = some[at.index[ended]]
+                out.T[target], out.nu[target] = at.T[ended], at.nu[ended]
+                out.log_a[np.ix_(target, self.rows)] = at.log_a[:, ended].T
+                out.closed[target] = closed[ended]
+                at.keep(going)
+            few = iteration > _TOGETHER and at.index.size < _STRAGGLERS * len(some)
+            if not at.index.size or few:
                 break
 
+    def _step(self, at: _At) -> tuple[Flags, Flags]:
+        """One step of all cases that go on; which are closed by it, and which go on."""
+        search, system, m = self.search, self.system, len(self.rows)
+        p = None if search.p is None else search.p[at.index]
+        formed = self.formation.at(at.T, p)
+        if search.V is not None and not self.shares:
+            at.nu = np.log(P0 * search.V[at.index] / (R * at.T))
+        log_n = at.log_a.T @ system.reactions.T
+        log_n -= formed.kappa
+        log_n += at.nu[:, None]
+        vessel = self._vessel(at, log_n)
+        n = bounded_exp(log_n)
+        b = self.b[:, at.index]
+        now = residuals(system, n, at.nu, at.w, np.maximum(-b, 0.0), np.maximum(b, 0.0), vessel)
+        F_T, heat = self._by_log_T(formed, n, now, at.nu, vessel)
+        energy, by_n, by_unknowns, by_T = self._energy(formed, n, log_n, now.N, at, p)
+        off = energy - search.values[at.index] / R
+        steps = newton_steps(now.J, np.stack([now.F, F_T], axis=1))
+        delta, answer = steps[:, 0], steps[:, 1]
+        slope = (by_unknowns * answer).sum(axis=0) + by_T
+        slope += np.einsum("ij,ij->i", by_n, heat)
+        tau = -(off + (by_unknowns * delta).sum(axis=0)) / slope
+        size = self.b_phases[at.index].sum(axis=1) + now.N
+        if search.variable != "S":
+            size = size * at.T
+        worst = np.abs(now.F).max(axis=0)
+        done = (worst <= _CLOSED) & (np.abs(off) <= _CLOSED * size)
+        bad = wild(delta) | ~np.isfinite(worst)
+        # with the balances open the energy says little of T, and may even fall with it
+        blind = bad | ~np.isfinite(tau) | ~(slope > 0.0)
+        most = _MAX_STEP_T / np.maximum(worst, 1.0)
+        tau = np.where(blind, 0.0, np.clip(tau, -most, most))
+        step = np.where(bad, 0.0, delta + answer * tau)
+        if vessel is not None:
+            step[-1] /= at.w  # densities change by a factor of ten at most
+            fall = np.maximum(np.maximum(-step[-1], step[-1] / 9.0) / 0.9, 1.0)
+            step, tau = step / fall, tau / fall
+        largest = np.abs(step).max(axis=0)
+        certain = (largest <= 1e-9) & (np.abs(tau) <= 1e-10) & ~blind
+        damp = np.minimum(1.0, _MAX_STEP / np.maximum(largest, 1e-300))
+        damp[done] = 0.0
+        step *= damp
+        at.log_a = at.log_a + step[:m]
+        if system.extra:
+            at.nu = at.nu + step[m]
+        if vessel is not None:
+            at.w = at.w * (1.0 + step[-1])
+        at.T = np.clip(at.T * np.exp(tau * damp), search.T_low, search.T_high)
+        return done | certain, ~(done | certain | bad)
+
+    def _vessel(self, at: _At, log_n: Array) -> Vessel | None:
+        """The vessels, where condensed phases share them; what their pressure adds to ln n."""
+        if not self.shares:
+            return None
+        assert self.search.V is not None
+        unit = R * at.T / P0
+        if not at.w.any():
+            at.w = np.exp(log_n).sum(axis=1) * np.exp(-at.nu) / unit
+        log_n += (at.w - 1.0 / unit)[:, None] * self.swelling
+        return Vessel(self.search.V[at.index] - self.room[at.index], unit, at.w)
+
     def _by_log_T(
-        self,
-        formed: Formed,
-        n: Array,
-        P: Array,
-        M: Array,
-        nu: Array,
-        vessel: Vessel | None,
+        self, formed: Formed, n: Array, now: Residuals, nu: Array, vessel: Vessel | None
     ) -> tuple[Array, Array]:
-        """Derivatives by ln T of the residuals (cases, unknowns) and of ln n (cases, gas)."""
-        system, rows = self.system, self.system.rows
+        """Derivatives by ln T of the residuals (unknowns, cases) and of ln n (cases, gas)."""
+        rows, extra = self.system.rows, self.system.extra
         heat = formed.heat
-        if system.extra == 0:
+        if extra == 0:
             heat = heat - 1.0
         if vessel is not None:
             heat = heat + self.swelling / vessel.unit[:, None]
-        sums = (n * heat) @ self.sides
-        F_T = np.empty((len(n), len(self.rows) + system.extra))
-        F_T[:, :rows] = sums[:, :rows] / P - sums[:, rows:-1] / M
-        if system.extra:
-            F_T[:, -1] = sums[:, -1] / n.sum(axis=1)
+        sums = self.sides @ (n * heat).T
+        F_T = np.empty(now.F.shape)
+        F_T[:rows] = sums[:rows] / now.P - sums[rows:-1] / now.M
+        if extra:
+            F_T[-1] = sums[-1] / now.N
         if vessel is not None:
-            F_T[:, rows - 1] -= np.exp(nu) * vessel.unit / M[:, -1]
-            F_T[:, -1] -= 1.0
+            F_T[rows - 1] -= np.exp(nu) * vessel.unit / now.M[-1]
+            F_T[-1] -= 1.0
         return F_T, heat
 
     def _energy(
-        self,
-        formed: Formed,
-        n: Array,
-        log_n: Array,
-        nu: Array,
-        T: Array,
-        p: Array | None,
-        index: Indices,
+        self, formed: Formed, n: Array, log_n: Array, N: Array, at: _At, p: Array | None
     ) -> tuple[Array, Array, Array, Array]:
         """The variable over R, and its derivatives by ln n, by the unknowns and by ln T."""
-        b, N = self.b_phases[index], n.sum(axis=1)
-        effect = self.system.effect
+        b, T, effect = self.b_phases[at.index], at.T, self.system.effect
         cp = np.einsum("ij,ij->i", n, formed.cp) + np.einsum("ij,ij->i", b, formed.phase_cp)
-        own = formed.own
         held = np.einsum("ij,ij->i", b, formed.phase_own)
-        variable = self.search.variable
-        if variable == "S":
-            log_p = np.log(p / P0) - np.log(N) if p is not None else -nu
-            partial = own - log_n - log_p[:, None]
+        if self.search.variable == "S":
+            log_p = np.log(p / P0) - np.log(N) if p is not None else -at.nu
+            partial = formed.own - log_n - log_p[:, None]
             energy = np.einsum("ij,ij->i", n, partial) + held
             by_n = n * partial if p is not None else n * (partial - 1.0)
-            by_unknowns = by_n @ effect
+            by_unknowns = effect.T @ by_n.T
             if p is None and self.shares:
-                by_unknowns[:, len(self.rows)] += N  # a larger volume at the same amounts
+                by_unknowns[len(self.rows)] += N  # a larger volume at the same amounts
             elif p is None:
                 cp = cp - N
             return energy, by_n, by_unknowns, cp
-        pressing = np.full(len(T), -P0 / R)  # p v of the phases as H or U counts it
-        if variable == "U":
+        pressing = np.full(len(T), -P0 / R)  # on the phases, as H or U counts it
+        own = formed.own
+        if self.search.variable == "U":
             own, cp = own - 1.0, cp - N
         else:
             assert p is not None
             pressing += p / R
-        own = own * T[:, None] - pressing[:, None] * self.swelling
+        own = own * T[:, None]
+        if self.swelling.any():
+            own -= pressing[:, None] * self.swelling
         by_n = n * own
-        energy = by_n.sum(axis=1) + T * held + self.room[index] * pressing
-        return energy, by_n, by_n @ effect, T * cp
+        energy = by_n.sum(axis=1) + T * held + self.room[at.index] * pressing
+        return energy, by_n, effect.T @ by_n.T, T * cp
+
+
+@dataclass
+class _At:
+    """The cases that go on, and where they are; `log_a` is (components, cases)."""
+
+    index: Indices
+    T: Array
+    nu: Array
+    w: Array
+    log_a: Array
+
+    def keep(self, going: Flags) -> None:
+        """Drop the others."""
+        self.index, self.T, self.nu = self.index[going], self.T[going], self.nu[going]
+        self.w, self.log_a = self.w[going], self.log_a[:, going]

@@ -72,12 +72,12 @@ class Mixture:
         """What is added to g/RT of each species (cases, species) by reactions held apart."""
         out = np.zeros((len(T), len(self.species)))
         if self.shifts:
-            at_T = self.thermo.over(T)[0]
+            at_T = self.thermo.gibbs(T)
             numbers = np.array([shift.numbers for shift in self.shifts])  # (reactions, species)
             keys = [shift.key for shift in self.shifts]
             wanted = np.column_stack(
                 [
-                    (self.thermo.over(np.maximum(T + shift.dT, _COLDEST))[0] - at_T) @ shift.numbers
+                    (self.thermo.gibbs(np.maximum(T + shift.dT, _COLDEST)) - at_T) @ shift.numbers
                     for shift in self.shifts
                 ]
             )

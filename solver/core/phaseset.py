@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from solver.core.balance import GasSystem, Vessel, solve_balances
+from solver.core.balance import GasSystem, Vessel, nearer_start, solve_balances
 from solver.core.basis import Basis, component_amounts
 from solver.core.cases import Cases
 from solver.core.descent import descend
@@ -206,9 +206,11 @@ def _solve_gas(
     elif homogeneous:
         nu = np.zeros(count)
     else:
-        nu = cases.nu_fixed[which]
+        given, nu = nu, cases.nu_fixed[which]
         swelling, vessel = _shared(cases, which, active, basis, live)
     system = GasSystem.of(part, grows, swelling)
+    if vessel is not None:
+        nu, vessel = nearer_start(system, kappa, b, start, nu, given, vessel)
     solution = solve_balances(system, kappa, b, start, nu, limit, vessel)
     if count == 1 and not solution.closed[0] and not infeasible(part, b[0]):
         near, size = descend(part, kappa[0], b[0], start[0], float(nu[0]), grows, float(limit[0]))

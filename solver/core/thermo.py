@@ -56,18 +56,34 @@ class ThermoTable:
 
     def over(self, T: Array) -> tuple[Array, Array, Array]:
         """g/RT, h/RT and cp/R at 1 bar at temperatures T (cases,), each (cases, species)."""
+        g, h, cp = self._evaluated(T, (0, 1, 2))
+        return g, h, cp
+
+    def gibbs(self, T: Array) -> Array:
+        """g/RT at 1 bar at temperatures T (cases,), (cases, species)."""
+        return self._evaluated(T, (0,))[0]
+
+    def enthalpy(self, T: Array) -> Array:
+        """h/RT at temperatures T (cases,), (cases, species)."""
+        return self._evaluated(T, (1,))[0]
+
+    def heat_capacity(self, T: Array) -> Array:
+        """cp/R at temperatures T (cases,), (cases, species)."""
+        return self._evaluated(T, (2,))[0]
+
+    def _evaluated(self, T: Array, which: tuple[int, ...]) -> list[Array]:
         intervals = self.intervals(T)
         powers = powers_of(T).T
         first = int(intervals[0]) if T.size else 0
         if np.all(intervals == first):
-            g, h, cp = self.table(first)
-            return powers @ g, powers @ h, powers @ cp
-        shape = (T.size, len(self._pieces))
-        out = (np.empty(shape), np.empty(shape), np.empty(shape))
+            tables = self.table(first)
+            return [powers @ tables[k] for k in which]
+        out = [np.empty((T.size, len(self._pieces))) for _ in which]
         for interval in np.unique(intervals):
             rows = intervals == interval
-            for part, table in zip(out, self.table(int(interval)), strict=True):
-                part[rows] = powers[rows] @ table
+            tables, here = self.table(int(interval)), powers[rows]
+            for part, k in zip(out, which, strict=True):
+                part[rows] = here @ tables[k]
         return out
 
 

@@ -16,6 +16,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from solver.core.cases import Cases
+from solver.core.columns import rows_of
 from solver.core.lines import coarseness, weights_between
 from solver.core.minimise import Minimum, NotHeld, Unsettled, minimise
 from solver.core.mixture import Held, Mixture
@@ -87,7 +88,7 @@ class Minima:
 
     def accept(self, which: Indices, solved: Solved, rows: Indices) -> None:
         """Take the solution of some rows of a group as found."""
-        self.n[which] = solved.n[rows]
+        self.n[rows_of(which, len(self.n))] = solved.n[rows_of(rows, len(solved.n))]
         self.potentials[which] = solved.basis.potentials(solved.mu[rows])
         self.p[which] = solved.p[rows]
         self.log_a[which] = solved.log_a[rows]
@@ -296,7 +297,7 @@ def _place(
                     log_a[:, k] = 0.0
         target = which[rows[some]]
         out.of[target] = out.number((active, chosen))
-        out.log_a[target], out.nu[target] = log_a, nu[some]
+        out.log_a[target], out.nu[target] = log_a, base[some]
         placed.append(target)
     return placed
 
@@ -409,6 +410,9 @@ def _change(
     target = which[rows]
     out.of[target] = out.number((tuple(sorted(active)), members))
     out.log_a[target] = np.maximum(solved.force[np.ix_(rows, np.array(members))], -650.0)
+    if not cases.holds_pressure:
+        out.nu[target] = solved.nu[rows]
+        return [target]
     gas = solved.n[rows][:, cases.gas].sum(axis=1)
     with np.errstate(divide="ignore"):
         out.nu[target] = np.where(gas > 0.0, np.log(gas), np.log(cases.scale[target]) - 30.0)

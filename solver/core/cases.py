@@ -71,12 +71,13 @@ class Cases:
         self.c = self.g + mixture.shifted(T) if mixture.shifts else self.g.copy()
         self.nu_fixed = np.zeros(len(T))
         if p is not None:
-            self.c[:, self.gas] += np.log(p / P0)[:, None]
-            self.c += mixture.volume * ((p - P0) / (R * T))[:, None]
+            self.c[:, mixture.gas_columns] += np.log(p / P0)[:, None]
+            if self.condensed.size:
+                self.c += mixture.volume * ((p - P0) / (R * T))[:, None]
         else:
             assert V is not None
             self.nu_fixed = np.log(P0 * V / (R * T))
-        self.force_tolerance = 6e-14 * (1.0 + np.abs(self.c).max(axis=1))
+        self.force_tolerance = 6e-14 * (1.0 + np.maximum(self.c.max(axis=1), -self.c.min(axis=1)))
 
     def __len__(self) -> int:
         return len(self.T)

@@ -27,10 +27,10 @@ Indices = NDArray[np.intp]
 Flags = NDArray[np.bool_]
 
 _MAX_ITERATIONS = 25
-_MAX_STEP_T = 0.4  # of ln T
+_MAX_STEP_T, _LARGE = 0.4, 0.15  # of ln T
 _MAX_STEP = 30.0  # of a component's ln activity
 _CLOSED = 1e-13
-_STRAGGLERS = 0.05
+_STRAGGLERS, _FEW = 0.05, 4
 _TOGETHER = 9
 
 
@@ -131,6 +131,8 @@ class _Group:
             T=out.T[some],
             nu=out.nu[some],
             w=np.zeros(len(some)),
+            last=np.zeros(len(some)),
+            reach=np.full(len(some), _MAX_STEP_T),
             log_a=out.log_a[np.ix_(some, self.rows)].T,
         )
         for iteration in range(_MAX_ITERATIONS):
@@ -143,7 +145,8 @@ class _Group:
                 out.log_a[np.ix_(target, self.rows)] = at.log_a[:, ended].T
                 out.closed[target] = closed[ended]
                 at.keep(going)
-            few = iteration > _TOGETHER and at.index.size < _STRAGGLERS * len(some)
+            few = iteration > _TOGETHER and at.index.size < max(_STRAGGLERS * len(some), _FEW)
+            few = few and len(some) > 1
             if not at.index.size or few:
                 break
 
@@ -163,6 +166,9 @@ class _Group:
         now = residuals(system, n, at.nu, at.w, np.maximum(-b, 0.0), np.maximum(b, 0.0), vessel)
         F_T, heat = self._by_log_T(formed, n, now, at.nu, vessel)
         energy, by_n, by_unknowns, by_T = self._energy(formed, n, log_n, now.N, at, p)
+        if vessel is not None:  # the density by its logarithm
+            now.J[:, -1] *= at.w
+            by_unknowns[-1] *= at.w
         off = energy - search.values[at.index] / R
         steps = newton_steps(now.J, np.stack([now.F, F_T], axis=1))
         delta, answer = steps[:, 0], steps[:, 1]
@@ -177,11 +183,17 @@ class _Group:
         bad = wild(delta) | ~np.isfinite(worst)
         # with the balances open the energy says little of T, and may even fall with it
         blind = bad | ~np.isfinite(tau) | ~(slope > 0.0)
-        most = _MAX_STEP_T / np.maximum(worst, 1.0)
+        most = at.reach / np.maximum(worst, 1.0)
         tau = np.where(blind, 0.0, np.clip(tau, -most, most))
+        # a step back shows that the last one went too far
+        turned = (tau * at.last < 0.0) & (np.abs(tau) > 0.7 * np.abs(at.last))
+        turned &= np.abs(at.last) > _LARGE
+        tau = np.where(turned, np.clip(tau, -0.5 * np.abs(at.last), 0.5 * np.abs(at.last)), tau)
+        at.reach = np.where(turned, np.abs(tau), np.minimum(2.0 * at.reach, _MAX_STEP_T))
+        at.last = tau
         step = np.where(bad, 0.0, delta + answer * tau)
         if vessel is not None:
-            step[-1] /= at.w  # densities change by a factor of ten at most
+            # densities change by a factor of ten at most
             fall = np.maximum(np.maximum(-step[-1], step[-1] / 9.0) / 0.9, 1.0)
             step, tau = step / fall, tau / fall
         largest = np.abs(step).max(axis=0)
@@ -263,15 +275,21 @@ class _Group:
 
 @dataclass
 class _At:
-    """The cases that go on, and where they are; `log_a` is (components, cases)."""
+    """The cases that go on, and where they are; `log_a` is (components, cases).
+
+    The `last` step in ln T and the `reach` of the next one are kept beside.
+    """
 
     index: Indices
     T: Array
     nu: Array
     w: Array
+    last: Array
+    reach: Array
     log_a: Array
 
     def keep(self, going: Flags) -> None:
         """Drop the others."""
         self.index, self.T, self.nu = self.index[going], self.T[going], self.nu[going]
         self.w, self.log_a = self.w[going], self.log_a[:, going]
+        self.last, self.reach = self.last[going], self.reach[going]

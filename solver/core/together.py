@@ -218,39 +218,34 @@ class _Run:
 
         False where even the first case cannot be settled.
         """
-        everyone = np.arange(len(self.which))
-        minima, ladder = self.minima, np.array(_LADDER)
-        values = np.full((len(ladder), len(everyone)), np.nan)
-        kept: list[tuple[Indices, Array, Array]] = []
-        near = np.zeros(len(everyone), dtype=np.intp)
-        for step, T in enumerate(ladder):
-            self.T = np.full(len(everyone), T)
-            cases = self.cases()
-            if step == 0:
-                settle_one(cases, 0, minima)
-                if not minima.found[0]:
-                    return False
-                minima.found[0] = False
-            to_vertices(cases, everyone, minima, near)
-            near = everyone
-            values[step] = self._vertex_values(cases)
-            kept.append((minima.of.copy(), minima.log_a.copy(), minima.nu.copy()))
+        count, steps = len(self.which), len(_LADDER)
+        everyone, ladder = np.arange(count), np.array(_LADDER)
+        rungs = _Run(
+            self.mixture, self.feed, self.search, self.out,
+            np.tile(self.which, steps), np.repeat(ladder, count),
+        )  # fmt: skip
+        cases, minima = rungs.cases(), rungs.minima
+        minima.sets = self.minima.sets
+        settle_one(cases, 0, minima)
+        if not minima.found[0]:
+            return False
+        to_vertices(cases, np.arange(len(cases)), minima, np.zeros(len(cases), dtype=np.intp))
+        values = rungs.vertex_values(cases).reshape(steps, count)
         wanted = self.search.values[self.which]
         rising = np.maximum.accumulate(np.nan_to_num(values, nan=-np.inf), axis=0)
-        upper = np.clip((rising < wanted).sum(axis=0), 1, len(ladder) - 1)
+        upper = np.clip((rising < wanted).sum(axis=0), 1, steps - 1)
         low, high = values[upper - 1, everyone], values[upper, everyone]
         with np.errstate(all="ignore"):
             share = np.clip(np.nan_to_num((wanted - low) / (high - low), nan=0.5), -0.4, 1.6)
         first = ladder[upper - 1] + share * (ladder[upper] - ladder[upper - 1])
         self.T = np.clip(first, max(self.search.T_low, 200.0), self.search.T_high)
         nearest = np.abs(np.log(self.T / ladder[:, None])).argmin(axis=0)
-        for step, (of, log_a, nu) in enumerate(kept):
-            rows = nearest == step
-            minima.of[rows], minima.log_a[rows], minima.nu[rows] = of[rows], log_a[rows], nu[rows]
-        gather(self.cases(), np.flatnonzero(minima.of >= 0), minima)
+        self.minima = minima.part(nearest * count + everyone)
+        self.minima.found[:] = False
+        gather(self.cases(), np.flatnonzero(self.minima.of >= 0), self.minima)
         return True
 
-    def _vertex_values(self, cases: Cases) -> Array:
+    def vertex_values(self, cases: Cases) -> Array:
         """The variable searched, at the vertices (cases,)."""
         minima, mixture = self.minima, self.mixture
         n = np.zeros(cases.c.shape)

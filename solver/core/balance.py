@@ -419,9 +419,11 @@ class State:
         if self.vessel is not None:
             self.w += move[-1]
         self.n = bounded_exp(self.log_n)
-        if self.vessel is not None:
-            return np.zeros(len(size), dtype=bool)
         certain: NDArray[np.bool_] = self.going & (size <= _CERTAIN) & ~back
+        if self.vessel is not None:
+            # where little room is left to the gas, small steps say less
+            roomy = self.vessel.left > 0.5 * np.exp(self.nu) * self.vessel.unit
+            certain &= roomy & (np.abs(move[-1]) <= _CERTAIN * self.w)
         self.settled = self.settled | certain
         return certain
 

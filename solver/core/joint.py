@@ -30,8 +30,8 @@ _MAX_ITERATIONS = 25
 _MAX_STEP_T, _LARGE = 0.4, 0.15  # of ln T
 _MAX_STEP = 30.0  # of a component's ln activity
 _CLOSED = 1e-13
-_STRAGGLERS, _FEW = 0.05, 4
-_TOGETHER = 9
+_STRAGGLERS, _FEW = 0.1, 4
+_TOGETHER = 7
 
 
 @dataclass
@@ -126,8 +126,14 @@ class _Group:
 
     def iterate(self, out: Joint, some: Indices) -> None:
         """Newton's method on the cases `some` of `out`."""
+        search, everyone = self.search, np.arange(len(some))
         at = _At(
-            index=np.arange(len(some)),
+            index=everyone,
+            search=search,
+            b_up=np.maximum(-self.b, 0.0),
+            b_down=np.maximum(self.b, 0.0),
+            b_phases=self.b_phases,
+            room=self.room,
             T=out.T[some],
             nu=out.nu[some],
             w=np.zeros(len(some)),
@@ -138,8 +144,8 @@ class _Group:
         for iteration in range(_MAX_ITERATIONS):
             with np.errstate(all="ignore"):  # infinities are looked for, and given up
                 closed, going = self._step(at)
-            if not going.all():
-                ended = ~going
+            ended = ~going
+            if ended.any():
                 target = some[at.index[ended]]
                 out.T[target], out.nu[target] = at.T[ended], at.nu[ended]
                 out.log_a[np.ix_(target, self.rows)] = at.log_a[:, ended].T
@@ -152,30 +158,30 @@ class _Group:
 
     def _step(self, at: _At) -> tuple[Flags, Flags]:
         """One step of all cases that go on; which are closed by it, and which go on."""
-        search, system, m = self.search, self.system, len(self.rows)
-        p = None if search.p is None else search.p[at.index]
-        formed = self.formation.at(at.T, p)
+        search, system, m = at.search, self.system, len(self.rows)
+        formed = self.formation.at(at.T, search.p)
         if search.V is not None and not self.shares:
-            at.nu = np.log(P0 * search.V[at.index] / (R * at.T))
+            at.nu = np.log(P0 * search.V / (R * at.T))
         log_n = at.log_a.T @ system.reactions.T
         log_n -= formed.kappa
         log_n += at.nu[:, None]
         vessel = self._vessel(at, log_n)
         n = bounded_exp(log_n)
-        b = self.b[:, at.index]
-        now = residuals(system, n, at.nu, at.w, np.maximum(-b, 0.0), np.maximum(b, 0.0), vessel)
-        F_T, heat = self._by_log_T(formed, n, now, at.nu, vessel)
-        energy, by_n, by_unknowns, by_T = self._energy(formed, n, log_n, now.N, at, p)
+        now = residuals(system, n, at.nu, at.w, at.b_up, at.b_down, vessel)
+        sides = np.empty((len(now.F), 2, len(n)))
+        sides[:, 0] = now.F
+        heat = self._by_log_T(formed, n, now, at.nu, vessel, sides[:, 1])
+        energy, by_n, by_unknowns, by_T = self._energy(formed, n, log_n, now.N, at)
         if vessel is not None:  # the density by its logarithm
             now.J[:, -1] *= at.w
             by_unknowns[-1] *= at.w
-        off = energy - search.values[at.index] / R
-        steps = newton_steps(now.J, np.stack([now.F, F_T], axis=1))
+        off = energy - search.values / R
+        steps = newton_steps(now.J, sides)
         delta, answer = steps[:, 0], steps[:, 1]
         slope = (by_unknowns * answer).sum(axis=0) + by_T
         slope += np.einsum("ij,ij->i", by_n, heat)
         tau = -(off + (by_unknowns * delta).sum(axis=0)) / slope
-        size = self.b_phases[at.index].sum(axis=1) + now.N
+        size = at.b_phases.sum(axis=1) + now.N
         if search.variable != "S":
             size = size * at.T
         worst = np.abs(now.F).max(axis=0)
@@ -184,14 +190,17 @@ class _Group:
         # with the balances open the energy says little of T, and may even fall with it
         blind = bad | ~np.isfinite(tau) | ~(slope > 0.0)
         most = at.reach / np.maximum(worst, 1.0)
-        tau = np.where(blind, 0.0, np.clip(tau, -most, most))
+        tau = np.where(blind, 0.0, np.minimum(np.maximum(tau, -most), most))
         # a step back shows that the last one went too far
         turned = (tau * at.last < 0.0) & (np.abs(tau) > 0.7 * np.abs(at.last))
         turned &= np.abs(at.last) > _LARGE
-        tau = np.where(turned, np.clip(tau, -0.5 * np.abs(at.last), 0.5 * np.abs(at.last)), tau)
+        if turned.any():
+            tau = np.where(turned, -0.5 * at.last, tau)
         at.reach = np.where(turned, np.abs(tau), np.minimum(2.0 * at.reach, _MAX_STEP_T))
         at.last = tau
-        step = np.where(bad, 0.0, delta + answer * tau)
+        step = delta + answer * tau
+        if bad.any():
+            step[:, bad] = 0.0
         if vessel is not None:
             # densities change by a factor of ten at most
             fall = np.maximum(np.maximum(-step[-1], step[-1] / 9.0) / 0.9, 1.0)
@@ -206,24 +215,30 @@ class _Group:
             at.nu = at.nu + step[m]
         if vessel is not None:
             at.w = at.w * (1.0 + step[-1])
-        at.T = np.clip(at.T * np.exp(tau * damp), search.T_low, search.T_high)
+        at.T = np.minimum(np.maximum(at.T * np.exp(tau * damp), search.T_low), search.T_high)
         return done | certain, ~(done | certain | bad)
 
     def _vessel(self, at: _At, log_n: Array) -> Vessel | None:
         """The vessels, where condensed phases share them; what their pressure adds to ln n."""
         if not self.shares:
             return None
-        assert self.search.V is not None
+        assert at.search.V is not None
         unit = R * at.T / P0
         if not at.w.any():
             at.w = np.exp(log_n).sum(axis=1) * np.exp(-at.nu) / unit
         log_n += (at.w - 1.0 / unit)[:, None] * self.swelling
-        return Vessel(self.search.V[at.index] - self.room[at.index], unit, at.w)
+        return Vessel(at.search.V - at.room, unit, at.w)
 
     def _by_log_T(
-        self, formed: Formed, n: Array, now: Residuals, nu: Array, vessel: Vessel | None
-    ) -> tuple[Array, Array]:
-        """Derivatives by ln T of the residuals (unknowns, cases) and of ln n (cases, gas)."""
+        self,
+        formed: Formed,
+        n: Array,
+        now: Residuals,
+        nu: Array,
+        vessel: Vessel | None,
+        F_T: Array,
+    ) -> Array:
+        """Derivatives by ln T of ln n (cases, gas), and into F_T (unknowns, cases) of F."""
         rows, extra = self.system.rows, self.system.extra
         heat = formed.heat
         if extra == 0:
@@ -231,20 +246,19 @@ class _Group:
         if vessel is not None:
             heat = heat + self.swelling / vessel.unit[:, None]
         sums = self.sides @ (n * heat).T
-        F_T = np.empty(now.F.shape)
         F_T[:rows] = sums[:rows] / now.P - sums[rows:-1] / now.M
         if extra:
             F_T[-1] = sums[-1] / now.N
         if vessel is not None:
             F_T[rows - 1] -= np.exp(nu) * vessel.unit / now.M[-1]
             F_T[-1] -= 1.0
-        return F_T, heat
+        return heat
 
     def _energy(
-        self, formed: Formed, n: Array, log_n: Array, N: Array, at: _At, p: Array | None
+        self, formed: Formed, n: Array, log_n: Array, N: Array, at: _At
     ) -> tuple[Array, Array, Array, Array]:
         """The variable over R, and its derivatives by ln n, by the unknowns and by ln T."""
-        b, T, effect = self.b_phases[at.index], at.T, self.system.effect
+        b, T, p, effect = at.b_phases, at.T, at.search.p, self.system.effect
         cp = np.einsum("ij,ij->i", n, formed.cp) + np.einsum("ij,ij->i", b, formed.phase_cp)
         held = np.einsum("ij,ij->i", b, formed.phase_own)
         if self.search.variable == "S":
@@ -269,7 +283,7 @@ class _Group:
         if self.swelling.any():
             own -= pressing[:, None] * self.swelling
         by_n = n * own
-        energy = by_n.sum(axis=1) + T * held + self.room[at.index] * pressing
+        energy = by_n.sum(axis=1) + T * held + at.room * pressing
         return energy, by_n, effect.T @ by_n.T, T * cp
 
 
@@ -281,6 +295,11 @@ class _At:
     """
 
     index: Indices
+    search: Searches
+    b_up: Array
+    b_down: Array
+    b_phases: Array
+    room: Array
     T: Array
     nu: Array
     w: Array
@@ -290,6 +309,8 @@ class _At:
 
     def keep(self, going: Flags) -> None:
         """Drop the others."""
-        self.index, self.T, self.nu = self.index[going], self.T[going], self.nu[going]
-        self.w, self.log_a = self.w[going], self.log_a[:, going]
-        self.last, self.reach = self.last[going], self.reach[going]
+        self.search = self.search.of(np.flatnonzero(going))
+        for name in ("index", "b_phases", "room", "T", "nu", "w", "last", "reach"):
+            setattr(self, name, getattr(self, name)[going])
+        for name in ("b_up", "b_down", "log_a"):
+            setattr(self, name, getattr(self, name)[:, going])

@@ -13,6 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from solver.core.basis import Basis
+from solver.core.columns import run_of
 from solver.core.mixture import P0, Mixture, R
 from solver.core.thermo import powers_of
 
@@ -80,7 +81,7 @@ class Formation:
         else:
             parts = np.empty((len(T), self._cuts[-1] + len(self._phases)))
             for interval in np.unique(intervals):
-                rows = intervals == interval
+                rows = run_of(np.flatnonzero(intervals == interval))
                 parts[rows] = powers[rows] @ self._table(int(interval))
         a, b, c, d, e = self._cuts.tolist()
         kappa = parts[:, :a]

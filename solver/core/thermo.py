@@ -8,6 +8,8 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
+from solver.core.columns import run_of
+
 if TYPE_CHECKING:
     from species_db import Species
 
@@ -80,7 +82,7 @@ class ThermoTable:
             return [powers @ tables[k] for k in which]
         out = [np.empty((T.size, len(self._pieces))) for _ in which]
         for interval in np.unique(intervals):
-            rows = intervals == interval
+            rows = run_of(np.flatnonzero(intervals == interval))
             tables, here = self.table(int(interval)), powers[rows]
             for part, k in zip(out, which, strict=True):
                 part[rows] = here @ tables[k]

@@ -25,6 +25,7 @@ TRACE_LIMIT = 1e-9
 ENERGY_LIMIT = 1e-10
 GAP_LIMIT = 1e-9
 VOLUME_LIMIT = 1e-9
+_LEAST = 1e-300  # mol
 
 MODEL = (
     "Ideal gas mixture; each condensed species a pure phase of constant molar volume v, "
@@ -152,15 +153,19 @@ def optimality_gap(
     gap : ndarray, shape (cases,)
     force : ndarray, shape (cases, species)
     """
-    is_gas, cases = mixture.is_gas, len(T)
-    force = potentials @ mixture.A.T - g - mixture.volume * ((p - P0) / (R * T))[:, None]
+    is_gas, columns, cases = mixture.is_gas, mixture.gas_columns, len(T)
+    force = potentials @ mixture.A.T
+    force -= g
+    if not is_gas.all():
+        force -= mixture.volume * ((p - P0) / (R * T))[:, None]
     atoms = mixture.A @ mixture.atoms
     with np.errstate(divide="ignore"):
         log_p = np.log(p / P0)
     log_sum = np.full(cases, -np.inf)
     if is_gas.any():
-        top = force[:, is_gas].max(axis=1)
-        log_sum = top + np.log(np.exp(force[:, is_gas] - top[:, None]).sum(axis=1))
+        top = force[:, columns].max(axis=1)
+        shares = force[:, columns] - top[:, None]
+        log_sum = top + np.log(np.exp(shares, out=shares).sum(axis=1))
     # move the potentials down until every condition holds: the bound is then rigorous
     shift = np.zeros(cases)
     if not is_gas.all():
@@ -171,13 +176,13 @@ def optimality_gap(
         vessel = np.maximum(P0 * np.exp(log_sum) - p, 0.0) * V / (R * T)
     elif is_gas.any():
         shift = np.maximum(shift, (log_sum - log_p) / min(float(atoms[is_gas].min()), 1.0))
-    force[:, is_gas] -= np.where(np.isfinite(log_p), log_p, 0.0)[:, None]
-    gas = n[:, is_gas]
-    N = gas.sum(axis=1, keepdims=True)
-    with np.errstate(divide="ignore", invalid="ignore"):
-        mixing = np.where(gas > 0.0, np.log(gas / N), 0.0)
+    force[:, columns] -= np.where(np.isfinite(log_p), log_p, 0.0)[:, None]
+    gas = n[:, columns]
+    N = np.maximum(gas.sum(axis=1, keepdims=True), _LEAST)
+    shares = np.maximum(gas, _LEAST)  # what is not there has a logarithm of no account
+    shares /= N
     excess = -force
-    excess[:, is_gas] += mixing
-    gap = (n * excess).sum(axis=1) + ((n @ mixture.A - b) * potentials).sum(axis=1)
+    excess[:, columns] += np.log(shares, out=shares)
+    gap = np.einsum("ij,ij->i", n, excess) + ((n @ mixture.A - b) * potentials).sum(axis=1)
     gap += shift * (b @ mixture.atoms) + vessel
     return gap / n.sum(axis=1), force

@@ -7,6 +7,7 @@ from types import MappingProxyType
 import numpy as np
 from numpy.typing import NDArray
 
+from solver.core.columns import run_of
 from solver.endstates import EndStates
 from solver.posed import Posed
 
@@ -53,7 +54,7 @@ class Results:
 
     def _by_candidate(self, posed: Posed, n: Array) -> Array:
         out = np.zeros((len(n), self.amounts.shape[1]))
-        out[:, posed.place] = n
+        out[:, run_of(posed.place)] = n
         for first, second in posed.mixture.twins:  # an inert part adds to its species
             out[:, posed.place[first]] = n[:, first] + n[:, second]
         return out

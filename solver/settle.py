@@ -12,9 +12,10 @@ from numpy.typing import NDArray
 
 import species_db
 from solver.core.cases import Feed
+from solver.core.direct import seek_temperature
 from solver.core.minimise import NotHeld, Unsettled, check_room
 from solver.core.mixture import Held, Mixture, R
-from solver.core.temperature import OutOfReach, Point, Search, find_temperature, point_at
+from solver.core.temperature import OutOfReach, Point, Search, point_at
 from solver.core.vessel import TooSmall
 from solver.endstate import PRESENT, EndState
 from solver.errors import InputError, NoEndState, NotProven, SettleError
@@ -243,7 +244,7 @@ def _find(mixture: Mixture, feed: Feed, fixed: Fixed, scale: float) -> Point:
     if pair.searched is None:
         return point_at(mixture, feed, Held(fixed.values[0], p=p, V=V), None, None)
     search = Search(pair.searched, fixed.values[0] * scale, p, V, T_LOWEST, T_HIGHEST)
-    return find_temperature(mixture, feed, search)
+    return seek_temperature(mixture, feed, search)
 
 
 def _costs(
@@ -289,7 +290,7 @@ def _end_state(
         n[None, :],
         feed.totals,
         point.potentials[None, :],
-        mixture.thermo.over(np.array([T]))[0] + mixture.shifted(np.array([T])),
+        mixture.thermo.gibbs(np.array([T])) + mixture.shifted(np.array([T])),
         np.array([T]),
         np.array([p]),
         V,

@@ -11,6 +11,7 @@ from numpy.typing import ArrayLike, NDArray
 from solver.core.batch import minimise_many
 from solver.core.batch_temperature import find_temperatures
 from solver.core.cases import Cases, Feed
+from solver.core.columns import rows_of
 from solver.core.minimise import CRUSHING, check_room
 from solver.core.mixture import Mixture, R
 from solver.core.searches import Found, Searches
@@ -244,12 +245,14 @@ def _settle_chunk(
     for i, error in found.why.items():
         pair_values = (float(first[i]), float(second[i]))
         why[int(rows[i])] = str(explained(mixture, pair, pair_values, error, float(scale[i])))
-    ok = found.found
-    some = np.flatnonzero(ok)
+    some = np.flatnonzero(found.found)
     rows, first, values, scale = rows[some], first[some], values[some], scale[some]
-    feed, T, p, n = feed.of(some), found.T[some], found.p[some], found.n[some]
+    all_or_some = rows_of(some, len(found.found))
+    feed, T, p, n = feed.of(some), found.T[some], found.p[some], found.n[all_or_some]
     V = None if V is None else V[some]
-    g = mixture.thermo.over(T)[0] + mixture.shifted(T)
+    g = mixture.thermo.gibbs(T)
+    if mixture.shifts:
+        g = g + mixture.shifted(T)
     closure, trace = element_residuals(mixture, n, feed)
     gap, _ = optimality_gap(mixture, n, feed.totals, found.potentials[some], g, T, p, V)
     energy = np.zeros(len(some))
@@ -272,7 +275,8 @@ def _settle_chunk(
     out.values["element_residual"][good] = closure[ok]
     for name, function in found.functions.items():
         out.values[name][good] = function[some][ok] / scale[ok]
-    out.put_amounts(good, posed, n[ok] / scale[ok][:, None])
+    kept = rows_of(np.flatnonzero(ok), len(ok))
+    out.put_amounts(good, posed, n[kept] / scale[kept, None])
 
 
 def _check_rooms(mixture: Mixture, feed: Feed, found: Found, V: Array) -> None:

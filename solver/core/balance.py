@@ -27,10 +27,12 @@ _MAX_STEP = 300.0  # largest change of a component's ln activity in one step
 _CLOSED = 2e-14
 _EXP_LIMIT = 690.0
 _FAINT = 1e-250
+_CASES_FIRST = ("n", "log_n")  # of the arrays of a State
 _CERTAIN = 3e-9  # a last step this small leaves an error of its square
 _STALE = 14  # steps forward without halving the sum of squares
 # of many cases, the last few are left: they get a nearer start from their neighbours
 _TOGETHER, _STRAGGLERS = 7, 0.08
+_NEAR = 0.1  # residual of a start worth keeping
 _PATIENCE = 6  # iterations that a gas may be larger than its feed
 
 
@@ -57,7 +59,12 @@ class GasSystem:
     swelling: Array
     effect: Array
     weights: Array
-    """Columns that turn amounts into all sums a Newton step needs, one matrix product."""
+    """Rows that turn amounts into all sums a Newton step needs, one matrix product."""
+
+    @property
+    def rows(self) -> int:
+        """Balances: one for each component, and one for the volume of a shared vessel."""
+        return int(self.reactions.shape[1]) + (1 if self.extra == 2 else 0)
 
     @classmethod
     def of(cls, reactions: Array, holds_pressure: bool, swelling: Array | None = None) -> GasSystem:
@@ -75,7 +82,8 @@ class GasSystem:
         parts = [up, down, slopes_up, slopes_down, effect, np.ones((species, 1))]
         if swelling is None:
             swelling = np.zeros(species)
-        return cls(reactions, extra, swelling, effect, np.concatenate(parts, axis=1))
+        weights = np.ascontiguousarray(np.concatenate(parts, axis=1).T)
+        return cls(reactions, extra, swelling, effect, weights)
 
 
 @dataclass(frozen=True)
@@ -118,7 +126,7 @@ class GasSolution:
 
     def put(self, index: NDArray[np.intp], state: State) -> None:
         """Fill in the cases that were iterated on."""
-        self.n[index], self.log_a[index] = state.n, state.log_a
+        self.n[index], self.log_a[index] = state.n, state.log_a.T
         self.nu[index], self.w[index] = state.nu, state.w
 
 
@@ -184,8 +192,115 @@ def _iterate(state: State, cases: int) -> GasSolution:
     return whole
 
 
+@dataclass(frozen=True)
+class Residuals:
+    """How far balances are from being met. The cases come last: short sums then run fast.
+
+    Attributes
+    ----------
+    F : ndarray, shape (unknowns, cases)
+        Logarithm of the ratio of the two sides.
+    J : ndarray, shape (unknowns, unknowns, cases)
+        Slopes.
+    P, M : ndarray, shape (balances, cases)
+        Positive and negative terms.
+    N : ndarray, shape (cases,)
+        Gas amount.
+    """
+
+    F: Array
+    J: Array
+    P: Array
+    M: Array
+    N: Array
+
+
+def residuals(
+    system: GasSystem,
+    n: Array,
+    nu: Array,
+    w: Array,
+    b_up: Array,
+    b_down: Array,
+    vessel: Vessel | None,
+) -> Residuals:
+    """Evaluate the balances.
+
+    Parameters
+    ----------
+    n : ndarray, shape (cases, gas species)
+    nu, w : ndarray, shape (cases,)
+    b_up, b_down : ndarray, shape (gas components, cases)
+        What the component amounts add to the positive and the negative terms.
+    vessel : Vessel, optional
+        Where condensed phases share the volume.
+    """
+    rows, m, count = system.rows, len(b_up), len(n)
+    unknowns = m + system.extra
+    cut1, cut2 = 2 * rows, 2 * rows + rows * unknowns
+    cut3 = cut2 + rows * unknowns
+    sums = system.weights @ n.T
+    P, M, N = sums[:rows], sums[rows:cut1], sums[-1]
+    P[:m] += b_up
+    M[:m] += b_down
+    J = np.empty((unknowns, unknowns, count))
+    F = np.empty((unknowns, count))
+    if vessel is not None:
+        free = np.exp(nu) * vessel.unit
+        P[m] += np.maximum(vessel.left, 0.0)
+        M[m] += np.maximum(-vessel.left, 0.0) + free
+    np.divide(sums[cut1:cut2].reshape(rows, unknowns, count), P[:, None], out=J[:rows])
+    J[:rows] -= sums[cut2:cut3].reshape(rows, unknowns, count) / M[:, None]
+    F[:rows] = np.log(P / M)
+    if system.extra:
+        F[-1] = np.log(N) - nu
+        J[-1] = sums[cut3:-1] / N
+        J[-1, m] -= 1.0
+    if vessel is not None:
+        J[m, m] -= free / M[m]
+        F[-1] -= np.log(w * vessel.unit)
+        J[-1, -1] -= 1.0 / w
+    return Residuals(F, J, P, M, N)
+
+
+def nearer_start(
+    system: GasSystem, kappa: Array, b: Array, log_a: Array, nu: Array, given: Array, vessel: Vessel
+) -> tuple[Array, Vessel]:
+    """The size and density of a neighbour's gas, where its start all but meets the balances.
+
+    Parameters
+    ----------
+    kappa, b, log_a : ndarray
+        As for `solve_balances`.
+    nu : ndarray, shape (cases,)
+        ln of p0 V/RT as if the condensed phases took no room: the start from afar.
+    given : ndarray, shape (cases,)
+        That of the neighbour, or what is no such thing.
+    """
+    if not np.isfinite(given).all() or np.abs(given).max(initial=0.0) > _EXP_LIMIT:
+        return nu, vessel
+    with np.errstate(all="ignore"):
+        log_n = log_a @ system.reactions.T - kappa + given[:, None]
+        w = bounded_exp(log_n).sum(axis=1) * np.exp(-given) / vessel.unit
+        log_n += (w - 1.0 / vessel.unit)[:, None] * system.swelling
+        up, down = np.maximum(-b.T, 0.0), np.maximum(b.T, 0.0)
+        F = residuals(system, bounded_exp(log_n), given, w, up, down, vessel).F
+        near = np.abs(F).max(axis=0) < _NEAR
+    w = np.where(near, w, vessel.w)
+    return np.where(near, given, nu), Vessel(vessel.left, vessel.unit, w)
+
+
+def bounded_exp(log_n: Array) -> Array:
+    """Amounts from their logarithms, kept inside the range of floating point."""
+    n = np.clip(log_n, -_EXP_LIMIT, _EXP_LIMIT)
+    return np.exp(n, out=n)
+
+
 class State:
-    """Unknowns, residuals and slopes of the cases that are still being iterated."""
+    """Unknowns, residuals and slopes of the cases that are still being iterated.
+
+    But for the amounts, the cases come last.
+    """
 
     def __init__(
         self,
@@ -198,63 +313,40 @@ class State:
         vessel: Vessel | None,
     ) -> None:
         cases, m = b.shape
-        self.system, self.vessel, self.b, self.nu_limit = system, vessel, b, nu_limit
-        self.m, self.rows = m, m + (1 if vessel is not None else 0)
-        self.unknowns = m + system.extra
-        self.b_up, self.b_down = np.maximum(-b, 0.0), np.maximum(b, 0.0)
-        self.log_a, self.nu = log_a.copy(), nu.copy()
+        self.system, self.vessel, self.b, self.nu_limit = system, vessel, b.T, nu_limit
+        self.m, self.rows, self.unknowns = m, system.rows, m + system.extra
+        self.b_up, self.b_down = np.maximum(-self.b, 0.0), np.maximum(self.b, 0.0)
+        self.log_a, self.nu = log_a.T.copy(), nu.copy()
         self.w = vessel.w.copy() if vessel is not None else np.zeros(cases)
         self.log_n = log_a @ system.reactions.T - kappa + nu[:, None]
         if vessel is not None:
             self.log_n += (self.w - 1.0 / vessel.unit)[:, None] * system.swelling
-        self.n = np.exp(np.clip(self.log_n, -_EXP_LIMIT, _EXP_LIMIT))
+        self.n = bounded_exp(self.log_n)
         self.last = np.full(cases, np.inf)
         self.merit_last = np.full(cases, np.inf)
         self.too_large = np.zeros(cases, dtype=int)
         self.best = np.full(cases, np.inf)
         self.stale = np.zeros(cases, dtype=int)
-        self.step = np.zeros((cases, self.unknowns))
+        self.step = np.zeros((self.unknowns, cases))
         self.back = np.zeros(cases, dtype=bool)
         self.going = np.ones(cases, dtype=bool)
-        self.J = self.F = np.zeros((cases, 0))
+        self.J = self.F = np.zeros((0, cases))
         self.settled = np.zeros(cases, dtype=bool)  # by a step small enough
         self.many = cases > 1
         self.lost = np.zeros(cases, dtype=bool)
 
     def evaluate(self) -> tuple[NDArray[np.bool_], NDArray[np.bool_]]:
         """Residuals F and slopes J at the present amounts; which cases are closed or lost."""
-        m, rows, unknowns, vessel = self.m, self.rows, self.unknowns, self.vessel
-        cut1, cut2 = 2 * rows, 2 * rows + rows * unknowns
-        cut3 = cut2 + rows * unknowns
-        sums = self.n @ self.system.weights
-        P, M = sums[:, :rows], sums[:, rows:cut1]
-        P[:, :m] += self.b_up
-        M[:, :m] += self.b_down
-        J = np.empty((len(P), unknowns, unknowns))
-        F = np.empty((len(P), unknowns))
-        if vessel is not None:
-            free = np.exp(self.nu) * vessel.unit
-            P[:, m] += np.maximum(vessel.left, 0.0)
-            M[:, m] += np.maximum(-vessel.left, 0.0) + free
-        J[:, :rows] = sums[:, cut1:cut2].reshape(-1, rows, unknowns) / P[:, :, None]
-        J[:, :rows] -= sums[:, cut2:cut3].reshape(-1, rows, unknowns) / M[:, :, None]
-        F[:, :rows] = np.log(P / M)
+        now = residuals(self.system, self.n, self.nu, self.w, self.b_up, self.b_down, self.vessel)
+        F, J = now.F, now.J
         if self.system.extra:
-            total = sums[:, -1:]
-            F[:, -1] = np.log(total[:, 0]) - self.nu
-            J[:, -1] = sums[:, cut3:-1] / total
-            J[:, -1, m] -= 1.0
             grown = self.nu > self.nu_limit
             self.too_large = (self.too_large + 1) * grown
-        if vessel is not None:
-            J[:, m, m] -= free / M[:, m]
-            F[:, -1] -= np.log(self.w * vessel.unit)
-            J[:, -1, -1] -= 1.0 / self.w
-        else:
-            self._rescale_extremes(P, M, J, F)
-        worst = np.abs(F).max(axis=1)
+        if self.vessel is None:
+            self._rescale_extremes(now)
+        worst = np.abs(F).max(axis=0)
         closed = self.settled | (worst <= _CLOSED) | ((worst <= 1e-11) & (worst >= 0.5 * self.last))
-        merit = np.einsum("ij,ij->i", F, F)
+        merit = (F * F).sum(axis=0)
         far = worst > 1e-8
         self.back = (merit > self.merit_last) & far
         better = merit < 0.5 * self.best
@@ -272,20 +364,19 @@ class State:
         self.J, self.F = J, F
         return closed, failed
 
-    def _rescale_extremes(self, P: Array, M: Array, J: Array, F: Array) -> None:
-        larger = np.maximum(P, M)
+    def _rescale_extremes(self, now: Residuals) -> None:
+        larger, F, J = np.maximum(now.P, now.M), now.F, now.J
         plain = self.log_n.max(initial=0.0) <= 300.0 and larger.min(initial=1.0) >= _FAINT
         if plain and np.isfinite(F).all():
             return
         over = self.log_n.max(axis=1) > 300.0
-        beyond = (larger < _FAINT) | over[:, None] | ~np.isfinite(F[:, : self.rows])
+        beyond = (larger < _FAINT) | over | ~np.isfinite(F[: self.rows])
         if self.many:
             # a start so far off is better given up for a nearer one
             self.lost |= over
-            beyond &= ~self.lost[:, None]
+            beyond &= ~self.lost
         if beyond.any():
             rescale(self.system, self.log_n, self.b, self.nu, beyond, J, F)
-        self.J, self.F = J, F
         J[~np.isfinite(J)] = 0.0
 
     def advance(self) -> NDArray[np.bool_]:
@@ -302,33 +393,37 @@ class State:
             if off.any():
                 self.lost |= off & self.many
                 for case in np.flatnonzero(off):
-                    newton[case] = 0.0 if self.many else shortest(self.J[case], self.F[case])
+                    newton[:, case] = (
+                        0.0 if self.many else shortest(self.J[:, :, case], self.F[:, case])
+                    )
         if self.vessel is not None:  # densities change by a factor of ten at most
-            fall = np.maximum(-newton[:, -1], newton[:, -1] / 9.0) / (0.9 * self.w)
-            newton = newton / np.maximum(fall, 1.0)[:, None]
+            fall = np.maximum(-newton[-1], newton[-1] / 9.0) / (0.9 * self.w)
+            newton = newton / np.maximum(fall, 1.0)
         if some_back:
             # worse than before: return three quarters of the way, and try the rest again
-            move = np.where(back[:, None], -0.75 * step, newton)
-            step = np.where(back[:, None], 0.25 * step, newton)
+            move = np.where(back, -0.75 * step, newton)
+            step = np.where(back, 0.25 * step, newton)
         else:
             move = step = newton
-        move[~self.going] = 0.0
-        size = np.abs(move[:, : m + 1]).max(axis=1)
+        move[:, ~self.going] = 0.0
+        size = np.abs(move[: m + 1]).max(axis=0)
         if size.max() > _MAX_STEP:
             damp = np.where(back, 1.0, np.minimum(1.0, _MAX_STEP / np.maximum(size, 1e-300)))
-            move = move * damp[:, None]
-            step = np.where(back[:, None], step, step * damp[:, None])
+            move = move * damp
+            step = np.where(back, step, step * damp)
         self.step = step
-        self.log_a += move[:, :m]
-        self.log_n += move @ self.system.effect.T
+        self.log_a += move[:m]
+        self.log_n += move.T @ self.system.effect.T
         if self.system.extra:
-            self.nu += move[:, m]
+            self.nu += move[m]
         if self.vessel is not None:
-            self.w += move[:, -1]
-        self.n = np.exp(np.clip(self.log_n, -_EXP_LIMIT, _EXP_LIMIT))
-        if self.vessel is not None:
-            return np.zeros(len(size), dtype=bool)
+            self.w += move[-1]
+        self.n = bounded_exp(self.log_n)
         certain: NDArray[np.bool_] = self.going & (size <= _CERTAIN) & ~back
+        if self.vessel is not None:
+            # where little room is left to the gas, small steps say less
+            roomy = self.vessel.left > 0.5 * np.exp(self.nu) * self.vessel.unit
+            certain &= roomy & (np.abs(move[-1]) <= _CERTAIN * self.w)
         self.settled = self.settled | certain
         return certain
 
@@ -338,7 +433,7 @@ class State:
         out.__dict__.update(self.__dict__)
         for name, value in self.__dict__.items():
             if isinstance(value, np.ndarray):
-                setattr(out, name, value[keep])
+                setattr(out, name, value[keep] if name in _CASES_FIRST else value[..., keep])
         if self.vessel is not None:
             vessel = self.vessel
             out.vessel = Vessel(vessel.left[keep], vessel.unit[keep], vessel.w[keep])
@@ -346,4 +441,4 @@ class State:
 
     def solution(self, closed: NDArray[np.bool_], iterations: int) -> GasSolution:
         """What has been reached."""
-        return GasSolution(self.n, self.log_a, self.nu, self.w, closed, iterations)
+        return GasSolution(self.n, self.log_a.T.copy(), self.nu, self.w, closed, iterations)

@@ -16,8 +16,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from solver.core.cases import Cases
+from solver.core.columns import rows_of
+from solver.core.lines import coarseness, weights_between
 from solver.core.minimise import Minimum, NotHeld, Unsettled, minimise
-from solver.core.mixture import Held
+from solver.core.mixture import Held, Mixture
 from solver.core.phaseset import Solved, solve_set
 from solver.core.vertices import walk
 from solver.core.vessel import TooSmall
@@ -27,7 +29,6 @@ Indices = NDArray[np.intp]
 
 _MAX_ROUNDS = 12
 _SEEDS = 1
-_COARSE = 8  # every so many cases of a line are settled first
 _AT_ONCE = 3
 _LARGE, _SCARCE = 20, -14.0  # cases of a group; ln activity of a component
 _NEAR = 0.3  # distance up to which a neighbour's activities are the better start
@@ -65,12 +66,10 @@ class Minima:
     nu: Array
 
     @classmethod
-    def none_of(cls, cases: Cases) -> Minima:
-        """Nothing found yet."""
-        count, species = cases.c.shape
-        mixture = cases.mixture
+    def of_size(cls, mixture: Mixture, count: int) -> Minima:
+        """Nothing found yet, for a number of cases."""
         return cls(
-            n=np.full((count, species), np.nan),
+            n=np.full((count, len(mixture.species)), np.nan),
             potentials=np.full((count, mixture.A.shape[1]), np.nan),
             p=np.full(count, np.nan),
             found=np.zeros(count, dtype=bool),
@@ -89,7 +88,7 @@ class Minima:
 
     def accept(self, which: Indices, solved: Solved, rows: Indices) -> None:
         """Take the solution of some rows of a group as found."""
-        self.n[which] = solved.n[rows]
+        self.n[rows_of(which, len(self.n))] = solved.n[rows_of(rows, len(solved.n))]
         self.potentials[which] = solved.basis.potentials(solved.mu[rows])
         self.p[which] = solved.p[rows]
         self.log_a[which] = solved.log_a[rows]
@@ -104,8 +103,8 @@ class Minima:
         self.of[i] = self.number((present.active, present.members))
         self.found[i] = True
 
-    def part(self, keep: NDArray[np.bool_]) -> Minima:
-        """The minima of some of the cases."""
+    def part(self, keep: NDArray[np.bool_] | Indices) -> Minima:
+        """The minima of some of the cases; the sets are shared."""
         return Minima(
             n=self.n[keep],
             potentials=self.potentials[keep],
@@ -114,9 +113,14 @@ class Minima:
             why={},
             sets=self.sets,
             of=self.of[keep],
-            log_a=self.log_a[keep].copy(),
-            nu=self.nu[keep].copy(),
+            log_a=self.log_a[keep],
+            nu=self.nu[keep],
         )
+
+    def take(self, rows: Indices, part: Minima) -> None:
+        """What has become of some of the cases, as `part` gave them out."""
+        for name in ("n", "potentials", "p", "found", "of", "log_a", "nu"):
+            getattr(self, name)[rows] = getattr(part, name)
 
 
 def minimise_many(cases: Cases, features: Array, start: Minima | None = None) -> Minima:
@@ -130,7 +134,7 @@ def minimise_many(cases: Cases, features: Array, start: Minima | None = None) ->
     start : Minima, optional
         Minima of the same cases at a slightly other temperature.
     """
-    out = Minima.none_of(cases)
+    out = Minima.of_size(cases.mixture, len(cases))
     if start is not None:
         out.sets = list(start.sets)
         known = np.flatnonzero(start.found)
@@ -143,8 +147,12 @@ def minimise_many(cases: Cases, features: Array, start: Minima | None = None) ->
     else:
         for i in spread(features, _SEEDS):
             settle_one(cases, int(i), out)
-        if _is_line(features):  # a coarse pass gives the rest near neighbours
-            _settle_together(cases, np.arange(len(cases))[::_COARSE], features, out)
+        step = coarseness(features)
+        if step:  # a coarse pass gives the rest near neighbours
+            coarse = np.arange(0, len(cases), step)
+            _settle_together(cases, coarse, features, out)
+            between = interpolate(cases, coarse, features, out)
+            _exchange_all(cases, between, out)
     # what a neighbour's start does not reach may be reached from a nearer neighbour
     for _ in range(_MAX_PASSES):
         left = _waiting(out)
@@ -163,14 +171,6 @@ def _waiting(out: Minima) -> Indices:
     waiting = ~out.found
     waiting[list(out.why)] = False
     return np.flatnonzero(waiting)
-
-
-def _is_line(features: Array) -> bool:
-    """Whether cases that follow each other are so near that one's end starts the other."""
-    if len(features) < 4 * _COARSE:
-        return False
-    steps = np.abs(np.diff(features, axis=0)).max(axis=1)
-    return bool(np.median(steps) * _COARSE < _NEAR)
 
 
 def _settle_together(cases: Cases, which: Indices, features: Array, out: Minima) -> None:
@@ -193,6 +193,25 @@ def _settle_together(cases: Cases, which: Indices, features: Array, out: Minima)
         far = to_vertices(cases, far, out, settled[near[~close]])
         gather(cases, far, out)
     _exchange_all(cases, np.concatenate([target, far]), out)
+
+
+def interpolate(cases: Cases, coarse: Indices, features: Array, out: Minima) -> Indices:
+    """Give the cases between settled ones of one set the activities that lie between theirs.
+
+    Returns the cases that have some.
+    """
+    which, nodes, weights = weights_between(features, coarse)
+    near = nodes[np.arange(len(which)), np.abs(weights).argmax(axis=1)]
+    good = out.found[nodes].all(axis=1) & (out.of[nodes] == out.of[near][:, None]).all(axis=1)
+    good &= ~out.found[which]
+    nodes, weights, near = nodes[good], weights[good], near[good]
+    target: Indices = which[good]
+    log_atoms = np.log(cases.atoms)
+    out.of[target] = out.of[near]
+    out.log_a[target] = np.einsum("ij,ijk->ik", weights, out.log_a[nodes])
+    size = out.nu - log_atoms
+    out.nu[target] = (weights * size[nodes]).sum(axis=1) + log_atoms[target]
+    return target
 
 
 def to_vertices(cases: Cases, which: Indices, out: Minima, near: Indices) -> Indices:
@@ -278,7 +297,7 @@ def _place(
                     log_a[:, k] = 0.0
         target = which[rows[some]]
         out.of[target] = out.number((active, chosen))
-        out.log_a[target], out.nu[target] = log_a, nu[some]
+        out.log_a[target], out.nu[target] = log_a, base[some]
         placed.append(target)
     return placed
 
@@ -391,6 +410,9 @@ def _change(
     target = which[rows]
     out.of[target] = out.number((tuple(sorted(active)), members))
     out.log_a[target] = np.maximum(solved.force[np.ix_(rows, np.array(members))], -650.0)
+    if not cases.holds_pressure:
+        out.nu[target] = solved.nu[rows]
+        return [target]
     gas = solved.n[rows][:, cases.gas].sum(axis=1)
     with np.errstate(divide="ignore"):
         out.nu[target] = np.where(gas > 0.0, np.log(gas), np.log(cases.scale[target]) - 30.0)

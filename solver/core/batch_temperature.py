@@ -37,8 +37,7 @@ def find_temperatures(mixture: Mixture, feed: Feed, search: Searches, features: 
     T = np.full(count, 1000.0)
     going = np.arange(count)
     if count > _SETTLED_NEAR:
-        going, first = find_together(mixture, feed, search, features, going, out)
-        T[going] = first
+        going, T = find_together(mixture, feed, search, features, out)
     if going.size > _SETTLED_NEAR:
         going = _newton(mixture, feed, search, features, T, going, out)
     for i in going:

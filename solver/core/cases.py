@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -46,6 +47,8 @@ class Cases:
 
     Attributes
     ----------
+    g : ndarray, shape (cases, species)
+        g/RT at 1 bar.
     c : ndarray, shape (cases, species)
         g/RT at the pressure held, or at 1 bar where the volume is held.
     nu_fixed : ndarray, shape (cases,)
@@ -60,7 +63,7 @@ class Cases:
         self, mixture: Mixture, feed: Feed, T: Array, p: Array | None, V: Array | None
     ) -> None:
         self.mixture, self.feed, self.T, self.p, self.V = mixture, feed, T, p, V
-        self.g, self.h, self.cp = mixture.thermo.over(T)
+        self.g = mixture.thermo.gibbs(T)
         self.gas, self.condensed = mixture.gas, mixture.condensed
         totals = np.abs(feed.totals)
         self.scale = totals.max(axis=1)
@@ -68,12 +71,13 @@ class Cases:
         self.c = self.g + mixture.shifted(T) if mixture.shifts else self.g.copy()
         self.nu_fixed = np.zeros(len(T))
         if p is not None:
-            self.c[:, self.gas] += np.log(p / P0)[:, None]
-            self.c += mixture.volume * ((p - P0) / (R * T))[:, None]
+            self.c[:, mixture.gas_columns] += np.log(p / P0)[:, None]
+            if self.condensed.size:
+                self.c += mixture.volume * ((p - P0) / (R * T))[:, None]
         else:
             assert V is not None
             self.nu_fixed = np.log(P0 * V / (R * T))
-        self.force_tolerance = 6e-14 * (1.0 + np.abs(self.c).max(axis=1))
+        self.force_tolerance = 6e-14 * (1.0 + np.maximum(self.c.max(axis=1), -self.c.min(axis=1)))
 
     def __len__(self) -> int:
         return len(self.T)
@@ -84,10 +88,21 @@ class Cases:
         out.__dict__.update(self.__dict__)
         out.feed = self.feed.of(which)
         for name in ("T", "g", "h", "cp", "c", "scale", "atoms", "nu_fixed", "force_tolerance"):
-            setattr(out, name, getattr(self, name)[which])
+            if name in self.__dict__:  # h and cp may not have been asked for
+                setattr(out, name, getattr(self, name)[which])
         out.p = None if self.p is None else self.p[which]
         out.V = None if self.V is None else self.V[which]
         return out
+
+    @cached_property
+    def h(self) -> Array:
+        """h/RT (cases, species)."""
+        return self.mixture.thermo.enthalpy(self.T)
+
+    @cached_property
+    def cp(self) -> Array:
+        """cp/R (cases, species)."""
+        return self.mixture.thermo.heat_capacity(self.T)
 
     @property
     def holds_pressure(self) -> bool:

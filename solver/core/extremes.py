@@ -18,26 +18,37 @@ _MANY = 24  # cases from which eliminating all of them side by side beats one by
 
 
 def newton_steps(J: Array, F: Array) -> Array:
-    """Newton steps (cases, unknowns); see `shortest` for those that are `wild`."""
-    return _eliminate(J, F) if len(J) >= _MANY else _one_by_one(J, F)
+    """Newton steps, of the shape of F; see `shortest` for those that are `wild`.
+
+    Parameters
+    ----------
+    J : ndarray, shape (unknowns, unknowns, cases)
+    F : ndarray, shape (unknowns, cases) or (unknowns, sides, cases)
+        Several right-hand sides share the elimination.
+    """
+    sides = F if F.ndim == 3 else F[:, None]
+    step = _eliminate(J, sides) if J.shape[2] >= _MANY else _one_by_one(J, sides)
+    return step if F.ndim == 3 else step[:, 0]
 
 
 def wild(step: Array) -> NDArray[np.bool_]:
-    """Steps that the slopes do not determine."""
-    return np.asarray(~(np.abs(step).max(axis=1) < _WILD))
+    """Which steps (unknowns, cases) the slopes do not determine."""
+    return np.asarray(~(np.abs(step).max(axis=0) < _WILD))
 
 
 def shortest(J: Array, F: Array) -> Array:
-    """The shortest of the steps (unknowns,) that solve one case best."""
+    """The shortest of the steps that solve one case best."""
     return np.asarray(-np.linalg.lstsq(J, F, rcond=1e-7)[0])
 
 
 def _one_by_one(J: Array, F: Array) -> Array:
-    ridge = 1e-14 * np.eye(J.shape[1])
+    ridge = 1e-14 * np.eye(len(J))
+    slopes, right = J.transpose(2, 0, 1), F.transpose(2, 0, 1)
     try:
-        return np.asarray(-np.linalg.solve(J + ridge, F[:, :, None])[:, :, 0])
+        step = np.linalg.solve(slopes + ridge, -right)
     except np.linalg.LinAlgError:  # one is singular to the last digit
-        return np.array([shortest(one, right) for one, right in zip(J, F, strict=True)])
+        step = np.array([shortest(one, side) for one, side in zip(slopes, right, strict=True)])
+    return np.asarray(step.transpose(1, 2, 0))
 
 
 def _eliminate(J: Array, F: Array) -> Array:
@@ -46,23 +57,20 @@ def _eliminate(J: Array, F: Array) -> Array:
     The rows are logarithmic balances with positive diagonals, so that exchanges are rarely
     needed; where the residual says otherwise the case is solved by itself.
     """
-    unknowns = J.shape[1]
-    A = np.empty((unknowns, unknowns + 1, len(J)))
-    A[:, :unknowns] = J.transpose(1, 2, 0)
-    A[:, unknowns] = -F.T
+    unknowns = len(J)
+    A = np.concatenate([J, -F], axis=1)
     with np.errstate(all="ignore"):
         for k in range(unknowns):
             A[k, k + 1 :] /= A[k, k]
             if k + 1 < unknowns:
-                A[k + 1 :, k + 1 :] -= A[k + 1 :, k, None] * A[k, None, k + 1 :]
-        for k in range(unknowns - 2, -1, -1):
-            A[k, unknowns] -= (A[k, k + 1 : unknowns] * A[k + 1 :, unknowns]).sum(axis=0)
-        step = np.ascontiguousarray(A[:, unknowns].T)
-        rest = np.abs((J @ step[:, :, None])[:, :, 0] + F).max(axis=1)
-        good = rest <= 1e-9 * np.abs(F).max(axis=1)
-    if not good.all():
-        bad = ~good
-        step[bad] = _one_by_one(J[bad], F[bad])
+                A[k + 1 :, k + 1 :] -= A[k + 1 :, k, None] * A[k, k + 1 :]
+        step = A[:, unknowns:]
+        for k in range(unknowns - 1, 0, -1):
+            step[:k] -= A[:k, k, None] * step[k]
+        rest = np.abs(np.einsum("ijr,jsr->isr", J, step) + F).max(axis=0)
+        bad = ~(rest <= 1e-9 * np.abs(F).max(axis=0)).all(axis=0)
+    if bad.any():
+        step[:, :, bad] = _one_by_one(J[:, :, bad], F[:, :, bad])
     return step
 
 
@@ -83,26 +91,26 @@ def rescale(
     Parameters
     ----------
     log_n : ndarray, shape (cases, gas species)
-    b : ndarray, shape (cases, components)
-    rows : ndarray of bool, shape (cases, components)
-        The balances to rewrite in J and F.
+    b : ndarray, shape (components, cases)
+    rows : ndarray of bool, shape (components, cases)
+        The balances to rewrite in J (unknowns, unknowns, cases) and F (unknowns, cases).
     """
     species, m = system.reactions.shape
     effect = system.effect
-    for case, row in zip(*np.nonzero(rows), strict=True):
+    for row, case in zip(*np.nonzero(rows), strict=True):
         column = system.reactions[:, row]
-        up = _log_sum(log_n[case], column, effect, -b[case, row])
-        down = _log_sum(log_n[case], -column, effect, b[case, row])
+        up = _log_sum(log_n[case], column, effect, -b[row, case])
+        down = _log_sum(log_n[case], -column, effect, b[row, case])
         rest = up[0] - down[0]
         # of amounts that underflow, nine digits are as good as all
-        F[case, row] = 0.0 if max(up[0], down[0]) < _LOG_FAINT and abs(rest) < 1e-9 else rest
-        J[case, row] = up[1] - down[1]
+        F[row, case] = 0.0 if max(up[0], down[0]) < _LOG_FAINT and abs(rest) < 1e-9 else rest
+        J[row, :, case] = up[1] - down[1]
     if system.extra:
-        for case in np.flatnonzero(rows.any(axis=1)):
+        for case in np.flatnonzero(rows.any(axis=0)):
             value, slope = _log_sum(log_n[case], np.ones(species), effect, 0.0)
-            F[case, m] = value - nu[case]
-            J[case, m] = slope
-            J[case, m, m] -= 1.0
+            F[m, case] = value - nu[case]
+            J[m, :, case] = slope
+            J[m, m, case] -= 1.0
 
 
 def _log_sum(

@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from solver.core.basis import CHARGE, Basis, balance_rows, formula_vector, make_basis
+from solver.core.columns import run_of
 from solver.core.thermo import ThermoTable
 
 if TYPE_CHECKING:
@@ -61,6 +62,8 @@ class Mixture:
     atoms: Array
     gas: NDArray[np.intp]
     condensed: NDArray[np.intp]
+    gas_columns: slice | NDArray[np.intp]
+    """The gas species again, as a slice where they stand in one run."""
     rank: int
     """Number of independent balances among the candidates."""
     shifts: tuple[Shift, ...] = ()
@@ -72,12 +75,12 @@ class Mixture:
         """What is added to g/RT of each species (cases, species) by reactions held apart."""
         out = np.zeros((len(T), len(self.species)))
         if self.shifts:
-            at_T = self.thermo.over(T)[0]
+            at_T = self.thermo.gibbs(T)
             numbers = np.array([shift.numbers for shift in self.shifts])  # (reactions, species)
             keys = [shift.key for shift in self.shifts]
             wanted = np.column_stack(
                 [
-                    (self.thermo.over(np.maximum(T + shift.dT, _COLDEST))[0] - at_T) @ shift.numbers
+                    (self.thermo.gibbs(np.maximum(T + shift.dT, _COLDEST)) - at_T) @ shift.numbers
                     for shift in self.shifts
                 ]
             )
@@ -117,6 +120,7 @@ def make_mixture(
         A=A,
         is_gas=is_gas,
         gas=np.flatnonzero(is_gas),
+        gas_columns=run_of(np.flatnonzero(is_gas)),
         condensed=np.flatnonzero(~is_gas),
         rank=int(np.linalg.matrix_rank(A)) if len(species) else 0,
         thermo=ThermoTable(species),
@@ -148,6 +152,7 @@ def mixture_of(species: Sequence[Species], fed: Sequence[Species]) -> Mixture:
     if any(sp.charge for sp in species) and CHARGE not in rows:
         rows[CHARGE] = len(rows)
     held = [sp for sp in species if all(element in rows for element in sp.elements)]
+    held.sort(key=lambda sp: sp.phase != "gas")  # gases in one run: no copies of their columns
     A = np.array([formula_vector(sp, rows) for sp in held]).reshape(-1, len(rows))
     atoms = np.array([charge_weight(held) if name == CHARGE else 1.0 for name in rows])
     mixture = make_mixture(held, rows, A, atoms)

@@ -8,9 +8,10 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from solver.core.balance import GasSystem, Vessel, solve_balances
+from solver.core.balance import GasSystem, Vessel, nearer_start, solve_balances
 from solver.core.basis import Basis, component_amounts
 from solver.core.cases import Cases
+from solver.core.columns import rows_of
 from solver.core.descent import descend
 from solver.core.forced import Sink, combined, infeasible, one_sided
 from solver.core.mixture import P0, R
@@ -116,11 +117,12 @@ def _solve(
     nu: Array,
 ) -> Solved:
     gas, members = cases.gas, list(basis.members)
+    columns = cases.mixture.gas_columns
     taken = set(active)
     gas_rows = [k for k, m in enumerate(members) if m not in taken]
     reactions = basis.reactions[gas]
-    c = cases.c[which]
-    kappa = c[:, gas] - c[:, members] @ reactions.T
+    c = cases.c[rows_of(which, len(cases))]
+    kappa = c[:, columns] - c[:, members] @ reactions.T
     live = np.ones(gas.size, dtype=bool)
     rows = list(gas_rows)
     sinks = one_sided(reactions, b[0], live, rows)
@@ -132,10 +134,10 @@ def _solve(
             result = _solve_gas(cases, which, active, basis, kappa, b, start, nu, live, rows)
     n = np.zeros(c.shape)
     live_gas = gas[live]
-    n[:, live_gas] = result.n
+    n[:, columns if live.all() else live_gas] = result.n
     present = [k for k, m in enumerate(members) if m in taken]
     if present:
-        left = b[:, present] - n[:, gas] @ reactions[:, present]
+        left = b[:, present] - n[:, columns] @ reactions[:, present]
         rounding = (left < 0.0) & (left >= -16.0 * _EPS * np.abs(b[:, present]))
         left[rounding] = 0.0
         n[:, [members[k] for k in present]] = left
@@ -145,13 +147,15 @@ def _solve(
         c = c + cases.mixture.volume * ((finite - P0) / (R * cases.T[which]))[:, None]
     mu = c[:, members] + result.log_a
     sink(c, mu, sinks, basis, live_gas)
-    y = np.zeros(c.shape)
+    y = n
     if not result.closed.all():
+        y = np.zeros(c.shape)
         y[:, live_gas] = result.y
+    force = mu @ basis.reactions.T
     well = np.ones(len(which), dtype=bool)
     if rows:
         own = n[:, [members[k] for k in rows]]
-        built = n[:, gas] @ np.abs(reactions[:, rows]) - own
+        built = n[:, columns] @ np.abs(reactions[:, rows]) - own
         well = np.all(own * _DOMINANCE >= built, axis=1)
     return Solved(
         basis=basis,
@@ -160,7 +164,7 @@ def _solve(
         nu=result.nu,
         p=p,
         mu=mu,
-        force=mu @ basis.reactions.T - c,
+        force=np.subtract(force, c, out=force),
         closed=result.closed & np.isfinite(p),
         y=y,
         well_based=well,
@@ -195,7 +199,8 @@ def _solve_gas(
         empty = np.zeros((count, 0))
         return _GasResult(empty, empty, log_a, nu, np.ones(count, dtype=bool))
     part = basis.reactions[np.ix_(cases.gas[live], np.array(rows, dtype=np.intp))]
-    kappa, b, start = kappa[:, live], b[:, rows], start[:, rows]
+    kappa = kappa if live.all() else kappa[:, live]
+    b, start = b[:, rows], start[:, rows]
     # no gas component is fed: what the gas would be is sought first, at any amount
     homogeneous = cases.holds_pressure and not b.any()
     grows = cases.holds_pressure and not homogeneous
@@ -206,9 +211,11 @@ def _solve_gas(
     elif homogeneous:
         nu = np.zeros(count)
     else:
-        nu = cases.nu_fixed[which]
+        given, nu = nu, cases.nu_fixed[which]
         swelling, vessel = _shared(cases, which, active, basis, live)
     system = GasSystem.of(part, grows, swelling)
+    if vessel is not None:
+        nu, vessel = nearer_start(system, kappa, b, start, nu, given, vessel)
     solution = solve_balances(system, kappa, b, start, nu, limit, vessel)
     if count == 1 and not solution.closed[0] and not infeasible(part, b[0]):
         near, size = descend(part, kappa[0], b[0], start[0], float(nu[0]), grows, float(limit[0]))

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -34,6 +34,20 @@ class Searches:
     V: Array | None
     T_low: float
     T_high: float
+
+    @classmethod
+    def of_one(cls, search: Search) -> Searches:
+        """The search of a single case."""
+        p = None if search.p is None else np.array([search.p])
+        V = None if search.V is None else np.array([search.V])
+        values = np.array([search.value])
+        return cls(search.variable, values, p, V, search.T_low, search.T_high)
+
+    def of(self, which: Indices) -> Searches:
+        """The searches of some of the cases."""
+        p = None if self.p is None else self.p[which]
+        V = None if self.V is None else self.V[which]
+        return replace(self, values=self.values[which], p=p, V=V)
 
     def one(self, i: int) -> Search:
         """The search of one case."""

@@ -8,6 +8,8 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
+from solver.core.columns import run_of
+
 if TYPE_CHECKING:
     from species_db import Species
 
@@ -31,8 +33,8 @@ class ThermoTable:
         self.T_min = np.array([sp.T_min for sp in species])
         self.T_max = np.array([sp.T_max for sp in species])
 
-    def _table(self, interval: int) -> tuple[Array, Array, Array]:
-        """Coefficient matrices (species, powers) of g, h and cp on one interval."""
+    def table(self, interval: int) -> tuple[Array, Array, Array]:
+        """Coefficient matrices (powers, species) of g, h and cp on one interval."""
         if interval not in self._tables:
             T = self._joins[interval - 1] if interval else 0.0
             rows = np.array(
@@ -50,25 +52,47 @@ class ThermoTable:
             self._tables[interval] = (g, h, cp)
         return self._tables[interval]
 
+    def intervals(self, T: Array) -> NDArray[np.intp]:
+        """Number of the interval between joins in which each T (cases,) lies."""
+        return np.searchsorted(self._joins, T, side="right")
+
     def over(self, T: Array) -> tuple[Array, Array, Array]:
         """g/RT, h/RT and cp/R at 1 bar at temperatures T (cases,), each (cases, species)."""
-        intervals = np.searchsorted(self._joins, T, side="right")
-        powers = _powers(T).T
+        g, h, cp = self._evaluated(T, (0, 1, 2))
+        return g, h, cp
+
+    def gibbs(self, T: Array) -> Array:
+        """g/RT at 1 bar at temperatures T (cases,), (cases, species)."""
+        return self._evaluated(T, (0,))[0]
+
+    def enthalpy(self, T: Array) -> Array:
+        """h/RT at temperatures T (cases,), (cases, species)."""
+        return self._evaluated(T, (1,))[0]
+
+    def heat_capacity(self, T: Array) -> Array:
+        """cp/R at temperatures T (cases,), (cases, species)."""
+        return self._evaluated(T, (2,))[0]
+
+    def _evaluated(self, T: Array, which: tuple[int, ...]) -> list[Array]:
+        intervals = self.intervals(T)
+        powers = powers_of(T).T
         first = int(intervals[0]) if T.size else 0
         if np.all(intervals == first):
-            g, h, cp = self._table(first)
-            return powers @ g, powers @ h, powers @ cp
-        shape = (T.size, len(self._pieces))
-        out = (np.empty(shape), np.empty(shape), np.empty(shape))
+            tables = self.table(first)
+            return [powers @ tables[k] for k in which]
+        out = [np.empty((T.size, len(self._pieces))) for _ in which]
         for interval in np.unique(intervals):
-            rows = intervals == interval
-            for part, table in zip(out, self._table(int(interval)), strict=True):
-                part[rows] = powers[rows] @ table
+            rows = run_of(np.flatnonzero(intervals == interval))
+            tables, here = self.table(int(interval)), powers[rows]
+            for part, k in zip(out, which, strict=True):
+                part[rows] = here @ tables[k]
         return out
 
 
-def _powers(T: Array | np.float64) -> Array:
-    return np.array([np.ones_like(T), T, T**2, T**3, T**4, 1.0 / T, np.log(T)])
+def powers_of(T: Array) -> Array:
+    """The powers of T that the coefficients multiply (powers, cases)."""
+    T2 = T * T
+    return np.array([np.ones_like(T), T, T2, T2 * T, T2 * T2, 1.0 / T, np.log(T)])
 
 
 def _extended(sp: Species) -> list[tuple[float, tuple[float, ...]]]:

@@ -1,12 +1,14 @@
-"""Temperatures and balances of many cases in one Newton method, started from vertices.
+"""Temperatures and balances of many cases in one Newton method.
 
-At a few temperatures the best vertex of each case says what its energy is about; between them
-lies the first temperature, and the nearest vertex is the first set of phases.
+A few cases, the pilots, go first. At a few temperatures the best vertex of each says what its
+energy is about; between them lies the first temperature, and the nearest vertex is the first
+set of phases. A polynomial through the temperatures that the pilots reach then gives those of
+all others to a few percent, so that these need no more than one vertex each.
 """
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 from numpy.typing import NDArray
@@ -18,13 +20,17 @@ from solver.core.joint import solve_joint
 from solver.core.mixture import Mixture, R
 from solver.core.phaseset import solve_set
 from solver.core.searches import Found, Searches
+from solver.core.surmise import surmise
 from solver.core.totals import totals
 
 Array = NDArray[np.float64]
 Indices = NDArray[np.intp]
 
 _MAX_ROUNDS, _RETRIES = 5, 2
-_LADDER = (350.0, 700.0, 1200.0, 2000.0, 3300.0)  # K
+_LADDER = (500.0, 1100.0, 2400.0)  # K
+_PILOTS = 64
+_WORTH = 3  # times as many cases as pilots are worth the detour
+_BEYOND = 0.15  # of ln T, how far a surmise may go beyond what the pilots reach
 
 
 def find_together(
@@ -32,7 +38,6 @@ def find_together(
     feed: Feed,
     search: Searches,
     features: Array,
-    going: Indices,
     out: Found,
 ) -> tuple[Indices, Array]:
     """Settle what this method can.
@@ -43,130 +48,204 @@ def find_together(
     Returns
     -------
     tuple
-        The cases left, and first temperatures of all cases asked.
+        The cases left, and first temperatures of all cases.
     """
-    from scipy.spatial import cKDTree  # slow to import
-
-    everyone = np.arange(len(going))
-    run = _Run(mixture, feed, search, going, np.full(len(going), _LADDER[0]))
-    start = run.first_temperatures()
-    if start is None:
-        return going, np.full(len(going), 1000.0)
-    first = run.T.copy()
-    gather(run.cases_at(everyone, run.T), start, run.minima)
-    run.rounds(start)
-    atoms = np.abs(feed.totals[going]).sum(axis=1)
+    count = len(search.values)
+    everyone = np.arange(count)
+    run = _Run(mixture, feed, search, out, everyone, np.full(count, 1000.0))
+    pilots = everyone
+    if count >= _WORTH * _PILOTS:
+        ordered = np.argsort(features[:, 0], kind="stable")
+        pilots = np.sort(ordered[np.linspace(0, count - 1, _PILOTS).round().astype(int)])
+    first = run.part(pilots)
+    if not first.climb():
+        return everyone, run.T
+    first.settle()
+    run.take(pilots, first)
+    if len(pilots) < count and out.found.any():
+        rest = np.setdiff1d(everyone, pilots)
+        known = pilots[out.found[pilots]]
+        log_T = np.log(out.T[known])
+        T = np.exp(
+            np.clip(
+                surmise(features[known], log_T, features[rest]),
+                log_T.min() - _BEYOND,
+                log_T.max() + _BEYOND,
+            )
+        )
+        run.T[rest] = np.clip(T, search.T_low, search.T_high)
+        others = run.part(rest)
+        others.begin(run, known, features)
+        others.settle()
+        run.take(rest, others)
+    first_T = run.T.copy()
     for _ in range(_RETRIES):
-        found, lost = np.flatnonzero(run.minima.found), np.flatnonzero(~run.minima.found)
+        found, lost = np.flatnonzero(out.found), np.flatnonzero(~out.found)
         if not found.size or not lost.size:
             break
-        near = found[cKDTree(features[going[found]]).query(features[going[lost]])[1]]
-        run.T[lost], run.minima.of[lost] = run.T[near], run.minima.of[near]
-        run.minima.log_a[lost] = run.minima.log_a[near]
-        run.minima.nu[lost] = run.minima.nu[near] + np.log(atoms[lost] / atoms[near])
-        run.rounds(lost)
-    rows = np.flatnonzero(run.minima.found)
-    if rows.size:
-        _accept(mixture, search, run.cases_at(rows, run.T[rows]), run, going, rows, out)
-    left = ~out.found[going]
-    return going[left], first[left]
+        again = run.part(lost)
+        again.begin_near(run, found, features)
+        again.settle()
+        run.take(lost, again)
+    return np.flatnonzero(~out.found), first_T
 
 
 @dataclass
 class _Run:
-    """Cases whose temperature and balances are being solved together."""
+    """Cases whose temperature and balances are being solved together.
+
+    Attributes
+    ----------
+    out : Found
+        What is found, of all cases of the batch.
+    which : ndarray of int
+        The numbers in the batch of the cases of this run.
+    T : ndarray
+        Temperatures of the cases of this run.
+    """
 
     mixture: Mixture
     feed: Feed
     search: Searches
-    going: Indices
+    out: Found
+    which: Indices
     T: Array
+    minima: Minima = field(init=False)
 
     def __post_init__(self) -> None:
-        self.minima = Minima.none_of(self.cases_at(np.arange(len(self.going)), self.T))
+        self.minima = Minima.of_size(self.mixture, len(self.which))
 
-    def cases_at(self, which: Indices, T: Array) -> Cases:
-        """Some of the cases at given temperatures."""
-        return self.search.cases(self.mixture, self.feed, self.going[which], T)
+    def part(self, rows: Indices) -> _Run:
+        """Some of the cases, with what is known of them."""
+        run = _Run(self.mixture, self.feed, self.search, self.out, self.which[rows], self.T[rows])
+        run.minima = self.minima.part(rows)
+        return run
 
-    def rounds(self, pending: Indices) -> None:
+    def take(self, rows: Indices, part: _Run) -> None:
+        """What has become of some of the cases."""
+        self.T[rows] = part.T
+        self.minima.take(rows, part.minima)
+
+    def cases(self) -> Cases:
+        """The cases at their present temperatures."""
+        return self.search.cases(self.mixture, self.feed, self.which, self.T)
+
+    def settle(self, rounds: int = _MAX_ROUNDS) -> None:
         """Solve, judge the sets of phases, and solve those that change them again."""
-        minima, search = self.minima, self.search
-        for _ in range(_MAX_ROUNDS):
-            if not pending.size:
-                return
-            closed: list[Indices] = []
-            for number in np.unique(minima.of[pending]):
-                active, members = minima.sets[number]
-                rows = pending[minima.of[pending] == number]
-                joint = solve_joint(
-                    self.cases_at,
-                    rows,
-                    active,
-                    self.mixture.basis(members),
-                    self.T[rows],
-                    minima.log_a[rows],
-                    minima.nu[rows],
-                    search.variable,
-                    search.values[self.going[rows]],
-                )
-                good = joint.closed & (joint.T > search.T_low) & (joint.T < search.T_high)
-                closed.append(rows[good])
-                self.T[rows[good]] = joint.T[good]
-                minima.log_a[rows[good]] = joint.log_a[good]
-                minima.nu[rows[good]] = joint.nu[good]
-            pending = self._judged(np.concatenate(closed))
-
-    def _judged(self, pending: Indices) -> Indices:
-        """Accept the cases whose set is right; returns the others, with their next set."""
-        minima = self.minima
-        cases = self.cases_at(np.arange(len(self.going)), self.T)
-        onward: list[Indices] = []
-        for number in np.unique(minima.of[pending]):
+        minima, closed = self.minima, np.zeros(len(self.which), dtype=bool)
+        for number in np.unique(minima.of[minima.of >= 0]):
             active, members = minima.sets[number]
-            rows = pending[minima.of[pending] == number]
+            rows = np.flatnonzero(minima.of == number)
+            which = self.which[rows]
+            joint = solve_joint(
+                self.mixture,
+                self.feed.of(which),
+                self.search.of(which),
+                active,
+                self.mixture.basis(members),
+                self.T[rows],
+                minima.log_a[rows],
+                minima.nu[rows],
+            )
+            good = joint.closed & (joint.T > self.search.T_low) & (joint.T < self.search.T_high)
+            rows = rows[good]
+            closed[rows] = True
+            self.T[rows] = joint.T[good]
+            minima.log_a[rows], minima.nu[rows] = joint.log_a[good], joint.nu[good]
+        rows = np.flatnonzero(closed)
+        if not rows.size:
+            return
+        part = self.part(rows)
+        onward = part.judge()
+        if onward.size and rounds > 1:
+            again = part.part(onward)
+            again.settle(rounds - 1)
+            part.take(onward, again)
+        self.take(rows, part)
+
+    def judge(self) -> Indices:
+        """Accept the cases whose set is right; returns the others, with their next set."""
+        minima, cases = self.minima, self.cases()
+        onward: list[Indices] = []
+        for number in np.unique(minima.of):
+            active, members = minima.sets[number]
+            rows = np.flatnonzero(minima.of == number)
             start = minima.log_a[rows], minima.nu[rows]
             basis = self.mixture.basis(members)
             for part, solved in solve_set(cases, rows, active, basis, *start):
                 onward += judge(cases, rows[part], active, solved, minima)
+        self._accept(cases)
         return np.concatenate(onward) if onward else np.zeros(0, dtype=np.intp)
 
-    def first_temperatures(self) -> Indices | None:
+    def _accept(self, cases: Cases) -> None:
+        """Take the cases whose energy closes."""
+        mixture, out, variable = self.mixture, self.out, self.search.variable
+        n, T = self.minima.n, self.T
+        state = totals(
+            n, mixture.is_gas, mixture.volume, cases.g, cases.h, T, self.minima.p, cases.V,
+            mixture.twins,
+        )  # fmt: skip
+        excess = np.abs(getattr(state, variable) - self.search.values[self.which])
+        size = R * n.sum(axis=1) * (1.0 if variable == "S" else T)
+        good = self.minima.found & (excess <= 1e-11 * size)
+        target = self.which[good]
+        out.T[target], out.p[target], out.n[target] = T[good], self.minima.p[good], n[good]
+        out.potentials[target], out.found[target] = self.minima.potentials[good], True
+        for name, values in out.functions.items():
+            values[target] = getattr(state, name)[good]
+
+    def begin(self, run: _Run, known: Indices, features: Array) -> None:
+        """Sets and activities at the present temperatures from vertices."""
+        near = _nearest(features, known, self.which)
+        minima, cases = self.minima, self.cases()
+        minima.of[:] = run.minima.of[near]
+        rows = to_vertices(cases, np.arange(len(cases)), minima, np.arange(len(cases)))
+        lost = np.ones(len(cases), dtype=bool)
+        lost[rows] = False
+        minima.of[lost] = -1
+        gather(cases, rows, minima)
+
+    def begin_near(self, run: _Run, known: Indices, features: Array) -> None:
+        """Sets, activities and temperatures of the nearest cases that are known."""
+        near = _nearest(features, known, self.which)
+        atoms = np.abs(self.feed.totals).sum(axis=1)
+        self.T, self.minima.of = run.T[near], run.minima.of[near]
+        self.minima.log_a = run.minima.log_a[near]
+        self.minima.nu = run.minima.nu[near] + np.log(atoms[self.which] / atoms[near])
+
+    def climb(self) -> bool:
         """First temperatures and sets from the vertices at a ladder of temperatures.
 
-        Returns the cases that have one; None where even the first case cannot be settled.
+        False where even the first case cannot be settled.
         """
-        everyone = np.arange(len(self.going))
-        minima, ladder = self.minima, np.array(_LADDER)
-        values = np.full((len(ladder), len(everyone)), np.nan)
-        kept: list[tuple[Indices, Array, Array]] = []
-        near = np.zeros(len(everyone), dtype=np.intp)
-        for step, T in enumerate(ladder):
-            cases = self.cases_at(everyone, np.full(len(everyone), T))
-            if step == 0:
-                settle_one(cases, 0, minima)
-                if not minima.found[0]:
-                    return None
-                minima.found[0] = False
-            to_vertices(cases, everyone, minima, near)
-            near = everyone
-            values[step] = self._vertex_values(cases)
-            kept.append((minima.of.copy(), minima.log_a.copy(), minima.nu.copy()))
-        wanted = self.search.values[self.going]
+        count, steps = len(self.which), len(_LADDER)
+        everyone, ladder = np.arange(count), np.array(_LADDER)
+        rungs = _Run(
+            self.mixture, self.feed, self.search, self.out,
+            np.tile(self.which, steps), np.repeat(ladder, count),
+        )  # fmt: skip
+        cases, minima = rungs.cases(), rungs.minima
+        minima.sets = self.minima.sets
+        settle_one(cases, 0, minima)
+        if not minima.found[0]:
+            return False
+        to_vertices(cases, np.arange(len(cases)), minima, np.zeros(len(cases), dtype=np.intp))
+        values = rungs.vertex_values(cases).reshape(steps, count)
+        wanted = self.search.values[self.which]
         rising = np.maximum.accumulate(np.nan_to_num(values, nan=-np.inf), axis=0)
-        upper = np.clip((rising < wanted).sum(axis=0), 1, len(ladder) - 1)
+        upper = np.clip((rising < wanted).sum(axis=0), 1, steps - 1)
         low, high = values[upper - 1, everyone], values[upper, everyone]
         with np.errstate(all="ignore"):
             share = np.clip(np.nan_to_num((wanted - low) / (high - low), nan=0.5), -0.4, 1.6)
-        T = ladder[upper - 1] + share * (ladder[upper] - ladder[upper - 1])
-        self.T = np.clip(T, max(self.search.T_low, 200.0), self.search.T_high)
+        first = ladder[upper - 1] + share * (ladder[upper] - ladder[upper - 1])
+        self.T = np.clip(first, max(self.search.T_low, 200.0), self.search.T_high)
         nearest = np.abs(np.log(self.T / ladder[:, None])).argmin(axis=0)
-        for step, (of, log_a, nu) in enumerate(kept):
-            rows = nearest == step
-            minima.of[rows], minima.log_a[rows], minima.nu[rows] = of[rows], log_a[rows], nu[rows]
-        return np.flatnonzero(minima.of >= 0)
+        self.minima = minima.part(nearest * count + everyone)
+        self.minima.found[:] = False
+        gather(self.cases(), np.flatnonzero(self.minima.of >= 0), self.minima)
+        return True
 
-    def _vertex_values(self, cases: Cases) -> Array:
+    def vertex_values(self, cases: Cases) -> Array:
         """The variable searched, at the vertices (cases,)."""
         minima, mixture = self.minima, self.mixture
         n = np.zeros(cases.c.shape)
@@ -175,34 +254,16 @@ class _Run:
             basis = mixture.basis(minima.sets[number][1])
             b = component_amounts(cases.feed.amounts[rows], cases.feed.vectors, basis)
             n[np.ix_(rows, np.array(basis.members))] = np.maximum(b, 0.0)
-        V = None if cases.V is None else cases.V
         p = cases.pressures(np.arange(len(cases)), n)
         p = np.where((p > 0.0) & np.isfinite(p), p, 1.0e5)
         state = totals(
-            n, mixture.is_gas, mixture.volume, cases.g, cases.h, cases.T, p, V, mixture.twins
+            n, mixture.is_gas, mixture.volume, cases.g, cases.h, cases.T, p, cases.V, mixture.twins
         )
         return np.asarray(getattr(state, self.search.variable))
 
 
-def _accept(
-    mixture: Mixture,
-    search: Searches,
-    cases: Cases,
-    run: _Run,
-    going: Indices,
-    rows: Indices,
-    out: Found,
-) -> None:
-    """Take the cases whose energy closes."""
-    which, minima, T = going[rows], run.minima, cases.T
-    V = None if search.V is None else search.V[which]
-    n, p = minima.n[rows], minima.p[rows]
-    state = totals(n, mixture.is_gas, mixture.volume, cases.g, cases.h, T, p, V, mixture.twins)
-    excess = np.abs(getattr(state, search.variable) - search.values[which])
-    size = R * n.sum(axis=1) * (1.0 if search.variable == "S" else T)
-    good = excess <= 1e-11 * size
-    target = which[good]
-    out.T[target], out.p[target], out.n[target] = T[good], p[good], n[good]
-    out.potentials[target], out.found[target] = minima.potentials[rows[good]], True
-    for name, values in out.functions.items():
-        values[target] = getattr(state, name)[good]
+def _nearest(features: Array, known: Indices, which: Indices) -> Indices:
+    """For each case of `which` the nearest of the known ones."""
+    from scipy.spatial import cKDTree  # slow to import
+
+    return known[np.asarray(cKDTree(features[known]).query(features[which])[1], dtype=np.intp)]

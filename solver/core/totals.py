@@ -8,9 +8,12 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from solver.core.columns import run_of
 from solver.core.mixture import P0, R
 
 Array = NDArray[np.float64]
+
+_LEAST = 1e-300  # mol; what is not there has a logarithm of no account
 
 
 @dataclass(frozen=True, slots=True)
@@ -66,16 +69,17 @@ def totals(
         for first, second in twins:
             mixed[:, first] += mixed[:, second]
             mixed[:, second] = 0.0
-    gas = mixed[:, is_gas]
+    gas = mixed[:, run_of(np.flatnonzero(is_gas))]
     N = gas.sum(axis=1)
     with np.errstate(divide="ignore", invalid="ignore"):
-        logs = np.log(gas / N[:, None])
-        mixing = np.where(gas > 0.0, gas * logs, 0.0).sum(axis=1)
-        mixing += np.where(N > 0.0, N * np.log(p / P0), 0.0)
+        logs = np.maximum(gas, _LEAST)
+        mixing = np.einsum("ij,ij->i", gas, np.log(logs, out=logs))
+        mixing += np.where(N > 0.0, N * (np.log(p / P0) - np.log(N)), 0.0)
         gas_volume = np.where(N > 0.0, N * RT / p, 0.0)
     V_condensed = n @ volume
-    H = RT * (n * h).sum(axis=1) + V_condensed * (p - P0)
-    S = R * ((n * (h - g)).sum(axis=1) - mixing)
+    heat = np.einsum("ij,ij->i", n, h)
+    H = RT * heat + V_condensed * (p - P0)
+    S = R * (heat - np.einsum("ij,ij->i", n, g) - mixing)
     if V is None:
         V = gas_volume + V_condensed
     return Totals(V=V, H=H, U=H - p * V, S=S, G=H - T * S)

@@ -234,8 +234,8 @@ def _iterate(
             back = (merit > merit_last) & (merit > 1e-16) & (iteration > calm)
             stale = np.where(merit < 0.5 * best, 0, stale + 1)
             best = np.minimum(best, merit)
-            newton = newton_steps(J, F)
-            off = wild(newton)
+            newton = np.ascontiguousarray(newton_steps(J.transpose(1, 2, 0), F.T).T)
+            off = wild(newton.T)
             for case in np.flatnonzero(off):
                 finite = np.isfinite(J[case]).all() and np.isfinite(F[case]).all()
                 newton[case] = shortest(J[case], F[case]) if finite else np.nan

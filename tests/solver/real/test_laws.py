@@ -142,7 +142,7 @@ def along_reactions(
 def test_order_of_species_does_not_matter(real: RealMixture):
     end = settled(real)
     rng = np.random.default_rng(3)
-    for _ in range(3):
+    for _ in range(2):
         shuffled = [real.species[i] for i in rng.permutation(len(real.species))]
         fixed = solver.Fixed("T,p", T=real.T, p=real.p)
         other = solver.settle(shuffled, real.feed, fixed, gas=real.gas)
@@ -150,7 +150,7 @@ def test_order_of_species_does_not_matter(real: RealMixture):
 
 
 @every_mixture
-@pytest.mark.parametrize("size", [1e-6, 1e3, 1e6])
+@pytest.mark.parametrize("size", [1e-6, 1e6])
 def test_size_of_the_feed_does_not_matter(real: RealMixture, size: float):
     same(settled(real), real.settle(size=size), size)
 

@@ -81,7 +81,7 @@ def plateau(gas: str, p: float) -> tuple[float, float]:
 @every_mixture
 def test_energy_and_entropy_rise_with_temperature(real: RealMixture):
     """Along a line at the mixture's pressure, through whatever phases come and go."""
-    T = np.linspace(0.75 * real.T, 1.3 * real.T, 34)
+    T = np.linspace(0.75 * real.T, 1.3 * real.T, 24)
     ends = solver.settle_many(real.species, real.feed, "T,p", T, real.p, gas=real.gas)
     assert ends.settled.all()
     assert (np.diff(ends.H) > 0.0).all()
@@ -91,7 +91,7 @@ def test_energy_and_entropy_rise_with_temperature(real: RealMixture):
 
 @every_mixture
 def test_volume_falls_and_gibbs_energy_rises_with_pressure(real: RealMixture):
-    p = real.p * np.geomspace(0.02, 30.0, 34)
+    p = real.p * np.geomspace(0.02, 30.0, 20)
     ends = solver.settle_many(real.species, real.feed, "T,p", real.T, p, gas=real.gas)
     assert ends.settled.all()
     assert (np.diff(ends.V) < 0.0).all()

@@ -145,8 +145,11 @@ def check_functions(end: solver.EndState, species: list[Species], n: np.ndarray)
     v = np.array([sp.molar_volume or 0.0 if sp.phase != "gas" else 0.0 for sp in species])
     N = n[gas].sum()
     V = n @ v + (N * R * T / end.p if N else 0.0)
-    if KNOWN[end.fixed.pair].holds_volume and not N:
-        V = end.V  # nothing evaporates: the rest of the vessel is empty
+    if KNOWN[end.fixed.pair].holds_volume and not N and not end.p:
+        # nothing evaporates: the rest of the vessel is empty
+        if V > end.V * (1.0 + 1e-10):
+            raise Fault(f"{V} m3 of condensed phases are in a vessel of {end.V} m3")
+        V = end.V
     y = n[gas][n[gas] > 0.0] / N if N else np.zeros(0)
     mixing = N * R * (np.log(end.p / P0) + y @ np.log(y)) if N else 0.0
     bounds = []

@@ -19,7 +19,7 @@ from solver.core.totals import totals
 from solver.core.vessel import TooSmall
 from solver.endstates import EndStates
 from solver.errors import InputError, SettleError
-from solver.fed import MOST, check_gas
+from solver.fed import LEAST, MOST, check_gas
 from solver.fixed import PAIRS, T_HIGHEST, T_LOWEST, Pair, allowed_range, checked_value
 from solver.posed import Posed, pose
 from solver.proof import (
@@ -116,7 +116,7 @@ def _settle_all(
     count = len(first)
     good = np.array([i not in why for i in range(count)], dtype=bool)
     # cases that feed the same species share a mixture
-    there = amounts > 0.0
+    there = amounts > LEAST * amounts.max(axis=1, keepdims=True)
     alike = bool((there == there[0]).all())
     for presence in there[:1] if alike else np.unique(there[good], axis=0):
         same = good & (there == presence).all(axis=1)

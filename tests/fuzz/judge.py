@@ -58,7 +58,7 @@ def judge(problem: Problem, *, lower_bound: bool = False) -> Verdict:
 def _judged(problem: Problem, lower_bound: bool) -> Verdict:
     species, feed = problem.species, problem.fed
     pair = KNOWN[problem.pair]
-    start = None
+    start = fixed = None
     try:
         if problem.values:
             fixed = solver.Fixed(problem.pair, **problem.values)
@@ -82,7 +82,7 @@ def _judged(problem: Problem, lower_bound: bool) -> Verdict:
         check_out_of_range(problem, species, feed, fixed, start)
         return Verdict("no end state", str(error))
     except solver.InputError as error:
-        check_refusal(problem, species, feed, error)
+        check_refusal(problem, species, feed, fixed, error)
         return Verdict("refused", str(error))
     verdict = check_state(end, species, feed)
     if start is not None and not problem.offset and abs(end.T / start.T - 1.0) > 1e-8:
@@ -202,11 +202,17 @@ def check_out_of_range(
 
 
 def check_refusal(
-    problem: Problem, species: list[Species], feed: dict[Species, float], error: solver.InputError
+    problem: Problem,
+    species: list[Species],
+    feed: dict[Species, float],
+    fixed: solver.Fixed | None,
+    error: solver.InputError,
 ) -> None:
     """That the feed cannot be held, or that the vessel is too small; raises Fault."""
     if error.field == "fixed.V":
-        if problem.T and problem.volume > 1.001 * least_volume(species, feed, problem.T):
+        if fixed is None:  # refused at the temperature from which its energy was to come
+            fixed = solver.Fixed("T,V", T=problem.T, V=problem.volume)
+        if fixed.V > 1.001 * least_volume(species, feed, fixed):
             raise Fault(f"the vessel is refused, yet its contents fit: {error}")
         return
     if error.field == "species":
@@ -226,9 +232,20 @@ def can_hold(species: list[Species], feed: dict[Species, float]) -> bool:
     return bool(found.status == 0)
 
 
-def least_volume(species: list[Species], feed: dict[Species, float], T: float) -> float:
-    """Volume of the feed at T under the highest pressure a vessel must bear, m3."""
-    end = solver.settle(species, feed, solver.Fixed("T,p", T=T, p=P_CRUSH))
+def least_volume(species: list[Species], feed: dict[Species, float], fixed: solver.Fixed) -> float:
+    """Volume, m3, to which the contents swell or shrink under the most a vessel must bear.
+
+    With the energy or entropy held the contents do so without heat, against that pressure: if
+    they press harder, they end up larger than the vessel.
+    """
+    held = {"p": P_CRUSH}
+    if fixed.pair == "U,V":
+        at = solver.Fixed("H,p", H=fixed.U + P_CRUSH * fixed.V, **held)
+    elif fixed.pair == "S,V":
+        at = solver.Fixed("S,p", S=fixed.S, **held)
+    else:
+        at = solver.Fixed("T,p", T=fixed.T, **held)
+    end = solver.settle(species, feed, at)
     check_state(end, species, feed)
     check_lower_bound(end, species, feed)
     return end.V

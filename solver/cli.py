@@ -19,6 +19,7 @@ import typer
 from solver.errors import InputError, SettleError
 
 if TYPE_CHECKING:
+    from solver.project.beside import CaseBeside
     from solver.project.case import CaseAnswer
     from solver.project.model import Case, Project
     from solver.reactions import ReactionsView
@@ -46,11 +47,19 @@ def settle(
         bool,
         typer.Option("--reactions", help="Add an independent reaction set, or that of the case."),
     ] = False,
+    beside_ideal: Annotated[
+        bool,
+        typer.Option(
+            "--beside-ideal", help="Set the answer of an ideal gas beside that of a real one."
+        ),
+    ] = False,
 ) -> None:
     """Settle every case of a project and print where each ends up.
 
-    The table gives T, p, V and heat, what is present, what did not form, what each restriction
-    costs, and the proof. With --reactions: extents, ln K, Q/K, heats and temperature approaches.
+    The table gives T, p, V and heat, what is present in each phase, the gas model and where it is
+    poor, what did not form, what each restriction costs, and the proof. With --reactions: extents,
+    ln K, Q/K, heats and temperature approaches. With --beside-ideal: T, p, V, heat and the main
+    species as an ideal gas would give them, and the difference.
     Exit code 0: all settled. 2: the file or a field is wrong. 3: no such end state exists, or none
     could be proven.
 
@@ -58,6 +67,7 @@ def settle(
     Examples:
       thalweg settle samples/reformer-outlet.thalweg
       thalweg settle samples/reformer-outlet.thalweg --reactions
+      thalweg settle samples/ammonia-loop.thalweg --beside-ideal
       thalweg settle samples/lime-kiln.thalweg --json
       thalweg settle plant.thalweg --json > answer.json
     """
@@ -72,26 +82,34 @@ def settle(
     code = OK
     results: list[tuple[Case, CaseAnswer | SettleError]] = []
     views: list[ReactionsView | None] = []
+    besides: list[CaseBeside | SettleError | None] = []
     for case in project.cases:
-        view = None
+        view = other = None
         try:
             found = settle_case(case)
-            view = reactions_of(found) if with_reactions else None
-            results.append((case, found))
         except SettleError as error:
             code = max(code, _tell(file, project, case, error), key=_rank)
             results.append((case, error))
+        else:
+            results.append((case, found))
+            other = _beside(case, found) if beside_ideal else None
+            try:
+                view = reactions_of(found) if with_reactions else None
+            except SettleError as error:
+                code = max(code, _tell(file, project, case, error), key=_rank)
         views.append(view)
+        besides.append(other)
+    beside = besides if beside_ideal else None
     with _reader_may_leave():
         if as_json:
             from solver.project.answer_json import answers
 
-            document = answers(project, results, views)
+            document = answers(project, results, views, beside)
             sys.stdout.write(json.dumps(document, indent=2, ensure_ascii=False) + "\n")
         else:
             from solver.project.answer_table import print_answers
 
-            print_answers(project, results, views)
+            print_answers(project, results, views, beside)
     raise typer.Exit(code)
 
 
@@ -121,6 +139,18 @@ def species(
 
         _complain(str(unknown_species(error, "text")))
         raise typer.Exit(BAD_INPUT) from None
+
+
+def _beside(case: Case, found: CaseAnswer) -> CaseBeside | SettleError | None:
+    """The ideal answer beside a real one, or why there is none; None where the gas is ideal."""
+    from solver.project.beside import settle_beside
+
+    if found.prepared.gas.is_ideal:
+        return None
+    try:
+        return settle_beside(case, found)
+    except SettleError as error:
+        return error
 
 
 def _tell(file: Path, project: Project, case: Case, error: SettleError) -> int:

@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from dataclasses import dataclass, field
+from types import MappingProxyType
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -13,6 +14,10 @@ if TYPE_CHECKING:
     import pandas as pd
 
 Array = NDArray[np.float64]
+
+
+def _nothing() -> MappingProxyType[str, Any]:
+    return MappingProxyType({})
 
 
 @dataclass(frozen=True)
@@ -34,6 +39,9 @@ class EndStates:
         The proof of each case, as in `Proof`.
     why : mapping of int to str
         For each case that is not settled, the reason in a sentence.
+    liquids : mapping of str to ndarray, shape (cases, species)
+        With an equation of state: mol in its liquid phases, where any case has one; `amounts`
+        counts them too.
     """
 
     pair: str
@@ -51,6 +59,7 @@ class EndStates:
     energy_residual: Array
     gap: Array
     why: Mapping[int, str]
+    liquids: Mapping[str, Array] = field(default_factory=_nothing)
 
     def __len__(self) -> int:
         return len(self.T)

@@ -14,11 +14,11 @@ from solver.core.thermo import ThermoTable
 from solver.core.totals import totals
 from solver.errors import InputError
 from solver.fixed import checked_value
+from solver.gas_model import GasModel, gas_model
 
 if TYPE_CHECKING:
     from species_db import Species
 
-GAS_MODELS = ("ideal",)
 MOST = 1e30  # mol
 LEAST = 1e-250  # of the largest amount fed; less counts as nothing (one molecule is 2e-24 mol)
 
@@ -36,7 +36,7 @@ class Fed:
     G: float
 
 
-def as_fed(feed: Mapping[Species, float], T: float, p: float, gas: str = "ideal") -> Fed:
+def as_fed(feed: Mapping[Species, float], T: float, p: float, gas: str | GasModel = "ideal") -> Fed:
     """State of the mixture as fed: gases mixed, condensed species beside them, no reaction.
 
     Parameters
@@ -45,15 +45,16 @@ def as_fed(feed: Mapping[Species, float], T: float, p: float, gas: str = "ideal"
         mol.
     T, p : float
         K, Pa.
-    gas : str
-        Gas model.
+    gas : str or GasModel
+        Gas model. With an equation of state the gases mix by it, and split into gas and liquid
+        where they do at T and p.
 
     Raises
     ------
     InputError
         Empty or negative feed, T or p out of range, unknown gas model.
     """
-    check_gas(gas)
+    model = gas_model(gas)
     T, p = checked_value("T", T), checked_value("p", p)
     species = list(feed)
     for sp in species:
@@ -72,27 +73,17 @@ def as_fed(feed: Mapping[Species, float], T: float, p: float, gas: str = "ideal"
     at_T, at_p = np.array([T]), np.array([p])
     g, h, _ = thermo.over(at_T)
     volume = np.array([condensed_volume(sp) for sp in species])
-    state = totals(n[None, :], is_gas, volume, g, h, at_T, at_p, None)
-    return Fed(
-        T=T,
-        p=p,
-        V=float(state.V[0]),
-        H=float(state.H[0]),
-        U=float(state.U[0]),
-        S=float(state.S[0]),
-        G=float(state.G[0]),
-    )
+    fluid = is_gas & (n > 0.0)
+    ideal = n if model.is_ideal else np.where(is_gas, 0.0, n)
+    state = totals(ideal[None, :], is_gas, volume, g, h, at_T, at_p, None)
+    values = {name: float(getattr(state, name)[0]) for name in ("V", "H", "U", "S", "G")}
+    if not model.is_ideal and fluid.any():
+        from solver.real.feed import fluid_as_fed  # an ideal gas does without
 
-
-def check_gas(gas: str) -> None:
-    """Refuse a gas model that is not there."""
-    if gas not in GAS_MODELS:
-        raise InputError(
-            f"The gas model {gas!r} is not available; choose {' or '.join(GAS_MODELS)}.",
-            "gas",
-            gas,
-            ", ".join(GAS_MODELS),
-        )
+        gases = [sp for sp, held in zip(species, fluid, strict=True) if held]
+        real = fluid_as_fed(gases, n[fluid], T, p, model)
+        values = {name: value + float(getattr(real, name)[0]) for name, value in values.items()}
+    return Fed(T=T, p=p, **values)
 
 
 def checked_amount(key: str, amount: object) -> float:

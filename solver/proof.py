@@ -52,6 +52,13 @@ class Proof:
         What was assumed of gas and condensed phases.
     restrictions : tuple of Cost
         What was held back, and what each costs in free energy.
+    stationarity : float or None
+        With an equation of state: the largest |ln(y phi p/p0) + g - a.lambda| of any species in
+        any fluid phase.
+    tangent_distance : float or None
+        The least tangent-plane distance that any trial phase came to, over RT.
+    starts : int
+        Trial phases tried; 0 where the bound is rigorous without any.
     """
 
     element_residual: float
@@ -61,6 +68,14 @@ class Proof:
     absent: Mapping[str, float]
     model: str = MODEL
     restrictions: tuple[Cost, ...] = ()
+    stationarity: float | None = None
+    tangent_distance: float | None = None
+    starts: int = 0
+
+    @property
+    def rigorous(self) -> bool:
+        """Whether the gap bounds every mixture of the candidates, known or not."""
+        return self.starts == 0
 
     @property
     def holds(self) -> bool:

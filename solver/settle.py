@@ -19,8 +19,9 @@ from solver.core.vessel import TooSmall
 from solver.costs import costs
 from solver.endstate import PRESENT, EndState
 from solver.errors import InputError, NoEndState, NotProven, SettleError
-from solver.fed import LEAST, check_gas, checked_amount
+from solver.fed import LEAST, checked_amount
 from solver.fixed import PAIRS, T_HIGHEST, T_LOWEST, Fixed, Pair
+from solver.gas_model import GasModel, gas_model
 from solver.posed import Posed, pose
 from solver.proof import (
     MODEL,
@@ -45,7 +46,7 @@ def settle(
     feed: Mapping[Species | str, float],
     fixed: Fixed,
     *,
-    gas: str = "ideal",
+    gas: str | GasModel = "ideal",
     restrictions: Sequence[Restriction] = (),
 ) -> EndState:
     """Compute where the feed ends up among the candidates.
@@ -59,8 +60,9 @@ def settle(
         nothing.
     fixed : Fixed
         The pair of state variables held.
-    gas : str
-        Gas model.
+    gas : str or GasModel
+        Gas model: ``"ideal"``, ``"srk"`` (Soave-Redlich-Kwong) or ``"pr"`` (Peng-Robinson); a
+        `GasModel` brings interaction parameters of your own.
     restrictions : sequence of Restriction
         What keeps the mixture short of full equilibrium.
 
@@ -79,13 +81,14 @@ def settle(
         A state was found whose proof fails; it is not returned.
     """
     held_back = tuple(restrictions)
-    end = _settled(species, feed, fixed, gas, held_back)
+    model = gas_model(gas)
+    end = _settled(species, feed, fixed, model, held_back)
     if not held_back:
         return end
     fed, amounts = _checked_feed(species, feed)
 
     def settled(at: Fixed, rest: tuple[Restriction, ...]) -> EndState:
-        return _settled(species, feed, at, gas, rest)
+        return _settled(species, feed, at, model, rest)
 
     prices = costs(species, fed, amounts, end, held_back, settled)
     return replace(end, proof=replace(end.proof, restrictions=prices))
@@ -95,11 +98,10 @@ def _settled(
     species: Sequence[Species],
     feed: Mapping[Species | str, float],
     fixed: Fixed,
-    gas: str,
+    gas: GasModel,
     restrictions: tuple[Restriction, ...],
 ) -> EndState:
     """The end state, without what its restrictions cost."""
-    check_gas(gas)
     fed, amounts = _checked_feed(species, feed)
     posed = pose(species, fed, amounts[None, :], restrictions)
     mixture = posed.mixture
@@ -107,6 +109,10 @@ def _settled(
     scale = 2.0 ** -round(float(np.log2(np.abs(posed.feed.totals).max())))
     scaled = Feed(posed.feed.amounts * scale, posed.feed.vectors)
     try:
+        if not gas.is_ideal and mixture.gas.size:
+            from solver.real.answer import settle_real  # an ideal gas does without
+
+            return settle_real(posed, species, fixed, gas, scale, scaled)
         point = _find(mixture, scaled, fixed, scale)
         if PAIRS[fixed.pair].holds_volume:
             V = fixed.values[1] * scale
@@ -255,7 +261,7 @@ def _end_state(
     feed: Feed,
     point: Point,
     fixed: Fixed,
-    gas: str,
+    gas: GasModel,
     scale: float,
 ) -> EndState:
     T, p, n, mixture = point.T, point.p, point.n, posed.mixture
@@ -317,7 +323,7 @@ def _end_state(
         amounts=MappingProxyType(amounts),
         species=tuple(species),
         fixed=fixed,
-        gas=gas,
+        gas=gas.key,
         proof=proof,
         outside_range=tuple(mixture.species[i].key for i in np.flatnonzero(outside)),
     )

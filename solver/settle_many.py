@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from types import MappingProxyType
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -19,8 +18,9 @@ from solver.core.totals import totals
 from solver.core.vessel import TooSmall
 from solver.endstates import EndStates
 from solver.errors import InputError, SettleError
-from solver.fed import LEAST, MOST, check_gas
+from solver.fed import LEAST, MOST
 from solver.fixed import PAIRS, T_HIGHEST, T_LOWEST, Pair, allowed_range, checked_value
+from solver.gas_model import GasModel, gas_model
 from solver.posed import Posed, pose
 from solver.proof import (
     ELEMENT_LIMIT,
@@ -33,6 +33,7 @@ from solver.proof import (
     volume_residual,
 )
 from solver.restrictions import Restriction
+from solver.results import Results
 from solver.settle import candidate_of, check_species, explained
 from solver.threads import one_thread
 
@@ -51,7 +52,7 @@ def settle_many(
     X: ArrayLike,
     Y: ArrayLike,
     *,
-    gas: str = "ideal",
+    gas: str | GasModel = "ideal",
     restrictions: Sequence[Restriction] = (),
 ) -> EndStates:
     """Compute the end states of many cases over one list of candidates.
@@ -66,8 +67,8 @@ def settle_many(
         The fixed pair, e.g. ``"T,p"``.
     X, Y : array_like, shape (cases,) or float
         The values of the pair's two variables, in its order, SI.
-    gas : str
-        Gas model.
+    gas : str or GasModel
+        Gas model, as for `settle`.
     restrictions : sequence of Restriction
         What keeps the mixtures short of full equilibrium, the same for all cases.
 
@@ -81,7 +82,7 @@ def settle_many(
     InputError
         What concerns all cases is wrong: the pair, the candidates, the lengths of arrays.
     """
-    check_gas(gas)
+    model = gas_model(gas)
     check_species(species)
     if pair not in PAIRS:
         raise InputError(
@@ -94,10 +95,10 @@ def settle_many(
     count = len(first)
     why: dict[int, str] = {}
     _mark_faults(PAIRS[pair], fed, amounts, first, second, why)
-    out = _Results(count, len(species))
+    out = Results(count, len(species))
     with one_thread():
         _settle_all(
-            species, fed, amounts, PAIRS[pair], first, second, tuple(restrictions), out, why
+            species, fed, amounts, PAIRS[pair], first, second, model, tuple(restrictions), out, why
         )
     return out.end_states(pair, tuple(sp.key for sp in species), why)
 
@@ -109,8 +110,9 @@ def _settle_all(
     pair: Pair,
     first: Array,
     second: Array,
+    gas: GasModel,
     restrictions: tuple[Restriction, ...],
-    out: _Results,
+    out: Results,
     why: dict[int, str],
 ) -> None:
     count = len(first)
@@ -134,7 +136,7 @@ def _settle_all(
             part = np.arange(begin, min(begin + size, len(index)))
             rows = index[part]
             chunk = Posed(posed.mixture, posed.feed.of(part), posed.place)
-            _settle_chunk(chunk, pair, first[rows], second[rows], out, rows, why)
+            _settle_chunk(chunk, pair, first[rows], second[rows], gas, out, rows, why)
 
 
 def _aligned(
@@ -207,36 +209,13 @@ def _mark_faults(
         why.setdefault(int(i), "The feed is empty; give at least one amount above zero.")
 
 
-class _Results:
-    """Arrays that the chunks fill."""
-
-    def __init__(self, count: int, species: int) -> None:
-        names = ("T", "p", "V", "H", "U", "S", "G", "element_residual", "energy_residual", "gap")
-        self.values = {name: np.full(count, np.nan) for name in names}
-        self.amounts = np.full((count, species), np.nan)
-        self.settled = np.zeros(count, dtype=bool)
-
-    def end_states(self, pair: str, keys: tuple[str, ...], why: dict[int, str]) -> EndStates:
-        """The public result, arrays read-only."""
-        for array in (*self.values.values(), self.amounts, self.settled):
-            array.flags.writeable = False
-        reasons = MappingProxyType(dict(sorted(why.items())))
-        return EndStates(
-            pair=pair,
-            keys=keys,
-            amounts=self.amounts,
-            settled=self.settled,
-            why=reasons,
-            **self.values,
-        )
-
-
 def _settle_chunk(
     posed: Posed,
     pair: Pair,
     first: Array,
     second: Array,
-    out: _Results,
+    gas: GasModel,
+    out: Results,
     rows: NDArray[np.intp],
     why: dict[int, str],
 ) -> None:
@@ -248,6 +227,13 @@ def _settle_chunk(
     V = second * scale if pair.holds_volume else None
     values = first if pair.searched is None else first * scale
     features = _features(feed, pair, values, p, V)
+    if not gas.is_ideal and mixture.gas.size:
+        from solver.real.batch import settle_real_chunk  # an ideal gas does without
+
+        held = second if V is None else V
+        chunk = Posed(mixture, feed, posed.place)
+        settle_real_chunk(chunk, pair, values, held, features, scale, gas, out, rows, why)
+        return
     if pair.searched is None:
         found = _at_temperature(mixture, feed, first, p, V, features)
     else:
@@ -286,13 +272,7 @@ def _settle_chunk(
     out.values["element_residual"][good] = closure[ok]
     for name, function in found.functions.items():
         out.values[name][good] = function[some][ok] / scale[ok]
-    amounts = np.zeros((len(good), out.amounts.shape[1]))
-    amounts[:, posed.place] = n[ok] / scale[ok][:, None]
-    for first_place, second_place in mixture.twins:  # an inert part adds to its species
-        amounts[:, posed.place[first_place]] = (n[ok, first_place] + n[ok, second_place]) / scale[
-            ok
-        ]
-    out.amounts[good] = amounts
+    out.put_amounts(good, posed, n[ok] / scale[ok][:, None])
 
 
 def _check_rooms(mixture: Mixture, feed: Feed, found: Found, V: Array) -> None:

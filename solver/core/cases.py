@@ -78,6 +78,17 @@ class Cases:
     def __len__(self) -> int:
         return len(self.T)
 
+    def part(self, which: Indices) -> Cases:
+        """Some of the cases, nothing computed again."""
+        out = object.__new__(Cases)
+        out.__dict__.update(self.__dict__)
+        out.feed = self.feed.of(which)
+        for name in ("T", "g", "h", "cp", "c", "scale", "atoms", "nu_fixed", "force_tolerance"):
+            setattr(out, name, getattr(self, name)[which])
+        out.p = None if self.p is None else self.p[which]
+        out.V = None if self.V is None else self.V[which]
+        return out
+
     @property
     def holds_pressure(self) -> bool:
         """Whether the gas may take any volume."""

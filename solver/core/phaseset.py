@@ -146,7 +146,7 @@ def _solve(
         finite = np.where(np.isfinite(p), p, P0)
         c = c + cases.mixture.volume * ((finite - P0) / (R * cases.T[which]))[:, None]
     mu = c[:, members] + result.log_a
-    _sink(c, mu, sinks, basis, live_gas)
+    sink(c, mu, sinks, basis, live_gas)
     y = np.zeros(c.shape)
     if not result.closed.all():
         y[:, live_gas] = result.y
@@ -286,7 +286,7 @@ def _rarefied(
     return solution if solution.closed[0] and felt <= _EPS else None
 
 
-def _sink(c: Array, mu: Array, sinks: list[Sink], basis: Basis, live: Indices) -> None:
+def sink(c: Array, mu: Array, sinks: list[Sink], basis: Basis, live: Indices) -> None:
     """Lower the potentials of forced-out combinations until nothing made of them counts."""
     if not sinks:
         return

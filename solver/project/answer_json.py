@@ -10,9 +10,17 @@ Top level: ``format`` ("thalweg-answer"), ``version``, ``title``, ``cases``. Eac
 - ``fed``: ``T`` ``p`` (null where the streams differ), ``V H U S``, ``mass`` kg, ``amount`` mol,
   ``amounts`` mol by species;
 - ``amounts``: mol of every candidate by key; ``fractions``: mole fraction in its phase;
-- ``phases``: mol of the gas and of each condensed species present;
+- ``phases``: mol of the gas, of each liquid of the equation of state ("liquid", "second liquid")
+  and of each condensed species present;
+- ``gas``: ``model`` ("ideal", "srk", "pr"), ``name``, and what only an equation of state has:
+  ``interactions`` (each k_ij in use: ``a``, ``b``, ``k``, ``source``; all others are zero),
+  ``fluids`` (mol of every gas species in each fluid phase present), ``left_out`` (pure liquids that
+  its own liquid stands for, to their gas species), ``taken_as_ideal`` (species without usable
+  critical constants) and ``cautions`` (where the model is poor here);
 - ``proof``: ``element_residual``, ``energy_residual``, ``gap`` (all relative), ``absent``
-  (activity of each condensed candidate that did not form), ``model``, and ``restrictions``: for
+  (activity of each condensed candidate that did not form), ``model``, ``rigorous`` (whether the
+  gap is a bound), ``stationarity``, ``tangent_distance`` (over RT) and ``starts`` of the
+  tangent-plane test (null, null and 0 for an ideal gas), and ``restrictions``: for
   each its ``field`` in the project, ``text``, and ``cost``: J by which the free energy would lie
   lower without it (null where that could not be settled), of ``cost_is`` "Gibbs energy" at the T
   and p reached, or "Helmholtz energy" at the T and V;
@@ -24,7 +32,11 @@ Top level: ``format`` ("thalweg-answer"), ``version``, ``title``, ``cases``. Eac
   in traces only). Each of the list has ``equation``, ``numbers`` (stoichiometric, products
   positive), ``extent`` mol, ``ln_k`` and ``ln_q`` (1 bar), ``q_over_k``, ``dh`` ``dg`` J/mol and
   ``ds`` ``dcp`` J/(mol K) at T, ``dh298`` ``dg298`` ``ds298``, ``t_eq`` K (where K equals Q),
-  ``approach`` K (T less t_eq) and ``notes``; null where there is no such figure.
+  ``approach`` K (T less t_eq) and ``notes``; null where there is no such figure;
+- ``beside_ideal``, only where asked for: the same case with an ideal gas: ``T p V H U S G heat``
+  and ``phases`` as above, ``shares`` (mole fractions of the main species: ``real``, ``ideal``,
+  and what they are fractions ``of``: "gas" or "all"), or an ``error`` as below; null where the gas
+  of the case is ideal.
 
 ``error`` has ``kind`` ("input", "no end state", "not proven") and ``faults``, each with
 ``field``, ``text``, ``value``, ``allowed``.
@@ -38,8 +50,10 @@ from typing import Any, Final
 
 from solver.errors import InputError, NoEndState, SettleError
 from solver.fixed import PAIRS
+from solver.project.beside import CaseBeside
 from solver.project.case import CaseAnswer
 from solver.project.cautions import cautions
+from solver.project.gas import pairs_of
 from solver.project.model import Case, Project
 from solver.reactions import Figures, ReactionsView
 
@@ -50,6 +64,7 @@ def answers(
     project: Project,
     results: Sequence[tuple[Case, CaseAnswer | SettleError]],
     reactions: Sequence[ReactionsView | None] | None = None,
+    beside: Sequence[CaseBeside | SettleError | None] | None = None,
 ) -> dict[str, Any]:
     """The whole document, made of plain Python values.
 
@@ -61,8 +76,12 @@ def answers(
         Each case with its answer, or with what stood in the way.
     reactions
         One for each case, or None where there is none; left out where they were not asked for.
+    beside
+        The ideal answer of each case, what stood in its way, or None where the gas is ideal; left
+        out where it was not asked for.
     """
     views = [None] * len(results) if reactions is None else reactions
+    besides = [None] * len(results) if beside is None else beside
     return {
         "format": "thalweg-answer",
         "version": VERSION,
@@ -73,8 +92,9 @@ def answers(
                 "pair": case.fixed.pair,
                 **(_error(found) if isinstance(found, SettleError) else _answer(found)),
                 **({} if view is None else {"reactions": _reactions(found, view)}),
+                **({} if beside is None else {"beside_ideal": _beside(other)}),
             }
-            for (case, found), view in zip(results, views, strict=True)
+            for (case, found), view, other in zip(results, views, besides, strict=True)
         ],
     }
 
@@ -135,12 +155,17 @@ def _answer(answer: CaseAnswer) -> dict[str, Any]:
         "amounts": dict(end.amounts),
         "fractions": {key: end.fraction(key) for key in end.amounts},
         "phases": dict(end.phase_amounts),
+        "gas": _gas(answer),
         "proof": {
             "element_residual": proof.element_residual,
             "energy_residual": proof.energy_residual,
             "gap": proof.gap,
             "absent": dict(proof.absent),
             "model": proof.model,
+            "rigorous": proof.rigorous,
+            "stationarity": proof.stationarity,
+            "tangent_distance": proof.tangent_distance,
+            "starts": proof.starts,
             "restrictions": [
                 {
                     "field": field,
@@ -156,6 +181,40 @@ def _answer(answer: CaseAnswer) -> dict[str, Any]:
         "outside_range": list(end.outside_range),
         "messages": list(answer.messages),
         "cautions": list(cautions(end.fixed.pair)),
+    }
+
+
+def _gas(answer: CaseAnswer) -> dict[str, Any]:
+    end, model = answer.end, answer.prepared.gas
+    return {
+        "model": model.key,
+        "name": model.name,
+        "interactions": [
+            {"a": pair.a, "b": pair.b, "k": pair.k, "source": pair.source}
+            for pair in pairs_of(model, answer.prepared.candidates)
+        ],
+        "fluids": {name: dict(held) for name, held in end.fluids.items()},
+        "left_out": dict(end.left_out),
+        "taken_as_ideal": list(end.taken_as_ideal),
+        "cautions": list(end.cautions),
+    }
+
+
+def _beside(found: CaseBeside | SettleError | None) -> dict[str, Any] | None:
+    if found is None:
+        return None
+    if isinstance(found, SettleError):
+        return _error(found)
+    end = found.ideal.end
+    shares = {key: found.shares(key) for key in found.main}
+    return {
+        **{name: getattr(end, name) for name in ("T", "p", "V", "H", "U", "S", "G")},
+        "heat": found.ideal.heat,
+        "phases": dict(end.phase_amounts),
+        "shares": {
+            key: {"real": real, "ideal": ideal, "of": of}
+            for key, (real, ideal, of) in shares.items()
+        },
     }
 
 

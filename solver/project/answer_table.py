@@ -14,15 +14,17 @@ from rich.table import Table
 from solver.errors import SettleError
 from solver.project import units
 from solver.project.answer_json import cost_is
+from solver.project.beside import CaseBeside
 from solver.project.case import CaseAnswer
 from solver.project.cautions import cautions
+from solver.project.gas_table import print_beside, print_gas, proof_of_search
 from solver.project.model import Case, Project
 from solver.project.reaction_table import print_reactions
 from solver.project.wording import one_line, typeset
 from solver.reactions import ReactionsView
 
 SHOWN: Final = 1e-6
-"""Share of its phase from which a gas is printed; the rest is counted in one line."""
+"""Share of a fluid phase from which a species is printed; the rest is counted in one line."""
 NEAR: Final = 1e-3
 """Activity from which a condensed species that did not form is printed."""
 
@@ -48,8 +50,9 @@ def print_answers(
     project: Project,
     results: Sequence[tuple[Case, CaseAnswer | SettleError]],
     reactions: Sequence[ReactionsView | None] | None = None,
+    beside: Sequence[CaseBeside | SettleError | None] | None = None,
 ) -> None:
-    """Print every case that settled, with its reactions where they are given.
+    """Print every case that settled, with its reactions and the ideal answer where given.
 
     The faults of the others are on standard error.
     """
@@ -58,9 +61,12 @@ def print_answers(
     if any(isinstance(found, CaseAnswer) for _, found in results) and project.title:
         out.print(one_line(project.title), style="bold")
     pairs = []
-    for (case, found), view in zip(results, views, strict=True):
+    for place, ((case, found), view) in enumerate(zip(results, views, strict=True)):
         if isinstance(found, CaseAnswer):
             _print(out, case, found, view)
+            if beside is not None:
+                print_beside(out, beside[place])
+            out.print()
             pairs.append(case.fixed.pair)
     sentences = dict.fromkeys(sentence for pair in pairs for sentence in cautions(pair))
     for sentence in sorted(sentences, key=lambda s: s == cautions("T,p")[-1]):
@@ -83,12 +89,14 @@ def _print(out: Console, case: Case, answer: CaseAnswer, view: ReactionsView | N
     table, traces = _composition(answer, amount_unit, amount_factor)
     out.print(table)
     if traces:
-        out.print(f"  and {traces} gases below 1 ppm each")
+        what = "gas species" if end.fluids else "gases"
+        out.print(f"  and {traces} {what} below 1 ppm each")
     phases = end.phase_amounts
     out.print(
         "  phases  "
         + ", ".join(f"{key} {number(n * amount_factor)} {amount_unit}" for key, n in phases.items())
     )
+    print_gas(out, answer)
     _print_absent(out, answer)
     _print_restrictions(out, answer)
     proof = end.proof
@@ -96,12 +104,13 @@ def _print(out: Console, case: Case, answer: CaseAnswer, view: ReactionsView | N
         f"  proof   elements {_small(proof.element_residual)}, energy "
         f"{_small(proof.energy_residual)}, gap {_small(proof.gap)} (relative)"
     )
+    if searched := proof_of_search(answer):
+        out.print(f"          {searched}")
     out.print(f"  model   {typeset(proof.model)}")
     for message in answer.messages:
         out.print(f"  note    {one_line(message)}")
     if view is not None:
         print_reactions(out, answer, view)
-    out.print()
 
 
 def _heat(answer: CaseAnswer) -> str:
@@ -124,7 +133,7 @@ def _small(value: float) -> str:
 
 
 def _composition(answer: CaseAnswer, unit: str, factor: float) -> tuple[Table, int]:
-    """The table of what is there, and how many gases are too little to be printed."""
+    """The table of what is there, phase by phase, and how many gases are too little to print."""
     end = answer.end
     table = Table(box=box.SIMPLE_HEAD, pad_edge=False, show_edge=False, padding=(0, 1))
     table.add_column("  species")
@@ -132,23 +141,25 @@ def _composition(answer: CaseAnswer, unit: str, factor: float) -> tuple[Table, i
     table.add_column(unit, justify="right")
     table.add_column("mol % of phase", justify="right")
     table.add_column("phase")
-    traces = 0
-    rows = sorted(
-        ((sp, end.amounts[sp.key]) for sp in end.species),
-        key=lambda row: (row[0].phase != "gas", -row[1]),
-    )
-    for sp, n in rows:
-        share = end.fraction(sp.key)
-        if sp.phase == "gas" and share < SHOWN:
-            traces += 1
-        elif n > 0:
+    by_key = {sp.key: sp for sp in end.species}
+    printed = set()
+    pure = "pure " if end.fluids else ""
+    for name, held in end.phases.items():
+        total = sum(held.values())
+        shares = {key: n / total for key, n in held.items()}
+        for key in sorted(held, key=lambda key: -held[key]):
+            sp = by_key[key]
+            if sp.phase == "gas" and shares[key] < SHOWN:
+                continue
+            printed.add(key)
             table.add_row(
-                f"  {sp.key}",
+                f"  {key}",
                 sp.name,
-                units.number_text(n * factor),
-                units.number_text(100 * share),
-                sp.phase,
+                units.number_text(held[key] * factor),
+                units.number_text(100 * shares[key]),
+                name if name != key else f"{pure}{sp.phase}",
             )
+    traces = sum(sp.phase == "gas" and sp.key not in printed for sp in end.species)
     return table, traces
 
 

@@ -15,12 +15,14 @@ from typing import TYPE_CHECKING, Literal
 
 import species_db
 from solver.endstate import EndState
-from solver.errors import InputError, SettleError
-from solver.fed import as_fed
+from solver.errors import InputError, NotProven, SettleError
+from solver.fed import Fed, as_fed
 from solver.fixed import PAIRS, Fixed
+from solver.gas_model import GasModel
 from solver.project import units
 from solver.project.candidates import choose
 from solver.project.case_names import CaseNames
+from solver.project.gas import among, is_written, read_gas
 from solver.project.held import check_fixed, read_fixed
 from solver.project.model import Case
 from solver.project.restrictions import (
@@ -30,6 +32,7 @@ from solver.project.restrictions import (
 )
 from solver.project.reworded import in_terms_of_case
 from solver.project.streams import Basis, ReadStream, read_stream
+from solver.project.wording import typeset
 from solver.reactions import Reaction, ReactionsView, reactions_at
 from solver.restrictions import Restriction
 from solver.settle import settle
@@ -79,9 +82,9 @@ class Prepared:
     """A case in the solver's words.
 
     `feed` maps species to mol (mol/s on a flow basis), summed over the streams. `heat` is what
-    is added, J or W. `restrictions` are those of the solver, `restriction_fields` their paths in
-    the case; `reactions` is the engineer's own set, empty where one is to be chosen. `messages`
-    are remarks that do not stop the answer.
+    is added, J or W. `gas` is the gas model with the engineer's own k_ij. `restrictions` are those
+    of the solver, `restriction_fields` their paths in the case; `reactions` is the engineer's own
+    set, empty where one is to be chosen. `messages` are remarks that do not stop the answer.
     """
 
     feed: Mapping[Species, float]
@@ -89,7 +92,7 @@ class Prepared:
     fixed: Fixed
     fed: FedTotals
     basis: Basis
-    gas: str
+    gas: GasModel
     heat: float = 0.0
     messages: tuple[str, ...] = ()
     restrictions: tuple[Restriction, ...] = ()
@@ -137,6 +140,8 @@ def prepare(case: Case, library: Library | None = None) -> Prepared:
     ------
     CaseFaults
         With every fault found.
+    NotProven
+        The phases of a stream as it enters were not found.
     """
     library = species_db.load() if library is None else library
     faults: list[InputError] = []
@@ -171,17 +176,16 @@ def prepare(case: Case, library: Library | None = None) -> Prepared:
     if faults:
         more = [fault for fault in more if "[" in fault.field]
     faults += more
-    if case.gas != "ideal":
-        faults.append(InputError(f"The gas model {case.gas!r} is not known.", "gas", case.gas))
     basis = streams[0].basis if not faults else None
     names = CaseNames(candidates, library)
+    gas = read_gas(case, names, faults)
     restrictions, fields = read_restrictions(case, names, feed, basis, faults)
     reactions = read_reactions(case, names, faults)
     if faults or basis is None:
         check_fixed(case, faults)
         raise CaseFaults(faults)
     live = [stream for stream in streams if stream.feed]
-    fed = _totals(live, case.gas)
+    fed = _totals(live, gas)
     fixed, heat, notes = read_fixed(case, fed, basis, faults)
     if fixed is not None:
         check_approaches(restrictions, fields, fixed, faults)
@@ -189,13 +193,15 @@ def prepare(case: Case, library: Library | None = None) -> Prepared:
         raise CaseFaults(faults)
     messages = [m for stream in streams for m in stream.messages]
     messages += [m for stream in live for m in _feed_out_of_range(stream)]
+    if gas.is_ideal and any(is_written(typed) for typed in case.interactions):
+        notes.append("The gas is ideal: the k_ij of the case are not used.")
     return Prepared(
         MappingProxyType(feed),
         candidates,
         fixed,
         fed,
         basis,
-        case.gas,
+        gas,
         heat,
         (*messages, *notes, *names.remarks),
         tuple(restrictions),
@@ -233,7 +239,7 @@ def settle_prepared(prepared: Prepared) -> CaseAnswer:
     fed = prepared.fed
     at_volume = PAIRS[fixed.pair].holds_volume
     heat = end.U - fed.U if at_volume else end.H - fed.H
-    messages = prepared.messages + tuple(_end_out_of_range(end))
+    messages = (*prepared.messages, *_end_out_of_range(end), *_fed_as_pure(prepared, end))
     return CaseAnswer(end, fed, heat, prepared.basis, prepared, messages)
 
 
@@ -284,9 +290,9 @@ def _streams(case: Case, library: Library, faults: list[InputError]) -> list[Rea
     return streams
 
 
-def _totals(streams: Sequence[ReadStream], gas: str) -> FedTotals:
+def _totals(streams: Sequence[ReadStream], gas: GasModel) -> FedTotals:
     """Sums over the streams, each at its own temperature and pressure."""
-    states = [as_fed(stream.feed, stream.T, stream.p, gas=gas) for stream in streams]
+    states = [_fed(stream, gas) for stream in streams]
     return FedTotals(
         T=_common([stream.T for stream in streams]),
         p=_common([stream.p for stream in streams]),
@@ -297,6 +303,17 @@ def _totals(streams: Sequence[ReadStream], gas: str) -> FedTotals:
         mass=sum(n * sp.molar_mass for stream in streams for sp, n in stream.feed.items()),
         amount=sum(n for stream in streams for n in stream.feed.values()),
     )
+
+
+def _fed(stream: ReadStream, gas: GasModel) -> Fed:
+    try:
+        return as_fed(stream.feed, stream.T, stream.p, gas=among(gas, stream.feed))
+    except SettleError as error:
+        text, allowed = typeset(f"Stream {stream.name!r}: {error}"), typeset(error.allowed)
+        if isinstance(error, InputError):
+            fault = InputError(text, "streams", error.value, allowed)
+            raise CaseFaults([fault]) from None
+        raise NotProven(text, "streams", error.value, allowed) from None
 
 
 def _common(values: Sequence[float]) -> float | None:
@@ -314,6 +331,19 @@ def _end_out_of_range(end: EndState) -> list[str]:
     by_key = {sp.key: sp for sp in end.species}
     beyond = [by_key[key] for key in end.outside_range]
     return [_beyond("End state", beyond, end.T)] if beyond else []
+
+
+def _fed_as_pure(prepared: Prepared, end: EndState) -> list[str]:
+    """Liquids that are fed by their own record and end up in that of the equation of state."""
+    fed = [sp.key for sp in prepared.feed if sp.key in end.left_out]
+    if not fed:
+        return []
+    listed = " and ".join(fed)
+    return [
+        f"{listed} {'is' if len(fed) == 1 else 'are'} fed by the record of the pure liquid and "
+        f"end{'s' if len(fed) == 1 else ''} up in the fluid of the equation of state; what the two "
+        "differ by in enthalpy and volume counts in the heat and in T."
+    ]
 
 
 def _beyond(where: str, species: Sequence[Species], T: float) -> str:

@@ -14,6 +14,7 @@ from pydantic import BaseModel, ConfigDict, Field, Strict
 PairName = Literal["T,p", "H,p", "U,V", "T,V", "S,p", "S,V"]
 Variable = Literal["T", "p", "V", "H", "U", "S"]
 PhaseName = Literal["gas", "liquid", "solid"]
+GasName = Literal["ideal", "srk", "pr"]
 
 Number = Annotated[float, Strict()] | str
 """A number, or the text that could not be read as one ("" while nothing is typed yet)."""
@@ -136,6 +137,18 @@ Restriction = Annotated[
 """What keeps a mixture short of full equilibrium; an empty one counts as not written."""
 
 
+class Interaction(_Frozen):
+    """A binary interaction parameter k_ij of one's own, over the published ones.
+
+    `a` and `b` are gas species as typed, `k` a number. One with nothing in it counts as not
+    written; all are kept, but not used, while the gas is ideal.
+    """
+
+    a: str = ""
+    b: str = ""
+    k: Number = ""
+
+
 class TemperaturePlot(_Frozen):
     """The range of the composition plot; no part of the answer."""
 
@@ -154,7 +167,9 @@ class Case(_Frozen):
     restrictions: tuple[Restriction, ...] = ()
     reactions: tuple[str, ...] = ()
     """The engineer's own reaction set, for the view of reactions; empty: one is chosen."""
-    gas: Literal["ideal"] = "ideal"
+    gas: GasName = "ideal"
+    """The gas model: ideal, Soave-Redlich-Kwong or Peng-Robinson."""
+    interactions: tuple[Interaction, ...] = ()
     plot: TemperaturePlot = TemperaturePlot()
     notes: str = ""
 

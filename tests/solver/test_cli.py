@@ -10,7 +10,15 @@ import pytest
 
 from solver import cli
 from solver.project import file
-from solver.project.model import Amount, Case, FixedPair, Project, Quantity, Stream
+from solver.project.model import (
+    Amount,
+    Case,
+    FixedPair,
+    Interaction,
+    Project,
+    Quantity,
+    Stream,
+)
 
 ROOT = Path(__file__).parents[2]
 SAMPLES = sorted((ROOT / "samples").glob("*.thalweg"))
@@ -73,7 +81,7 @@ def test_json_has_the_keys_it_promises(capsys):
     case = document["cases"][0]
     assert set(case) == {
         "name", "pair", "basis", "T", "p", "V", "H", "U", "S", "G", "heat", "heat_is", "fed",
-        "amounts", "fractions", "phases", "proof", "outside_range", "messages", "cautions",
+        "amounts", "fractions", "phases", "gas", "proof", "outside_range", "messages", "cautions",
     }  # fmt: skip
     assert case["basis"] == "flow"
     assert case["T"] == pytest.approx(1118.15)
@@ -82,8 +90,66 @@ def test_json_has_the_keys_it_promises(capsys):
     assert sum(case["phases"].values()) == pytest.approx(sum(case["amounts"].values()))
     assert set(case["proof"]) == {
         "element_residual", "energy_residual", "gap", "absent", "model", "restrictions",
+        "rigorous", "stationarity", "tangent_distance", "starts",
     }  # fmt: skip
     assert case["proof"]["absent"]["C(gr)"] < 1
+
+
+def test_a_real_gas_is_told_phase_by_phase(capsys):
+    path = str(ROOT / "samples/wet-syngas-cooler.thalweg")
+    code, out, err = run(capsys, "settle", path)
+    assert (code, err) == (0, "")
+    rows = [line.split() for line in out.splitlines() if line.startswith("  H2O ")]
+    assert [row[-1] for row in rows] == ["gas", "liquid", "gas", "liquid"]
+    assert float(rows[1][-2]) > 99.8
+    assert "  gas     Soave-Redlich-Kwong; no k_ij is known for these pairs: all zero" in out
+    assert "  left out  H2O(l): the liquid of the equation of state stands for it" in out
+    assert "caution Dense phase with H2O" in out
+    assert "from 5 starts: no better state found; no rigorous bound" in out
+    assert "ideal beside real" not in out
+    assert sum(line.startswith("  phases  gas ") for line in out.splitlines()) == 2
+
+
+def test_the_ideal_answer_stands_beside_the_real_one_where_asked_for(capsys):
+    path = str(ROOT / "samples/ammonia-loop.thalweg")
+    code, out, err = run(capsys, "settle", path, "--beside-ideal")
+    assert (code, err) == (0, "")
+    assert "7 published k_ij, all others zero" in out
+    row, chilled = (line.split() for line in out.splitlines() if "NH3, mol % of gas" in line)
+    assert float(chilled[-3]) < 0.3 * float(chilled[-2])
+    real, ideal, change = (float(text.replace("−", "-")) for text in row[-3:])
+    assert real - ideal == pytest.approx(change, abs=0.01)
+    assert 1.4 < change < 1.7
+    assert "gas, % of all moles" in out  # of the chiller, where the ideal gas has no liquid
+    _, out, _ = run(capsys, "settle", path, "--beside-ideal", "--json")
+    case = json.loads(out)["cases"][0]
+    shares = case["beside_ideal"]["shares"]["NH3"]
+    assert shares["of"] == "gas"
+    assert shares["real"] == pytest.approx(case["fractions"]["NH3"])
+    assert case["gas"]["model"] == "pr"
+    assert {(pair["a"], pair["b"]) for pair in case["gas"]["interactions"]} >= {("N2", "NH3")}
+    assert all(pair["source"] for pair in case["gas"]["interactions"])
+    assert case["proof"]["rigorous"] is False
+    assert case["proof"]["starts"] > 0
+    assert sum(case["gas"]["fluids"]["gas"].values()) == pytest.approx(case["phases"]["gas"])
+
+
+def test_an_ideal_case_has_nothing_beside_it(capsys, save):
+    code, out, err = run(capsys, "settle", save(project(T=q(900, "K"))), "--beside-ideal")
+    assert (code, err) == (0, "")
+    assert "the gas of this case is ideal already" in out
+    _, out, _ = run(capsys, "settle", save(project(T=q(900, "K"))), "--beside-ideal", "--json")
+    assert json.loads(out)["cases"][0]["beside_ideal"] is None
+
+
+def test_a_wrong_pair_is_named_with_its_field(capsys, save):
+    case = project(T=q(900, "K")).model_copy(
+        update={"gas": "pr", "interactions": (Interaction(a="N2", b="Ar", k=0.1),)}
+    )
+    code, out, err = run(capsys, "settle", save(case))
+    assert code == 2
+    assert out == ""
+    assert err.startswith("thalweg: plant.thalweg, interactions[0].b: Ar is not among the")
 
 
 def test_restrictions_and_reactions_are_told_with_their_figures(capsys):

@@ -6,7 +6,10 @@ import numpy as np
 import pytest
 
 from solver.fixed import PAIRS
+from solver.gas.fluid import make_fluid
+from solver.gas.properties import ln_phi, residual_properties
 from solver.project import file
+from solver.project.beside import settle_beside
 from solver.project.case import reactions_of, settle_case
 
 FOLDER = Path(__file__).parents[3] / "samples"
@@ -72,6 +75,7 @@ def test_energy_closes_over_the_end_state(name, i):
     """H of the end state, summed here from the records, is H of the feed plus the heat.
 
     A condensed species of constant molar volume v adds v (p - 1 bar) to its enthalpy; U = H - p V.
+    A fluid of an equation of state adds its residual enthalpy.
     """
     found = answer(name, i)
     end = found.end
@@ -81,11 +85,28 @@ def test_energy_closes_over_the_end_state(name, i):
         return sp.h(end.T) + v * (end.p - 1e5)
 
     H = sum(end.amounts[sp.key] * h(sp) for sp in end.species)
+    H += sum(residual(found, phase).H[0] for phase in end.fluids)
     size = sum(abs(end.amounts[sp.key] * h(sp)) for sp in end.species)
     if PAIRS[end.fixed.pair].holds_volume:
         assert H - end.p * end.V == pytest.approx(found.fed.U + found.heat, abs=1e-9 * size)
     else:
         assert H - found.heat == pytest.approx(found.fed.H, abs=1e-9 * size)
+
+
+def fluid_of(found):
+    gas = found.prepared.gas
+    species = [sp for sp in found.end.species if sp.phase == "gas"]
+    return make_fluid(species, gas.key, gas.interactions)
+
+
+def amounts_in(found, phase):
+    held = found.end.fluids[phase]
+    return np.array([[held[sp.key] for sp in fluid_of(found).species]])
+
+
+def residual(found, phase):
+    T, p = np.array([found.end.T]), np.array([found.end.p])
+    return residual_properties(fluid_of(found), T, p, amounts_in(found, phase))
 
 
 def test_the_reformer_takes_heat_and_stays_clear_of_carbon():
@@ -273,3 +294,71 @@ def test_the_water_of_the_tank_takes_the_flame_down():
     pressed = species["H2O(l)"].g(end.T) + species["H2O(l)"].molar_volume * (end.p - 1e5)
     steam = species["H2O"].g(end.T) + R * end.T * np.log(end.fraction("H2O") * end.p / 1e5)
     assert steam == pytest.approx(pressed, abs=1e-5)
+
+
+def beside(name, i):
+    case = file.read(FOLDER / f"{name}.thalweg").cases[i]
+    return settle_beside(case, answer(name, i))
+
+
+def test_the_ammonia_converter_gives_more_than_an_ideal_gas_would():
+    found, both = answer("ammonia-loop", 0), beside("ammonia-loop", 0)
+    real, ideal, of = both.shares("NH3")
+    assert of == "gas"
+    assert 0.014 < real - ideal < 0.017
+    end, species, fluid = found.end, by_key(found), fluid_of(found)
+    phi = ln_phi(fluid, np.array([end.T]), np.array([end.p]), amounts_in(found, "gas"))[0]
+    at = {sp.key: k for k, sp in enumerate(fluid.species)}
+    numbers = (("N2", -1), ("H2", -3), ("NH3", 2))
+    ln_q = sum(
+        nu * (np.log(end.fraction(key, "gas") * end.p / 1e5) + phi[at[key]]) for key, nu in numbers
+    )
+    dg = sum(nu * species[key].g(end.T) for key, nu in numbers)
+    assert ln_q == pytest.approx(-dg / (R * end.T), abs=1e-9)
+
+
+@pytest.mark.parametrize(
+    ("name", "i"), [("ammonia-loop", 1), ("wet-syngas-cooler", 0), ("wet-syngas-cooler", 1)]
+)
+def test_what_condenses_has_the_same_fugacity_in_gas_and_liquid(name, i):
+    found = answer(name, i)
+    end, fluid = found.end, fluid_of(found)
+    T, p = np.array([end.T]), np.array([end.p])
+    ln_f = []
+    for phase in ("gas", "liquid"):
+        n = amounts_in(found, phase)
+        ln_f.append(np.log(n / n.sum())[0] + ln_phi(fluid, T, p, n)[0])
+    assert ln_f[0] == pytest.approx(ln_f[1], abs=1e-8)
+    assert found.heat < 0
+    for sp, n in found.prepared.feed.items():
+        assert end.amounts[sp.key] == pytest.approx(n, rel=1e-9), "cooled, not reacted"
+
+
+def test_the_chiller_takes_most_of_the_ammonia_out_and_an_ideal_gas_none():
+    found, both = answer("ammonia-loop", 1), beside("ammonia-loop", 1)
+    end = found.end
+    assert end.fluids["liquid"]["NH3"] > 0.75 * end.amounts["NH3"]
+    assert 0.01 < 1.0 - end.fraction("NH3", "liquid") < 0.05, "gases are dissolved"
+    assert list(both.ideal.end.phases) == ["gas"]
+    assert any("hydrogen bonds" in sentence for sentence in end.cautions)
+
+
+def test_water_condenses_once_and_the_models_part_at_the_dew_point():
+    warm, cold = (beside("wet-syngas-cooler", i) for i in range(2))
+    for both in (warm, cold):
+        end = both.real.end
+        assert end.left_out == {"H2O(l)": "H2O"}
+        assert end.amounts["H2O(l)"] == 0.0
+        assert end.fraction("H2O", "liquid") > 0.998
+        assert both.ideal.end.amounts["H2O(l)"] > 0.0
+
+    def condensed(both):
+        return (
+            both.real.end.fluids["liquid"]["H2O"],
+            both.ideal.end.amounts["H2O(l)"],
+        )
+
+    real, ideal = condensed(warm)
+    assert real < 0.5 * ideal
+    real, ideal = condensed(cold)
+    assert real == pytest.approx(ideal, rel=2e-3)

@@ -114,7 +114,7 @@ class _Vessel:
     ) -> None:
         self.mixture, self.basis, self.b, self.rows = mixture, basis, b, rows
         self.variable, self.value, self.V = variable, value, V
-        self.gas = mixture.gas if rows else np.zeros(0, dtype=np.intp)
+        self.gas = mixture.gas
         own = [k for k in range(len(basis.members)) if k not in set(rows)]
         self.own, self.members = own, [basis.members[k] for k in own]
         self.extra = [i for i in phases if i not in set(basis.members)]

@@ -165,13 +165,29 @@ def find_temperature(
             proposal = T + step
             slow = abs(excess) > 0.5 * before_last
             if slow or not low.T < proposal < high.T:
-                proposal = _crossing(low, high, crossings)
-                crossings += 1
+                join = _join(mixture, low, high)
+                proposal = _crossing(low, high, crossings) if join is None else join
+                crossings += join is None
             T = float(proposal)
         before_last, last = last, abs(excess)
     assert low is not None
     assert high is not None
     return _split(mixture, search, low, high)
+
+
+def _join(mixture: Mixture, low: Point, high: Point) -> float | None:
+    """A temperature between the ends, or just below the upper, at which a record changes form.
+
+    The segments of a record meet there; the upper one holds at the join itself.
+    """
+    for i in sorted({*low.present.active} & {*high.present.active}):
+        for segment in mixture.species[i].segments[1:]:
+            join = float(segment.T_low)
+            if low.T < join < high.T:
+                return join
+            if join == high.T and low.T < (below := float(np.nextafter(join, 0.0))):
+                return below
+    return None
 
 
 def _crossing(low: Point, high: Point, tries: int) -> float:

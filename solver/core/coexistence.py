@@ -18,10 +18,12 @@ from numpy.typing import NDArray
 
 from solver.core.basis import Basis, choose_members, component_amounts
 from solver.core.cases import Feed
-from solver.core.forced import one_sided
+from solver.core.forced import Sink, one_sided
 from solver.core.mixture import P0, Mixture, R
+from solver.core.phaseset import sink
 
 Array = NDArray[np.float64]
+Indices = NDArray[np.intp]
 
 _MAX_ITERATIONS = 40
 _MAX_STEP = 3.0  # of a potential or a logarithm
@@ -88,10 +90,11 @@ def coexist(
     taken = set(phases)
     rows = [k for k, m in enumerate(basis.members) if m not in taken]
     live = np.ones(mixture.gas.size, dtype=bool)
-    if one_sided(basis.reactions[mixture.gas], b, live, rows):
-        return None  # so are gases forced to zero
+    sinks = one_sided(basis.reactions[mixture.gas], b, live, rows)
+    vessel = _Vessel(mixture, basis, b, phases, rows, mixture.gas[live], variable, value, V)
     with np.errstate(all="ignore"):  # what is not finite is not taken
-        return _Vessel(mixture, basis, b, phases, rows, variable, value, V).solve(start)
+        found = vessel.solve(start)
+    return None if found is None else vessel.taken(*found, sinks)
 
 
 class _Vessel:
@@ -108,14 +111,15 @@ class _Vessel:
         b: Array,
         phases: tuple[int, ...],
         rows: list[int],
+        gas: Indices,
         variable: str,
         value: float,
         V: float,
     ) -> None:
         self.mixture, self.basis, self.b, self.rows = mixture, basis, b, rows
         self.variable, self.value, self.V = variable, value, V
-        self.gas = mixture.gas
-        own = [k for k in range(len(basis.members)) if k not in set(rows)]
+        self.gas = gas
+        own = [k for k, m in enumerate(basis.members) if m in set(phases)]
         self.own, self.members = own, [basis.members[k] for k in own]
         self.extra = [i for i in phases if i not in set(basis.members)]
         self.by_gas = basis.reactions[self.gas][:, rows]
@@ -123,8 +127,8 @@ class _Vessel:
         self.extra_of_own = basis.reactions[self.extra][:, own]
         self.condensed = [*self.members, *self.extra]
 
-    def solve(self, start: Sealed) -> Sealed | None:
-        """Newton's method from a start nearby."""
+    def solve(self, start: Sealed) -> tuple[Array, Array] | None:
+        """Newton's method from a start nearby: the unknowns, and the amounts (species,)."""
         mixture, rows = self.mixture, self.rows
         mu = mixture.A[list(self.basis.members)] @ start.potentials
         room = self.V - float(start.n @ mixture.volume)
@@ -139,7 +143,7 @@ class _Vessel:
             if not np.isfinite(worst):
                 return None
             if worst <= _CLOSED and (worst <= 1e-15 or worst >= 0.3 * last):
-                return self._taken(x, n)
+                return x, n
             last = worst
             try:
                 step = -np.linalg.solve(J, F)
@@ -225,13 +229,14 @@ class _Vessel:
         n[gas], n[condensed] = n_gas, n_condensed
         return F, J, n
 
-    def _taken(self, x: Array, n: Array) -> Sealed | None:
+    def taken(self, x: Array, n: Array, sinks: list[Sink]) -> Sealed | None:
         """The solution, unless an amount is negative or a phase that is absent would form."""
         mixture, m = self.mixture, len(self.rows)
         T, p = float(np.exp(x[m + 2])), float(x[m + 1])
         g = mixture.thermo.over(np.array([T]))[0][0] + mixture.volume * ((p - P0) / (R * T))
         mu = g[list(self.basis.members)].copy()
         mu[self.rows] = x[:m]
+        sink(g[None, :], mu[None, :], sinks, self.basis, self.gas)
         force = self.basis.reactions @ mu - g
         others = np.setdiff1d(mixture.condensed, self.condensed)
         highest = float(force[others].max(initial=-np.inf))

@@ -28,6 +28,7 @@ _CLOSED = 2e-13
 _FIRST_T = 1000.0
 _AT_END = 5e-11
 _SLIVER = 1e-11
+_FILLED = 1e-12
 
 
 class OutOfReach(ArithmeticError):
@@ -160,7 +161,7 @@ def find_temperature(
             shared = tried.coexisting(mixture, feed, search, low, high)
             if shared is not None:
                 return shared
-            if high.T - low.T <= _narrow(search, low, high):
+            if high.T - low.T <= _narrow(mixture, search, low, high):
                 return _split(mixture, search, low, high)
             proposal = T + step
             slow = abs(excess) > 0.5 * before_last
@@ -180,7 +181,7 @@ def _join(mixture: Mixture, low: Point, high: Point) -> float | None:
 
     The segments of a record meet there; the upper one holds at the join itself.
     """
-    for i in sorted({*low.present.active} & {*high.present.active}):
+    for i in sorted({*_condensed(mixture, low)} & {*_condensed(mixture, high)}):
         for segment in mixture.species[i].segments[1:]:
             join = float(segment.T_low)
             if low.T < join < high.T:
@@ -219,16 +220,23 @@ def _crossing(low: Point, high: Point, tries: int) -> float:
     return float(T) if low.T < T < high.T else middle
 
 
-def _narrow(search: Search, low: Point, high: Point) -> float:
+def _condensed(mixture: Mixture, point: Point) -> tuple[int, ...]:
+    """Condensed species present: all in a split too, which keeps the set of one of its ends."""
+    return tuple(mixture.condensed[point.n[mixture.condensed] > 0.0].tolist())
+
+
+def _narrow(mixture: Mixture, search: Search, low: Point, high: Point) -> float:
     """Width of a bracket, K, that is a transition."""
-    if _shares_vessel(search, low, high):
+    if _shares_vessel(mixture, search, low, high):
         return _SLIVER * high.T  # along the sliver the pressure changes: its width is of no account
     return float(4.0 * np.spacing(high.T))
 
 
-def _shares_vessel(search: Search, low: Point, high: Point) -> bool:
+def _shares_vessel(mixture: Mixture, search: Search, low: Point, high: Point) -> bool:
     """Whether unlike phases at the two ends bring about unlike pressures."""
-    return search.V is not None and low.p != high.p and low.present.active != high.present.active
+    if search.V is None or low.p == high.p:
+        return False
+    return _condensed(mixture, low) != _condensed(mixture, high)
 
 
 @dataclass
@@ -242,9 +250,10 @@ class _Tried:
         self, mixture: Mixture, feed: Feed, search: Search, low: Point, high: Point
     ) -> Point | None:
         """The state in which the phases of both ends share the vessel, if there is one."""
-        if not _shares_vessel(search, low, high):
+        if not _shares_vessel(mixture, search, low, high):
             return None
-        sets, width = (low.present.active, high.present.active), high.T - low.T
+        sets = _condensed(mixture, low), _condensed(mixture, high)
+        width = high.T - low.T
         if sets == self.sets and width > 0.05 * self.width:
             return None
         self.sets, self.width = sets, width
@@ -284,7 +293,7 @@ def _split(mixture: Mixture, search: Search, low: Point, high: Point) -> Point:
     if search.V is not None and low.p != high.p:
         # the two ends have the volume held, each at its own pressure: so has the split at its own
         p = _pressure(mixture, n, high, search.V)
-        if _shares_vessel(search, low, high):
+        if _shares_vessel(mixture, search, low, high):
             # over the width of a sliver the energy changes by more than rounding
             off = search.value - float(
                 getattr(_state(mixture, n, high.T, p, search.V), search.variable)[0]
@@ -299,6 +308,8 @@ def _split(mixture: Mixture, search: Search, low: Point, high: Point) -> Point:
 
 
 def _pressure(mixture: Mixture, n: Array, near: Point, V: float) -> float:
-    """Pressure of the gas in what is left to it, Pa; without gas that of a point nearby."""
-    gas = float(n[mixture.gas].sum())
-    return gas * R * near.T / (V - float(n @ mixture.volume)) if gas else near.p
+    """Pressure of the gas in what is left to it, Pa; without gas that which fills the vessel."""
+    gas, left = float(n[mixture.gas].sum()), V - float(n @ mixture.volume)
+    if gas:
+        return gas * R * near.T / left
+    return near.p if left <= _FILLED * V else 0.0

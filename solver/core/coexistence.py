@@ -82,8 +82,9 @@ def coexist(
     if mixture.shifts or mixture.twins or not start.p > 0.0:
         return None  # restricted so, or empty of gas: rare enough to be left to the search
     gases = mixture.gas[np.argsort(-start.n[mixture.gas], kind="stable")]
-    chosen = choose_members(mixture.A, [*phases, *gases.tolist()], mixture.rank)
-    if len(chosen) < mixture.rank or set(phases) <= set(chosen):
+    order = [*phases, *gases.tolist(), *mixture.condensed.tolist()]
+    chosen = choose_members(mixture.A, order, mixture.rank)
+    if set(phases) <= set(chosen):
         return None
     basis = mixture.basis(chosen)
     b = component_amounts(feed.amounts, feed.vectors, basis)[0]

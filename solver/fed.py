@@ -23,6 +23,7 @@ if TYPE_CHECKING:
 Array = NDArray[np.float64]
 
 MOST = 1e30  # mol
+LEAST = 1e-250  # of the largest amount fed; less counts as nothing (one molecule is 2e-24 mol)
 
 
 @dataclass(frozen=True, slots=True)

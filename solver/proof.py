@@ -111,12 +111,13 @@ def element_residuals(mixture: Mixture, n: Array, feed: Feed) -> tuple[Array, Ar
 def volume_residual(mixture: Mixture, n: Array, T: Array, p: Array, V: Array) -> Array:
     """|N R T/p + sum n v - V| / V (cases,): whether amounts, T, p and the volume held agree.
 
-    Zero where there is no gas: condensed phases need not fill a vessel.
+    Without gas and pressure the condensed phases need not fill the vessel, but must fit.
     """
     N = n[:, mixture.is_gas].sum(axis=1)
+    over = n @ mixture.volume - V
     with np.errstate(divide="ignore", invalid="ignore"):
-        filled = np.where(N > 0.0, N * R * T / p, V - n @ mixture.volume)
-    return np.asarray(np.abs(filled + n @ mixture.volume - V) / V)
+        over += np.where(N > 0.0, N * R * T / p, 0.0)
+    return np.asarray(np.where((N > 0.0) | (p > 0.0), np.abs(over), np.maximum(over, 0.0)) / V)
 
 
 def optimality_gap(

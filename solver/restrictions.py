@@ -147,14 +147,15 @@ Restriction = Inert | FixedConversion | HeldApproach | NoExchange
 
 @dataclass(frozen=True, slots=True)
 class Cost:
-    """What a restriction costs: how much lower the state would lie without it.
+    """What a restriction costs: how much lower the state would lie without it alone.
 
     Attributes
     ----------
     restriction : str
         In words.
     energy : float
-        J; of Gibbs energy at the T and p reached, or of Helmholtz energy at the T and V.
+        J; of Gibbs energy at the T and p reached, or of Helmholtz energy at the T and V, with
+        the other restrictions built in (`solver.costs`); not below zero but for rounding.
     """
 
     restriction: str

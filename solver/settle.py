@@ -17,9 +17,10 @@ from solver.core.minimise import NotHeld, Unsettled, check_room
 from solver.core.mixture import Held, Mixture, R
 from solver.core.temperature import OutOfReach, Point, Search, point_at
 from solver.core.vessel import TooSmall
+from solver.costs import costs
 from solver.endstate import PRESENT, EndState
 from solver.errors import InputError, NoEndState, NotProven, SettleError
-from solver.fed import checked_amount
+from solver.fed import LEAST, checked_amount
 from solver.fixed import PAIRS, T_HIGHEST, T_LOWEST, Fixed, Pair
 from solver.gas_model import GasModel, gas_model
 from solver.posed import Posed, pose
@@ -31,7 +32,7 @@ from solver.proof import (
     optimality_gap,
     volume_residual,
 )
-from solver.restrictions import Cost, Restriction
+from solver.restrictions import Restriction
 
 if TYPE_CHECKING:
     from species_db import Species
@@ -56,7 +57,8 @@ def settle(
     species : sequence of Species
         The candidates: what may be present at the end.
     feed : mapping of Species or str to float
-        mol; a string is the key of a candidate.
+        mol; a string is the key of a candidate. Less than 1e-250 of the largest counts as
+        nothing.
     fixed : Fixed
         The pair of state variables held.
     gas : str or GasModel
@@ -84,8 +86,13 @@ def settle(
     end = _settled(species, feed, fixed, model, held_back)
     if not held_back:
         return end
-    costs = _costs(species, feed, end, model, held_back)
-    return replace(end, proof=replace(end.proof, restrictions=costs))
+    fed, amounts = _checked_feed(species, feed)
+
+    def settled(at: Fixed, rest: tuple[Restriction, ...]) -> EndState:
+        return _settled(species, feed, at, model, rest)
+
+    prices = costs(species, fed, amounts, end, held_back, settled)
+    return replace(end, proof=replace(end.proof, restrictions=prices))
 
 
 def _settled(
@@ -130,7 +137,9 @@ def _checked_feed(
         raise InputError(
             "The feed is empty; give at least one amount above zero.", "feed", 0.0, "above 0 mol"
         )
-    return list(gathered), np.array(list(gathered.values()))
+    least = LEAST * max(gathered.values())
+    counted = {sp: amount for sp, amount in gathered.items() if amount > least}
+    return list(counted), np.array(list(counted.values()))
 
 
 def check_species(species: Sequence[Species]) -> dict[str, Species]:
@@ -245,31 +254,6 @@ def _find(mixture: Mixture, feed: Feed, fixed: Fixed, scale: float) -> Point:
         return point_at(mixture, feed, Held(fixed.values[0], p=p, V=V), None, None)
     search = Search(pair.searched, fixed.values[0] * scale, p, V, T_LOWEST, T_HIGHEST)
     return seek_temperature(mixture, feed, search)
-
-
-def _costs(
-    species: Sequence[Species],
-    feed: Mapping[Species | str, float],
-    end: EndState,
-    gas: GasModel,
-    restrictions: tuple[Restriction, ...],
-) -> tuple[Cost, ...]:
-    """How much lower the free energy would lie without each restriction, at the T reached."""
-    holds_volume = PAIRS[end.fixed.pair].holds_volume
-    fixed = Fixed("T,V", T=end.T, V=end.V) if holds_volume else Fixed("T,p", T=end.T, p=end.p)
-    out = []
-    for restriction in restrictions:
-        rest = tuple(r for r in restrictions if r is not restriction)
-        try:
-            free = _settled(species, feed, fixed, gas, rest)
-        except SettleError:
-            out.append(Cost(str(restriction), float("nan")))
-            continue
-        energy = end.G - free.G
-        if holds_volume:
-            energy = (end.U - end.T * end.S) - (free.U - free.T * free.S)
-        out.append(Cost(str(restriction), energy))
-    return tuple(out)
 
 
 def _end_state(

@@ -19,7 +19,7 @@ from solver.core.totals import totals
 from solver.core.vessel import TooSmall
 from solver.endstates import EndStates
 from solver.errors import InputError, SettleError
-from solver.fed import MOST
+from solver.fed import LEAST, MOST
 from solver.fixed import PAIRS, T_HIGHEST, T_LOWEST, Pair, allowed_range, checked_value
 from solver.gas_model import GasModel, gas_model
 from solver.posed import Posed, pose
@@ -119,7 +119,7 @@ def _settle_all(
     count = len(first)
     good = np.array([i not in why for i in range(count)], dtype=bool)
     # cases that feed the same species share a mixture
-    there = amounts > 0.0
+    there = amounts > LEAST * amounts.max(axis=1, keepdims=True)
     alike = bool((there == there[0]).all())
     for presence in there[:1] if alike else np.unique(there[good], axis=0):
         same = good & (there == presence).all(axis=1)

@@ -26,7 +26,7 @@ _MAX_ITERATIONS = 80
 _MAX_STEP = 300.0  # largest change of a component's ln activity in one step
 _CLOSED = 2e-14
 _EXP_LIMIT = 690.0
-_FAINT = 1e-250
+_FAINT, _CUT_OFF = 1e-250, 1e-295
 _CASES_FIRST = ("n", "log_n")  # of the arrays of a State
 _CERTAIN = 3e-9  # a last step this small leaves an error of its square
 _STALE = 14  # steps forward without halving the sum of squares
@@ -365,12 +365,14 @@ class State:
         return closed, failed
 
     def _rescale_extremes(self, now: Residuals) -> None:
-        larger, F, J = np.maximum(now.P, now.M), now.F, now.J
-        plain = self.log_n.max(initial=0.0) <= 300.0 and larger.min(initial=1.0) >= _FAINT
+        P, M, F, J = now.P, now.M, now.F, now.J
+        # faint balances, and those of which one side is cut off where the exponential ends
+        faint = (np.maximum(P, M) < _FAINT) | (np.minimum(P, M) < _CUT_OFF)
+        plain = self.log_n.max(initial=0.0) <= 300.0 and not faint.any()
         if plain and np.isfinite(F).all():
             return
         over = self.log_n.max(axis=1) > 300.0
-        beyond = (larger < _FAINT) | over | ~np.isfinite(F[: self.rows])
+        beyond = faint | over | ~np.isfinite(F[: self.rows])
         if self.many:
             # a start so far off is better given up for a nearer one
             self.lost |= over

@@ -122,7 +122,8 @@ class Cases:
         left = self.V[cases] - n @ self.mixture.volume
         with np.errstate(divide="ignore", invalid="ignore"):
             p = gas * R * self.T[cases] / left
-        return np.where(left > 0.0, p, np.where(gas > 0.0, np.inf, 0.0))
+        overfull = (gas > 0.0) | (left < -1e-12 * self.V[cases])
+        return np.where(left > 0.0, p, np.where(overfull, np.inf, 0.0))
 
     def members(self, active: Sequence[int], amounts: Array) -> list[int]:
         """Components: active condensed phases, then gases by amounts (or their ln) (species,)."""

@@ -103,8 +103,6 @@ def minimise(mixture: Mixture, feed: Feed, held: Held, start: Present | None = N
     TooSmall
         The vessel cannot hold what must stay condensed.
     """
-    if held.V is not None and not mixture.gas.size:
-        return _without_gas(mixture, feed, held)
     case = Cases(
         mixture,
         feed,
@@ -112,6 +110,8 @@ def minimise(mixture: Mixture, feed: Feed, held: Held, start: Present | None = N
         None if held.p is None else np.array([held.p]),
         None if held.V is None else np.array([held.V]),
     )
+    if held.V is not None and not mixture.gas.size:
+        return _without_gas(case, held)
     if held.V is not None and start is not None and start.log_p is not None:
         return _by_pressure(case, held, start.log_p)
     if start is not None:
@@ -171,13 +171,12 @@ def _by_pressure(case: Cases, held: Held, guess: float) -> Minimum:
     return replace(last, n=n, p=p, present=replace(last.present, log_p=log_p))
 
 
-def _without_gas(mixture: Mixture, feed: Feed, held: Held) -> Minimum:
-    """A vessel whose candidates are all condensed: nothing evaporates, no pressure."""
+def _without_gas(case: Cases, held: Held) -> Minimum:
+    """A vessel whose candidates are all condensed: no pressure, unless it must make them fit."""
     assert held.V is not None
-    found = minimise(mixture, feed, Held(held.T, p=_VACUUM))
-    needed = float(found.n @ mixture.volume)
-    if needed > held.V * (1.0 + 1e-12):
-        raise TooSmall(needed)
+    found = minimise(case.mixture, case.feed, Held(held.T, p=_VACUUM))
+    if float(found.n @ case.mixture.volume) > held.V * (1.0 + 1e-12):
+        return _by_pressure(case, held, 0.0)
     return replace(found, p=0.0)
 
 

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from solver.core.balance import GasSystem, Vessel, nearer_start, solve_balances
+from solver.core.balance import GasSolution, GasSystem, Vessel, nearer_start, solve_balances
 from solver.core.basis import Basis, component_amounts
 from solver.core.cases import Cases
 from solver.core.columns import rows_of
@@ -22,6 +22,8 @@ Flags = NDArray[np.bool_]
 
 _EPS = float(np.finfo(float).eps)
 _DOMINANCE = 1e6  # a component this much scarcer than a species it builds is a poor component
+_FAINT = 1e-250
+_MET = 1e-10  # ln of the ratio of two sides; a proper last step leaves far less
 _ABSENT = -50.0  # ln activity at most, of a species that the balances force to zero
 
 
@@ -217,11 +219,16 @@ def _solve_gas(
     if vessel is not None:
         nu, vessel = nearer_start(system, kappa, b, start, nu, given, vessel)
     solution = solve_balances(system, kappa, b, start, nu, limit, vessel)
-    if count == 1 and not solution.closed[0] and not infeasible(part, b[0]):
+    closed = _closed(system, b, solution)
+    if vessel is not None and count == 1 and not closed[0]:
+        solution = _rarefied(system, kappa, b, start, limit, vessel) or solution
+        closed = solution.closed
+    if count == 1 and not closed[0] and not infeasible(part, b[0]):
         near, size = descend(part, kappa[0], b[0], start[0], float(nu[0]), grows, float(limit[0]))
         solution = solve_balances(system, kappa, b, near[None, :], np.array([size]), limit, vessel)
+        closed = _closed(system, b, solution)
     log_a[:, rows] = solution.log_a
-    n, closed = solution.n, solution.closed
+    n = solution.n
     total = n.sum(axis=1)
     amounts = n
     if homogeneous:
@@ -229,6 +236,24 @@ def _solve_gas(
         amounts = np.zeros(n.shape)
     y = amounts if closed.all() else n / total[:, None]
     return _GasResult(amounts, y, log_a, nu if homogeneous else solution.nu, closed)
+
+
+def _closed(system: GasSystem, b: Array, solution: GasSolution) -> Flags:
+    """Which cases are solved; one by itself has to meet its equations, however short its last step.
+
+    Where the slopes hardly determine a step, as of a gas that a solid of the same make feeds,
+    the shortest of all possible steps is taken: it is no sign of an end.
+    """
+    if len(b) > 1 or system.extra > 1 or not solution.closed[0]:
+        return solution.closed  # many cases give such a step up; a shared vessel takes none
+    n = solution.n[0]
+    up = n @ np.maximum(system.reactions, 0.0) + np.maximum(-b[0], 0.0)
+    down = n @ np.maximum(-system.reactions, 0.0) + np.maximum(b[0], 0.0)
+    seen = np.minimum(up, down) > _FAINT
+    off = float(np.abs(np.log(up[seen] / down[seen])).max(initial=0.0))
+    if system.extra:
+        off = max(off, abs(float(np.log(n.sum()) - solution.nu[0])))
+    return np.array([off <= _MET])
 
 
 def _shared(
@@ -248,6 +273,24 @@ def _shared(
     unit = R * cases.T[which] / P0
     w = np.where(left <= 0.0, 0.5 * cases.atoms[which] / V, 1.0 / unit)
     return swelling, Vessel(left, unit, w)
+
+
+def _rarefied(
+    system: GasSystem, kappa: Array, b: Array, start: Array, limit: Array, vessel: Vessel
+) -> GasSolution | None:
+    """The gas above condensed phases that it neither presses nor shrinks, to rounding.
+
+    Such gases may be fainter than any number: in a volume given beforehand their balances
+    are solved in logarithms.
+    """
+    if not vessel.left[0] > 0.0:
+        return None
+    nu = np.log(vessel.left / vessel.unit)
+    alone = kappa + system.swelling / vessel.unit[:, None]
+    apart = GasSystem.of(system.reactions, holds_pressure=False)
+    solution = solve_balances(apart, alone, b, start, nu, limit)
+    felt = float(solution.n[0] @ np.abs(system.swelling)) / vessel.left[0]
+    return solution if solution.closed[0] and felt <= _EPS else None
 
 
 def sink(c: Array, mu: Array, sinks: list[Sink], basis: Basis, live: Indices) -> None:

@@ -15,6 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from solver.core.cases import Feed
+from solver.core.coexistence import Sealed, coexist
 from solver.core.minimise import Minimum, Present, minimise
 from solver.core.mixture import Held, Mixture, R
 from solver.core.response import by_log_T
@@ -27,6 +28,7 @@ _CLOSED = 2e-13
 _FIRST_T = 1000.0
 _AT_END = 5e-11
 _SLIVER = 1e-11
+_FILLED = 1e-12
 
 
 class OutOfReach(ArithmeticError):
@@ -127,6 +129,7 @@ def find_temperature(
     T = min(max(T, search.T_low), search.T_high)
     before_last = last = np.inf  # size of the two excesses before
     creeps = crossings = 0
+    tried = _Tried()
     for _ in range(_MAX_EVALUATIONS):
         point = point_at(mixture, feed, search.held(T), present, search.variable)
         present = point.present
@@ -155,23 +158,37 @@ def find_temperature(
             limits = max(0.4 * T, search.T_low), min(2.5 * T, search.T_high)
             T = float(np.clip(T + step, *limits))
         else:
-            narrow = 4.0 * np.spacing(high.T)
-            if search.V is not None and low.present.active != high.present.active:
-                # two forms of unlike volume share a vessel over a sliver of temperatures,
-                # along which the pressure changes: its width is of no account
-                narrow = _SLIVER * high.T
-            if high.T - low.T <= narrow:
+            shared = tried.coexisting(mixture, feed, search, low, high)
+            if shared is not None:
+                return shared
+            if high.T - low.T <= _narrow(mixture, search, low, high):
                 return _split(mixture, search, low, high)
             proposal = T + step
             slow = abs(excess) > 0.5 * before_last
             if slow or not low.T < proposal < high.T:
-                proposal = _crossing(low, high, crossings)
-                crossings += 1
+                join = _join(mixture, low, high)
+                proposal = _crossing(low, high, crossings) if join is None else join
+                crossings += join is None
             T = float(proposal)
         before_last, last = last, abs(excess)
     assert low is not None
     assert high is not None
     return _split(mixture, search, low, high)
+
+
+def _join(mixture: Mixture, low: Point, high: Point) -> float | None:
+    """A temperature between the ends, or just below the upper, at which a record changes form.
+
+    The segments of a record meet there; the upper one holds at the join itself.
+    """
+    for i in sorted({*_condensed(mixture, low)} & {*_condensed(mixture, high)}):
+        for segment in mixture.species[i].segments[1:]:
+            join = float(segment.T_low)
+            if low.T < join < high.T:
+                return join
+            if join == high.T and low.T < (below := float(np.nextafter(join, 0.0))):
+                return below
+    return None
 
 
 def _crossing(low: Point, high: Point, tries: int) -> float:
@@ -203,17 +220,96 @@ def _crossing(low: Point, high: Point, tries: int) -> float:
     return float(T) if low.T < T < high.T else middle
 
 
+def _condensed(mixture: Mixture, point: Point) -> tuple[int, ...]:
+    """Condensed species present: all in a split too, which keeps the set of one of its ends."""
+    return tuple(mixture.condensed[point.n[mixture.condensed] > 0.0].tolist())
+
+
+def _narrow(mixture: Mixture, search: Search, low: Point, high: Point) -> float:
+    """Width of a bracket, K, that is a transition."""
+    if _shares_vessel(mixture, search, low, high):
+        return _SLIVER * high.T  # along the sliver the pressure changes: its width is of no account
+    return float(4.0 * np.spacing(high.T))
+
+
+def _shares_vessel(mixture: Mixture, search: Search, low: Point, high: Point) -> bool:
+    """Whether unlike phases at the two ends bring about unlike pressures."""
+    if search.V is None or low.p == high.p:
+        return False
+    return _condensed(mixture, low) != _condensed(mixture, high)
+
+
+@dataclass
+class _Tried:
+    """The pairs of phase sets and the widths at which a shared vessel was sought."""
+
+    sets: tuple[tuple[int, ...], tuple[int, ...]] | None = None
+    width: float = np.inf
+
+    def coexisting(
+        self, mixture: Mixture, feed: Feed, search: Search, low: Point, high: Point
+    ) -> Point | None:
+        """The state in which the phases of both ends share the vessel, if there is one."""
+        if not _shares_vessel(mixture, search, low, high):
+            return None
+        sets = _condensed(mixture, low), _condensed(mixture, high)
+        width = high.T - low.T
+        if sets == self.sets and width > 0.05 * self.width:
+            return None
+        self.sets, self.width = sets, width
+        bottom, top = low.value(search.variable), high.value(search.variable)
+        n = _blend(search.value - bottom, top - search.value, high.n, low.n)
+        potentials = 0.5 * (low.potentials + high.potentials)
+        start = Sealed(0.5 * (low.T + high.T), high.p, n, potentials)
+        phases = tuple(sorted({*sets[0], *sets[1]}))
+        assert search.V is not None
+        found = coexist(mixture, feed, phases, search.variable, search.value, search.V, start)
+        if found is None or not low.T <= found.T <= high.T:
+            return None
+        state = _state(mixture, found.n, found.T, found.p, search.V)
+        return Point(found.T, found.p, found.n, found.potentials, high.present, state, None)
+
+
+def _blend(share: float, other: float, one: Array, two: Array) -> Array:
+    """Two arrays in the proportion of the shares; each by itself, as one may be tiny."""
+    return (share * one + other * two) / (share + other)
+
+
+def _state(mixture: Mixture, n: Array, T: float, p: float, V: float) -> Totals:
+    at = np.array([T])
+    g, h, _ = mixture.thermo.over(at)
+    return totals(
+        n[None, :], mixture.is_gas, mixture.volume, g, h, at, np.array([p]), np.array([V]),
+        mixture.twins,
+    )  # fmt: skip
+
+
 def _split(mixture: Mixture, search: Search, low: Point, high: Point) -> Point:
     """The mixture of two minima at a transition that has the value searched."""
     bottom, top = low.value(search.variable), high.value(search.variable)
-    share = (search.value - bottom) / (top - bottom)
-    n = (1.0 - share) * low.n + share * high.n
-    state = low.totals.blend(high.totals, share)
-    p = high.p
-    if search.V is not None and high.p != low.p:
+    over, under = search.value - bottom, top - search.value
+    n = _blend(over, under, high.n, low.n)
+    state, p = low.totals.blend(high.totals, over / (over + under)), high.p
+    if search.V is not None and low.p != high.p:
         # the two ends have the volume held, each at its own pressure: so has the split at its own
-        gas = float(n[mixture.gas].sum())
-        p = gas * R * high.T / (search.V - float(n @ mixture.volume))
-        H = state.U + p * state.V
-        state = Totals(V=state.V, H=H, U=state.U, S=state.S, G=H - high.T * state.S)
+        p = _pressure(mixture, n, high, search.V)
+        if _shares_vessel(mixture, search, low, high):
+            # over the width of a sliver the energy changes by more than rounding
+            off = search.value - float(
+                getattr(_state(mixture, n, high.T, p, search.V), search.variable)[0]
+            )
+            n = _blend(over + off, under - off, high.n, low.n)
+            p = _pressure(mixture, n, high, search.V)
+            state = _state(mixture, n, high.T, p, search.V)
+        else:
+            H = state.U + p * state.V
+            state = Totals(V=state.V, H=H, U=state.U, S=state.S, G=H - high.T * state.S)
     return Point(high.T, p, n, high.potentials, high.present, state, None)
+
+
+def _pressure(mixture: Mixture, n: Array, near: Point, V: float) -> float:
+    """Pressure of the gas in what is left to it, Pa; without gas that which fills the vessel."""
+    gas, left = float(n[mixture.gas].sum()), V - float(n @ mixture.volume)
+    if gas:
+        return gas * R * near.T / left
+    return near.p if left <= _FILLED * V else 0.0

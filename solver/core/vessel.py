@@ -106,8 +106,8 @@ def fill(
             continue
         low, high = ends[True], ends[False]
         if high[0] - low[0] <= 4.0 * np.spacing(max(abs(high[0]), abs(low[0]), 1.0)):
-            share = (held.V - low[1]) / (high[1] - low[1])
-            n = (1.0 - share) * low[2] + share * high[2]
+            # each share by itself: one may be lost beside the other
+            n = ((held.V - high[1]) * low[2] + (low[1] - held.V) * high[2]) / (low[1] - high[1])
             return high[3], n, P0 * float(np.exp(high[0]))
         # regula falsi on ln V, halving whenever it creeps
         with np.errstate(all="ignore"):

@@ -58,7 +58,7 @@ def judge(problem: Problem, *, lower_bound: bool = False) -> Verdict:
 def _judged(problem: Problem, lower_bound: bool) -> Verdict:
     species, feed = problem.species, problem.fed
     pair = KNOWN[problem.pair]
-    start = None
+    start = fixed = None
     try:
         if problem.values:
             fixed = solver.Fixed(problem.pair, **problem.values)
@@ -82,7 +82,7 @@ def _judged(problem: Problem, lower_bound: bool) -> Verdict:
         check_out_of_range(problem, species, feed, fixed, start)
         return Verdict("no end state", str(error))
     except solver.InputError as error:
-        check_refusal(problem, species, feed, error)
+        check_refusal(problem, species, feed, fixed, error)
         return Verdict("refused", str(error))
     verdict = check_state(end, species, feed)
     if start is not None and not problem.offset and abs(end.T / start.T - 1.0) > 1e-8:
@@ -145,8 +145,11 @@ def check_functions(end: solver.EndState, species: list[Species], n: np.ndarray)
     v = np.array([sp.molar_volume or 0.0 if sp.phase != "gas" else 0.0 for sp in species])
     N = n[gas].sum()
     V = n @ v + (N * R * T / end.p if N else 0.0)
-    if KNOWN[end.fixed.pair].holds_volume and not N:
-        V = end.V  # nothing evaporates: the rest of the vessel is empty
+    if KNOWN[end.fixed.pair].holds_volume and not N and not end.p:
+        # nothing evaporates: the rest of the vessel is empty
+        if V > end.V * (1.0 + 1e-10):
+            raise Fault(f"{V} m3 of condensed phases are in a vessel of {end.V} m3")
+        V = end.V
     y = n[gas][n[gas] > 0.0] / N if N else np.zeros(0)
     mixing = N * R * (np.log(end.p / P0) + y @ np.log(y)) if N else 0.0
     bounds = []
@@ -199,11 +202,17 @@ def check_out_of_range(
 
 
 def check_refusal(
-    problem: Problem, species: list[Species], feed: dict[Species, float], error: solver.InputError
+    problem: Problem,
+    species: list[Species],
+    feed: dict[Species, float],
+    fixed: solver.Fixed | None,
+    error: solver.InputError,
 ) -> None:
     """That the feed cannot be held, or that the vessel is too small; raises Fault."""
     if error.field == "fixed.V":
-        if problem.T and problem.volume > 1.001 * least_volume(species, feed, problem.T):
+        if fixed is None:  # refused at the temperature from which its energy was to come
+            fixed = solver.Fixed("T,V", T=problem.T, V=problem.volume)
+        if fixed.V > 1.001 * least_volume(species, feed, fixed):
             raise Fault(f"the vessel is refused, yet its contents fit: {error}")
         return
     if error.field == "species":
@@ -223,9 +232,20 @@ def can_hold(species: list[Species], feed: dict[Species, float]) -> bool:
     return bool(found.status == 0)
 
 
-def least_volume(species: list[Species], feed: dict[Species, float], T: float) -> float:
-    """Volume of the feed at T under the highest pressure a vessel must bear, m3."""
-    end = solver.settle(species, feed, solver.Fixed("T,p", T=T, p=P_CRUSH))
+def least_volume(species: list[Species], feed: dict[Species, float], fixed: solver.Fixed) -> float:
+    """Volume, m3, to which the contents swell or shrink under the most a vessel must bear.
+
+    With the energy or entropy held the contents do so without heat, against that pressure: if
+    they press harder, they end up larger than the vessel.
+    """
+    held = {"p": P_CRUSH}
+    if fixed.pair == "U,V":
+        at = solver.Fixed("H,p", H=fixed.U + P_CRUSH * fixed.V, **held)
+    elif fixed.pair == "S,V":
+        at = solver.Fixed("S,p", S=fixed.S, **held)
+    else:
+        at = solver.Fixed("T,p", T=fixed.T, **held)
+    end = solver.settle(species, feed, at)
     check_state(end, species, feed)
     check_lower_bound(end, species, feed)
     return end.V

@@ -58,7 +58,15 @@ def random_restricted(seed: int) -> Restricted | None:
             return None
         if found:
             reaction = found[int(rng.integers(len(found)))].reaction
-            chosen = [solver.HeldApproach(reaction, float(rng.uniform(-100.0, 100.0)))]
+            held = solver.HeldApproach(reaction, float(rng.uniform(-100.0, 100.0)))
+            in_it = {sp.key for sp in reaction.numbers}
+            beside = [
+                r
+                for r in chosen
+                if (isinstance(r, solver.Inert) and not r.whole)
+                or (isinstance(r, solver.FixedConversion) and r.species not in in_it)
+            ]
+            chosen = [held, *beside] if rng.random() < 0.5 else [held]
     return Restricted(species, feed, fixed, tuple(chosen)) if chosen else None
 
 
@@ -103,25 +111,14 @@ def _judged(case: Restricted) -> Verdict:
             if abs(end.amounts[r.species] - left) > HELD * fed[r.species]:
                 raise Fault(f"{r}, yet {end.amounts[r.species]} mol are left, not {left}")
         elif isinstance(r, solver.HeldApproach):
-            check_approach(end, r)
+            check_approach(end, r, case)
         else:
             check_group(end, r, case)
-    for cost in end.proof.restrictions if costs_fall(case) else ():
+    for cost in end.proof.restrictions:
         scale = 1e-9 * R * end.T * n.sum() + 1e-13 * abs(end.G)
         if cost.energy < -scale:
             raise Fault(f"{cost.restriction} costs {cost.energy} J")
     return Verdict("settled", "", elements, traces, 0.0, end.proof.gap)
-
-
-def costs_fall(case: Restricted) -> bool:
-    """Whether no restriction can have a negative cost: each only narrows what is allowed.
-
-    A shifted K is no such thing, and the inert part of a species mixes apart from the rest.
-    """
-    return not any(
-        isinstance(r, solver.HeldApproach) or (isinstance(r, solver.Inert) and not r.whole)
-        for r in case.restrictions
-    )
 
 
 def obeyed_by_some(case: Restricted) -> bool:
@@ -157,12 +154,22 @@ def obeyed_by_some(case: Restricted) -> bool:
     return bool(found.status == 0)
 
 
-def check_approach(end: solver.EndState, held: solver.HeldApproach) -> None:
+def check_approach(end: solver.EndState, held: solver.HeldApproach, case: Restricted) -> None:
     """Q of the reaction is K at the shifted temperature, where all of its species are present."""
-    amounts, log_q, log_k, T = end.amounts, 0.0, 0.0, end.T + held.dT
+    amounts, log_q, log_k, T = dict(end.amounts), 0.0, 0.0, end.T + held.dT
     if T < 1.0:
         return
-    N = sum(amounts[sp.key] for sp in end.species if sp.phase == "gas")
+    fed = {sp.key: x for sp, x in case.feed.items()}
+    inert = 0.0
+    for r in case.restrictions:
+        if isinstance(r, solver.Inert):  # the inert part dilutes, but does not react
+            part = r.amount if r.amount is not None else (r.share or 0.0) * fed[r.species]
+            if amounts[r.species] - part <= 1e-6 * part:
+                return  # too little of the rest to be told from rounding
+            amounts[r.species] -= part
+            if next(sp for sp in end.species if sp.key == r.species).phase == "gas":
+                inert += part
+    N = inert + sum(amounts[sp.key] for sp in end.species if sp.phase == "gas")
     for sp, nu in held.reaction.numbers.items():
         x = amounts[sp.key]
         if x <= 1e-290:

@@ -7,12 +7,14 @@ import numpy.typing as npt
 import pytest
 
 import solver
+import species_db
 from species_db import Species
 from tests.solver.mixtures import BY_NAME, MIXTURES, Mixture
 from tests.solver.peers.problems import FUZZ, pure_potentials, random_problem
 
 Vector = npt.NDArray[np.float64]
 
+LIB = species_db.load()
 every_mixture = pytest.mark.parametrize("mixture", MIXTURES, ids=str)
 random_seeds = pytest.mark.parametrize("seed", range(1000, 1000 + 60 * FUZZ))
 
@@ -268,3 +270,27 @@ def test_gibbs_energy_falls_with_S_and_rises_with_V(mixture: Mixture):
     assert -by_T == pytest.approx(end.S, rel=1e-6)
     by_p = (G(T, p * (1 + step)) - G(T, p * (1 - step))) / (2 * step * p)
     assert by_p == pytest.approx(end.V, rel=1e-5, abs=1e-9 * abs(end.G) / p)
+
+
+@pytest.mark.parametrize("amount", [1e-100, 1e-200, 1e-240, 1e-260, 1e-300, 5e-324])
+@pytest.mark.parametrize("T", [300.0, 1500.0])
+@pytest.mark.parametrize(
+    ("keys", "feed"),
+    [
+        ("N2 O2 NO Ar", {"N2": 0.8, "O2": 0.2, "Ar": None}),
+        ("N2 O2 NO H2 H2O H OH", {"N2": 0.8, "O2": 0.2, "H2": None}),
+        ("N2 O2 Fe Fe(s) Fe2O3(s)", {"N2": 0.8, "O2": 0.2, "Fe(s)": None}),
+        ("Fe Fe(s) Fe(l) Ar", {"Fe(s)": 1.0, "Ar": None}),
+    ],
+)
+def test_amounts_below_all_measure_are_kept_or_count_as_nothing(keys, feed, T, amount):
+    """Amounts that one end state leaves and another is fed may be 1e-300 mol, and do no harm."""
+    species = [LIB[key] for key in keys.split()]
+    given = {LIB[key]: amount if x is None else x for key, x in feed.items()}
+    counted = {sp: x for sp, x in given.items() if x > 1e-250}
+    for fixed in (solver.Fixed("T,p", T=T, p=1e5), solver.Fixed("T,V", T=T, V=1e-3)):
+        end = solver.settle(species, given, fixed)
+        check_balance(end, species, counted)
+        ends = solver.settle_many(species, given, fixed.pair, *([x] for x in fixed.values))
+        assert ends.settled.all()
+        np.testing.assert_allclose(ends.amounts[0], list(end.amounts.values()), atol=1e-12)

@@ -1,5 +1,7 @@
 """Phase changes at one temperature, and vessels with liquid in them."""
 
+import time
+
 import numpy as np
 import pytest
 
@@ -139,6 +141,56 @@ def test_vessel_smaller_than_its_liquid_is_refused():
         solver.settle(candidates, feed, fixed)
     assert caught.value.field == "fixed.V"
     assert caught.value.value == 1e-3
+
+
+@pytest.mark.parametrize("share", [0.9, 0.5])
+def test_vessel_smaller_than_its_solid_is_refused_though_gases_are_candidates(share):
+    """All iron as FeO leaves no oxygen for a gas; the vessel holds less than the solid."""
+    oxides = species("FeO(s)", "Fe2O3(s)", "Fe3O4(s)", "O2")
+    V = share * LIB["FeO(s)"].molar_volume
+    with pytest.raises(InputError, match="smaller than the liquids"):
+        solver.settle(oxides, {"FeO(s)": 1.0}, Fixed("T,V", T=900.0, V=V))
+
+
+@pytest.mark.parametrize("pair", ["U,V", "S,V"])
+@pytest.mark.parametrize(
+    ("solid", "liquid", "gas", "T", "V"),
+    [
+        ("H2O(s)", "H2O(l)", "N2", 273.0, 1e-4),
+        ("S(s)", "S(l)", "Ar", 388.0, 1e-4),
+        ("Fe(s)", "Fe(l)", "Ar", 1809.0, 1e-2),
+    ],
+)
+def test_melting_in_a_vessel_beside_a_gas(pair, solid, liquid, gas, T, V):
+    """Both forms at one Gibbs energy each under the pressure of the gas, which they change."""
+    candidates, feed = species(solid, liquid, gas), {solid: 2.0, gas: 0.05}
+    variable = pair[0]
+    low, high = (
+        getattr(solver.settle(candidates, feed, Fixed("T,V", T=T + d, V=V)), variable)
+        for d in (-3.0, 3.0)
+    )
+    begin = time.process_time()
+    melting = [
+        solver.settle(candidates, feed, Fixed(pair, **{variable: low + s * (high - low)}, V=V))
+        for s in (0.4, 0.6)
+    ]
+    assert time.process_time() - begin < 1.0  # of two, a few hundredths each
+    for end in melting:
+        assert end.amounts[solid] > 0.0
+        assert end.amounts[liquid] > 0.0
+        v = [LIB[key].molar_volume for key in (solid, liquid)]
+        room = V - end.amounts[solid] * v[0] - end.amounts[liquid] * v[1]
+        assert end.p == pytest.approx(0.05 * R * end.T / room, rel=1e-12)
+        g = [
+            LIB[key].g(end.T) + volume * (end.p - 1e5)
+            for key, volume in zip((solid, liquid), v, strict=True)
+        ]
+        assert g[0] - g[1] == pytest.approx(0.0, abs=1e-10 * R * end.T)
+    # the pressure moves the melting point: dT/dp = T dv/dh (Clapeyron)
+    first, second = melting
+    T = first.T
+    slope = T * (v[1] - v[0]) / (LIB[liquid].h(T) - LIB[solid].h(T) + (v[1] - v[0]) * first.p)
+    assert second.T - first.T == pytest.approx(slope * (second.p - first.p), rel=1e-2)
 
 
 def test_liquid_in_a_sealed_vessel_comes_back_from_its_energy():

@@ -112,6 +112,33 @@ def test_proof_states_what_holds_and_its_cost(restrictions, pair):
         assert cost.energy > -1e-6 * abs(end.T)  # J; a restriction never helps
 
 
+PAIRED = [
+    (Inert("CH4", share=0.4), HeldApproach(REFORMING, 100.0)),
+    (Inert("CH4", share=0.4), HeldApproach(SHIFT, -100.0, key="CO2")),
+    (Inert("H2O", share=0.05), Inert("CH4", share=0.4)),
+    (HeldApproach(REFORMING, -100.0), HeldApproach(SHIFT, -100.0, key="CO2")),
+    (FixedConversion("CH4", 0.9), Inert("N2", share=0.9)),
+]
+
+
+@pytest.mark.parametrize("restrictions", PAIRED, ids=lambda r: " & ".join(map(str, r)))
+@pytest.mark.parametrize("pair", ["T,p", "H,p", "U,V"])
+def test_no_restriction_helps_beside_another(restrictions, pair):
+    """G alone may fall, as the other one does not seek the least G: that is no gain of this one."""
+    fed = solver.as_fed({LIB[k]: n for k, n in FEED.items()}, 1300.0, 20e5)
+    values = {"T,p": {"T": 900.0, "p": 20e5}, "H,p": {"H": fed.H, "p": fed.p}}
+    values["U,V"] = {"U": fed.U, "V": fed.V}
+    end = settled(*restrictions, fixed=Fixed(pair, **values[pair]))
+    for cost in end.proof.restrictions:
+        assert cost.energy > 1e-3  # J; each of these does hold the mixture back
+
+
+def test_cost_beside_a_whole_inert_species_is_that_in_gibbs_energy():
+    both = settled(Inert("N2"), FixedConversion("CH4", 0.5))
+    one = settled(Inert("N2"))
+    assert both.proof.restrictions[1].energy == pytest.approx(both.G - one.G, rel=1e-9)
+
+
 def test_batch_obeys_the_same():
     T = np.linspace(900.0, 1300.0, 50)
     held = (HeldApproach(REFORMING, -20.0), Inert("N2"))

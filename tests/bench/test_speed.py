@@ -16,6 +16,7 @@ import pytest
 
 import solver
 from tests.bench import peers
+from tests.bench.beside import times_of
 from tests.solver.peers.problems import Arrays, Problem, arrays, gibbs, library
 
 SPECIES = 68
@@ -70,6 +71,8 @@ def test_settle_one(benchmark, name: str, with_graphite: bool):
     missed = (gibbs(data, n) - best) / n.sum()
     off = np.abs(data.A @ n - data.b).max() / data.b.max()
     benchmark.extra_info |= {"missed": missed, "balance": off}
+    if name == "Clarabel":
+        benchmark.extra_info["over Thalweg"] = times_of(thalweg(problem), solve, 60)
     assert abs(missed) < may_miss
     assert off < max(may_miss, 1e-6)
 
@@ -83,8 +86,14 @@ def test_settle_energy(benchmark, pair: str, values: tuple[str, str]):
     problem = mixture(True)
     fed = solver.as_fed(problem.feed, T=700.0, p=problem.p)
     fixed = solver.Fixed(pair, **{name: getattr(fed, name) for name in values})
-    end = benchmark(lambda: solver.settle(list(problem.species), problem.feed, fixed))
+    species = list(problem.species)
+
+    def settle() -> solver.EndState:
+        return solver.settle(species, problem.feed, fixed)
+
+    end = benchmark(settle)
     assert end.proof.energy_residual <= 1e-10
+    benchmark.extra_info["over T,p"] = times_of(thalweg(problem), settle, 40)
 
 
 CASES = 1000
@@ -115,8 +124,16 @@ def batch(with_graphite: bool, kind: str):
 def test_settle_many(benchmark, kind: str, with_graphite: bool):
     """A thousand cases in one call."""
     species, feeds, pair, X, Y = batch(with_graphite, kind)
-    ends = benchmark(lambda: solver.settle_many(species, feeds, pair, X, Y))
+
+    def settle() -> solver.EndStates:
+        return solver.settle_many(species, feeds, pair, X, Y)
+
+    ends = benchmark(settle)
     assert ends.settled.all()
+    conic = peer(peers.conic)(mixture(with_graphite))
+    benchmark.extra_info["Clarabel over"] = CASES * times_of(settle, conic, 12)
+    plain = batch(with_graphite, "T,p")
+    benchmark.extra_info["over T,p"] = times_of(lambda: solver.settle_many(*plain), settle, 8)
     names = solver.PAIRS[pair].variables
     for i in range(0, CASES, 97):
         one = solver.settle(
@@ -135,9 +152,14 @@ def test_settle_real(benchmark, gas: str, with_graphite: bool):
     problem = mixture(with_graphite)
     species = list(problem.species)
     fixed = solver.Fixed("T,p", T=problem.T, p=problem.p)
-    end = benchmark(lambda: solver.settle(species, problem.feed, fixed, gas=gas))
+
+    def settle() -> solver.EndState:
+        return solver.settle(species, problem.feed, fixed, gas=gas)
+
+    end = benchmark(settle)
     assert end.proof.holds
     assert end.fluids
+    benchmark.extra_info["over ideal"] = times_of(thalweg(problem), settle, 40)
 
 
 @pytest.mark.parametrize("with_graphite", [False, True], ids=["gas", "gas and graphite"])
@@ -146,8 +168,13 @@ def test_settle_real(benchmark, gas: str, with_graphite: bool):
 def test_settle_many_real(benchmark, gas: str, with_graphite: bool):
     """A thousand unordered cases with an equation of state."""
     species, feeds, pair, X, Y = batch(with_graphite, "T,p")
-    ends = benchmark(lambda: solver.settle_many(species, feeds, pair, X, Y, gas=gas))
+
+    def settle(gas: str = gas) -> solver.EndStates:
+        return solver.settle_many(species, feeds, pair, X, Y, gas=gas)
+
+    ends = benchmark(settle)
     assert ends.settled.all()
+    benchmark.extra_info["over ideal"] = times_of(lambda: settle("ideal"), settle, 8)
     for i in range(0, CASES, 97):
         one = solver.settle(
             species,

@@ -111,11 +111,10 @@ def _named(cases: RealCases, fluids: Array) -> Array:
     """
     there = fluids.sum(axis=2) > 0.0
     liquid = there.copy()
-    every = np.arange(len(cases))
     for slot, root in enumerate(ROOTS):
         if not there[:, slot].any():
             continue
-        dense, one_root = packing(cases, every, fluids[:, slot], root)
+        dense, one_root = packing(cases, slice(None), fluids[:, slot], root)
         cold = cases.T < _pseudocritical(cases, fluids[:, slot])
         dense_and_cold = (dense > LIQUID) & cold
         if slot == 0:  # of two roots the vapour's is a gas

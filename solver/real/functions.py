@@ -39,7 +39,7 @@ def state_functions(cases: RealCases, fluids: Array, n: Array) -> Totals:
         )
         H, S = H + state.H, S + state.S
         amounts = fluids[:, slot]
-        residual = cases.fluid.residual((amounts[:, None, :] @ cases.q)[:, 0], root)
+        residual = cases.fluid.residual(cases.moments(amounts), root)
         heat = -_times(residual.grad, amounts, cases.qT)
         # from Z itself: a liquid takes but a small part of the ideal volume
         V += RT / p * amounts.sum(axis=1) * residual.Z

@@ -204,10 +204,10 @@ class Judge:
 
 
 def packing(
-    cases: RealCases, which: Indices, n: Array, root: str
+    cases: RealCases, which: Indices | slice, n: Array, root: str
 ) -> tuple[Array, NDArray[np.bool_]]:
     """Volume fraction b/v of fluids of amounts n (cases, gas species), and if no root is beside."""
-    M = (n[:, None, :] @ cases.q[which])[:, 0]
+    M = cases.moments(n, which)
     residual = cases.fluid.residual(M, root)
     with np.errstate(divide="ignore", invalid="ignore"):
         dense = np.where(M[:, 0] > 0.0, M[:, 1] / (M[:, 0] * residual.Z), 0.0)

@@ -109,7 +109,7 @@ def _begin(cases: RealCases, rows: Indices, slot: int, fluid: Array, out: Minima
     """Size and fugacity coefficients of a fluid phase of given amounts (rows, gas species)."""
     total = fluid.sum(axis=1)
     share = fluid / total[:, None]
-    residual = cases.fluid.residual((share[:, None, :] @ cases.q[rows])[:, 0], ROOTS[slot])
+    residual = cases.fluid.residual(cases.moments(share, rows), ROOTS[slot])
     out.nu[rows, slot], out.theta[rows, slot] = np.log(total), residual.grad
 
 

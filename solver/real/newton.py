@@ -215,9 +215,8 @@ def _iterate(
     calm: int,
 ) -> tuple[_State, Flags, Indices]:
     count, r = b.shape
-    q = cases.q
     log_n = (log_a @ a.T - kappa)[:, None, :] + nu[:, :, None]
-    log_n -= np.einsum("cgm,cfm->cfg", q, theta)
+    log_n -= cases.log_phi(theta)
     log_n[:, :, ~live] = -np.inf
     state = _State(log_a.copy(), nu.copy(), theta.copy(), log_n)
     whole = _State(state.log_a.copy(), state.nu.copy(), state.theta.copy(), log_n.copy())
@@ -226,10 +225,10 @@ def _iterate(
     sides = (np.maximum(a, 0.0), np.maximum(-a, 0.0))
     best, stale = np.full(count, np.inf), np.zeros(count, dtype=int)
     merit_last = np.full(count, np.inf)
-    step = np.zeros((count, r + len(slots) * (1 + q.shape[2])))
+    step = np.zeros((count, r + len(slots) * (1 + theta.shape[2])))
     with np.errstate(all="ignore"):
         for iteration in range(_MAX_ITERATIONS):
-            J, F = _slopes(cases, slots, a, sides, q, b, state, iteration < calm)
+            J, F = _slopes(cases, slots, a, sides, b, state, iteration < calm)
             merit = np.einsum("ij,ij->i", F, F)
             back = (merit > merit_last) & (merit > 1e-16) & (iteration > calm)
             stale = np.where(merit < 0.5 * best, 0, stale + 1)
@@ -239,11 +238,11 @@ def _iterate(
             for case in np.flatnonzero(off):
                 finite = np.isfinite(J[case]).all() and np.isfinite(F[case]).all()
                 newton[case] = shortest(J[case], F[case]) if finite else np.nan
-            _damp(newton, r, len(slots), q, state)
+            _damp(newton, cases, r, len(slots), state)
             move = np.where(back[:, None], -0.75 * step, newton)
             step = np.where(back[:, None], 0.25 * step, newton)
             merit_last = np.where(back, merit_last, merit)
-            size = _apply(state, move, a, q, len(slots))
+            size = _apply(state, move, a, cases, len(slots))
             done = (size <= _CERTAIN) & ~back & (iteration >= calm)
             gone = state.nu - np.logaddexp.reduce(state.nu, axis=1)[:, None] < _GONE
             lost = ~np.isfinite(size) | (stale > _STALE + calm) | (gone.any(axis=1) & ~done)
@@ -256,7 +255,7 @@ def _iterate(
             if not going.any():
                 return whole, closed, vanishing
             cases = cases.of(np.flatnonzero(going))
-            q, b, index = q[going], b[going], index[going]
+            b, index = b[going], index[going]
             best, stale, merit_last = best[going], stale[going], merit_last[going]
             step = step[going]
             state = _State(
@@ -276,15 +275,15 @@ def _slopes(
     slots: tuple[int, ...],
     a: Array,
     sides: tuple[Array, Array],
-    q: Array,
     b: Array,
     state: _State,
     follow: bool,
 ) -> tuple[Array, Array]:
     """Slopes J and residuals F of balances, sizes of the phases, and moments."""
     count, r = b.shape
-    fluids, m = len(slots), q.shape[2]
+    fluids, m = len(slots), state.theta.shape[2]
     unknowns = r + fluids * (1 + m)
+    own, core = cases.own, cases.core
     n = np.exp(np.clip(state.log_n, None, _EXP_LIMIT))
     total = n.sum(axis=1)
     P = total @ sides[0] + np.maximum(-b, 0.0)
@@ -304,26 +303,31 @@ def _slopes(
         J[:, r + f, :r] = share @ a
         F[:, r + f] = np.log(N) - state.nu[:, f]
         # moments per mole of the phase: the gradient does not depend on its size
-        residual = cases.fluid.residual((share[:, None, :] @ q)[:, 0], ROOTS[slot])
+        moments = cases.moments(share)
+        residual = cases.fluid.residual(moments, ROOTS[slot])
         F[:, theta] = state.theta[:, f] - residual.grad
         J[:, range(at, at + m), range(at, at + m)] = 1.0
         if follow:
             continue
-        J[:, :r, theta] = -(used @ q)
-        J[:, r + f, theta] = -(share[:, None, :] @ q)[:, 0]
-        held = share[:, :, None] * q
-        J[:, theta, :r] = -residual.hess @ (held.transpose(0, 2, 1) @ a)
-        J[:, theta, theta] += residual.hess @ (held.transpose(0, 2, 1) @ q)
+        J[:, :r, at] = -J[:, :r, r + f]
+        J[:, :r, at + 1 : at + m] = -(used[:, :, own] @ core)
+        J[:, r + f, theta] = -moments
+        held = share[:, own, None] * core
+        by_a, by_q = np.empty((count, m, r)), np.empty((count, m, m))
+        by_a[:, 0], by_q[:, 0] = J[:, r + f, :r], moments
+        by_a[:, 1:], by_q[:, 1:, 0] = held.transpose(0, 2, 1) @ a[own], moments[:, 1:]
+        by_q[:, 1:, 1:] = held.transpose(0, 2, 1) @ core
+        J[:, theta, :r] = -residual.hess @ by_a
+        J[:, theta, theta] += residual.hess @ by_q
     return J, F
 
 
-def _damp(step: Array, r: int, fluids: int, q: Array, state: _State) -> None:
+def _damp(step: Array, cases: RealCases, r: int, fluids: int, state: _State) -> None:
     """Shorten steps (cases, unknowns) in place that leave the reach of their slopes."""
-    m = q.shape[2]
     nu = step[:, r : r + fluids]
     if fluids > 1:  # a phase that is not there would fall without end
         np.clip(nu, -_SIZE_STEP, _SIZE_STEP, out=nu)
-    change = np.einsum("cgm,cfm->cfg", q, step[:, r + fluids :].reshape(-1, fluids, m))
+    change = cases.log_phi(step[:, r + fluids :].reshape(len(step), fluids, -1))
     share = state.log_n - state.nu[:, :, None]
     change = np.where(share > np.log(_MATTERS), np.abs(change), 0.0).max(axis=(1, 2))
     size = np.abs(step[:, : r + fluids]).max(axis=1)
@@ -332,15 +336,15 @@ def _damp(step: Array, r: int, fluids: int, q: Array, state: _State) -> None:
     step *= factor[:, None]
 
 
-def _apply(state: _State, move: Array, a: Array, q: Array, fluids: int) -> Array:
+def _apply(state: _State, move: Array, a: Array, cases: RealCases, fluids: int) -> Array:
     """Take a step; its size (cases,) in terms of ln of amounts."""
-    r, m = state.log_a.shape[1], q.shape[2]
-    dtheta = move[:, r + fluids :].reshape(-1, fluids, m)
+    r = state.log_a.shape[1]
+    dtheta = move[:, r + fluids :].reshape(len(move), fluids, -1)
     state.log_a += move[:, :r]
     state.nu += move[:, r : r + fluids]
     state.theta += dtheta
     change = (move[:, :r] @ a.T)[:, None, :] + move[:, r : r + fluids, None]
-    change -= np.einsum("cgm,cfm->cfg", q, dtheta)
+    change -= cases.log_phi(dtheta)
     state.log_n += change
     there = state.log_n > state.nu[:, :, None] - 690.0
     size = np.where(there, np.abs(change), 0.0).max(axis=(1, 2), initial=0.0)

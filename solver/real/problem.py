@@ -102,6 +102,10 @@ class RealCases:
         The same cases without the equation of state; `ideal.c` is g/RT at the pressure held.
     q, qT, qTT, qp : ndarray, shape (cases, gas species, moments)
         Moments of each gas species and their derivatives by ln T, ln T twice, and ln p.
+    own : ndarray of int
+        Gas species that the equation of state models.
+    core : ndarray, shape (cases, modelled species, moments - 1)
+        What of q is neither one (the first moment counts moles) nor zero.
     """
 
     def __init__(self, real: RealMixture, feed: Feed, T: Array, p: Array) -> None:
@@ -112,6 +116,8 @@ class RealCases:
         self._rows: Indices | None = None  # of the moments, in some of the cases they are for
         self.q = self._moments.q
         self.gas = real.mixture.gas
+        self.own = np.flatnonzero(real.fluid.modelled)
+        self.core = self.q[:, self.own, 1:]
 
     @property
     def qT(self) -> Array:
@@ -131,6 +137,17 @@ class RealCases:
     def _own(self, whole: Array) -> Array:
         return whole if self._rows is None else whole[self._rows]
 
+    def moments(self, n: Array, rows: Indices | slice = slice(None)) -> Array:
+        """Moments (rows, moments) of amounts n (rows, gas species) of some of the cases."""
+        rest = (n[:, self.own][:, None, :] @ self.core[rows])[:, 0]
+        return np.concatenate([n.sum(axis=1, keepdims=True), rest], axis=1)
+
+    def log_phi(self, theta: Array) -> Array:
+        """q . theta (cases, fluids, gas species) of theta (cases, fluids, moments)."""
+        out = np.repeat(theta[:, :, :1], self.gas.size, axis=2)
+        out[:, :, self.own] += theta[:, :, 1:] @ self.core.transpose(0, 2, 1)
+        return out
+
     def __len__(self) -> int:
         return len(self.T)
 
@@ -142,5 +159,6 @@ class RealCases:
         out.__dict__.update(self.__dict__)
         out.feed, out.ideal = self.feed.of(which), self.ideal.part(which)
         out.T, out.p, out.q = self.T[which], self.p[which], self.q[which]
+        out.core = self.core[which]
         out._rows = which if self._rows is None else self._rows[which]
         return out

@@ -71,8 +71,8 @@ def prove(
         if not amounts.any():
             continue
         N = amounts.sum(axis=1, keepdims=True)
-        residual = cases.fluid.residual((amounts[:, None, :] @ cases.q)[:, 0], root)
-        log_phi = (cases.q @ residual.grad[:, :, None])[:, :, 0]
+        residual = cases.fluid.residual(cases.moments(amounts), root)
+        log_phi = cases.log_phi(residual.grad[:, None])[:, 0]
         with np.errstate(divide="ignore", invalid="ignore"):
             off = np.where(amounts > 0.0, np.log(amounts / N) + log_phi - d, 0.0)
         seen = amounts > _FAINT

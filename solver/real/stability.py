@@ -99,9 +99,14 @@ def _lowest(case: Indices, w: Array, height: Array, best: Array, found: Array) -
 
 
 def _log_phi(cases: RealCases, case: Indices, w: Array) -> Array:
-    q = cases.q[case]
-    residual = cases.fluid.residual((w[:, None, :] @ q)[:, 0], "least")
-    return np.asarray((q @ residual.grad[:, :, None])[:, :, 0])
+    core = cases.core[case]
+    M = np.empty((len(case), core.shape[2] + 1))
+    M[:, 0] = w.sum(axis=1)
+    M[:, 1:] = (w[:, cases.own][:, None, :] @ core)[:, 0]
+    grad = cases.fluid.residual(M, "least").grad
+    out = np.repeat(grad[:, :1], w.shape[1], axis=1)
+    out[:, cases.own] += (core @ grad[:, 1:, None])[:, :, 0]
+    return out
 
 
 def _starts(cases: RealCases, d: Array, live: Flags) -> Array:

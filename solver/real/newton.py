@@ -24,7 +24,8 @@ from solver.core.basis import Basis, component_amounts
 from solver.core.extremes import newton_steps, shortest, wild
 from solver.core.forced import Sink, combined, one_sided
 from solver.core.phaseset import sink
-from solver.real.problem import ROOTS, RealCases
+from solver.real.problem import RealCases
+from solver.real.slopes import EXP_LIMIT, Unknowns, slopes_of
 from solver.real.states import PhaseSet
 
 Array = NDArray[np.float64]
@@ -33,7 +34,6 @@ Flags = NDArray[np.bool_]
 
 _EPS = float(np.finfo(float).eps)
 _MAX_ITERATIONS = 60
-_EXP_LIMIT = 690.0
 _CERTAIN = 3e-9  # a last step this small leaves an error of its square
 _STEP, _PHI_STEP, _SIZE_STEP = 300.0, 2.0, 4.0
 _MATTERS = 1e-4  # mole fraction from which a change of ln phi is kept small
@@ -73,16 +73,6 @@ class Solved:
     well_based: Flags
     vanishing: Indices
     dead: Flags
-
-
-@dataclass
-class _State:
-    """Unknowns of the cases still iterated on."""
-
-    log_a: Array  # (cases, rows)
-    nu: Array  # (cases, fluids)
-    theta: Array  # (cases, fluids, moments)
-    log_n: Array  # (cases, fluids, gases)
 
 
 def parted(b: Array) -> list[Indices]:
@@ -163,10 +153,10 @@ def _solve(
             calm,
         )
     else:
-        state = _State(log_a[:, rows], nu, theta, np.full((len(cases), count, gas.size), -np.inf))
+        state = Unknowns(log_a[:, rows], nu, theta, np.full((len(cases), count, gas.size), -np.inf))
         closed = ~(b[:, rows] != 0.0).any(axis=1)  # without a fluid nothing else is held
         vanishing = np.full(len(cases), -1)
-    fluids = np.exp(np.clip(state.log_n, None, _EXP_LIMIT))
+    fluids = np.exp(np.clip(state.log_n, None, EXP_LIMIT))
     total = fluids.sum(axis=1)
     n = np.zeros(c.shape)
     n[:, gas] = total
@@ -213,13 +203,13 @@ def _iterate(
     nu: Array,
     theta: Array,
     calm: int,
-) -> tuple[_State, Flags, Indices]:
+) -> tuple[Unknowns, Flags, Indices]:
     count, r = b.shape
     log_n = (log_a @ a.T - kappa)[:, None, :] + nu[:, :, None]
     log_n -= cases.log_phi(theta)
     log_n[:, :, ~live] = -np.inf
-    state = _State(log_a.copy(), nu.copy(), theta.copy(), log_n)
-    whole = _State(state.log_a.copy(), state.nu.copy(), state.theta.copy(), log_n.copy())
+    state = Unknowns(log_a.copy(), nu.copy(), theta.copy(), log_n)
+    whole = Unknowns(state.log_a.copy(), state.nu.copy(), state.theta.copy(), log_n.copy())
     index = np.arange(count)
     closed, vanishing = np.zeros(count, dtype=bool), np.full(count, -1)
     sides = (np.maximum(a, 0.0), np.maximum(-a, 0.0))
@@ -228,7 +218,7 @@ def _iterate(
     step = np.zeros((count, r + len(slots) * (1 + theta.shape[2])))
     with np.errstate(all="ignore"):
         for iteration in range(_MAX_ITERATIONS):
-            J, F = _slopes(cases, slots, a, sides, b, state, iteration < calm)
+            J, F = slopes_of(cases, slots, a, sides, b, state, iteration < calm)
             merit = np.einsum("ij,ij->i", F, F)
             back = (merit > merit_last) & (merit > 1e-16) & (iteration > calm)
             stale = np.where(merit < 0.5 * best, 0, stale + 1)
@@ -258,71 +248,19 @@ def _iterate(
             b, index = b[going], index[going]
             best, stale, merit_last = best[going], stale[going], merit_last[going]
             step = step[going]
-            state = _State(
+            state = Unknowns(
                 state.log_a[going], state.nu[going], state.theta[going], state.log_n[going]
             )
     _put(whole, index, state)
     return whole, closed, vanishing
 
 
-def _put(whole: _State, index: Indices, state: _State) -> None:
+def _put(whole: Unknowns, index: Indices, state: Unknowns) -> None:
     whole.log_a[index], whole.nu[index] = state.log_a, state.nu
     whole.theta[index], whole.log_n[index] = state.theta, state.log_n
 
 
-def _slopes(
-    cases: RealCases,
-    slots: tuple[int, ...],
-    a: Array,
-    sides: tuple[Array, Array],
-    b: Array,
-    state: _State,
-    follow: bool,
-) -> tuple[Array, Array]:
-    """Slopes J and residuals F of balances, sizes of the phases, and moments."""
-    count, r = b.shape
-    fluids, m = len(slots), state.theta.shape[2]
-    unknowns = r + fluids * (1 + m)
-    own, core = cases.own, cases.core
-    n = np.exp(np.clip(state.log_n, None, _EXP_LIMIT))
-    total = n.sum(axis=1)
-    P = total @ sides[0] + np.maximum(-b, 0.0)
-    M = total @ sides[1] + np.maximum(b, 0.0)
-    J, F = np.zeros((count, unknowns, unknowns)), np.empty((count, unknowns))
-    F[:, :r] = np.log(P / M)
-    weights = sides[0].T / P[:, :, None] - sides[1].T / M[:, :, None]  # (cases, rows, gases)
-    for f, slot in enumerate(slots):
-        amounts = n[:, f]
-        N = amounts.sum(axis=1)
-        at = r + fluids + f * m
-        theta = slice(at, at + m)
-        used = weights * amounts[:, None, :]
-        share = amounts / N[:, None]
-        J[:, :r, :r] += used @ a
-        J[:, :r, r + f] = used.sum(axis=2)
-        J[:, r + f, :r] = share @ a
-        F[:, r + f] = np.log(N) - state.nu[:, f]
-        # moments per mole of the phase: the gradient does not depend on its size
-        moments = cases.moments(share)
-        residual = cases.fluid.residual(moments, ROOTS[slot])
-        F[:, theta] = state.theta[:, f] - residual.grad
-        J[:, range(at, at + m), range(at, at + m)] = 1.0
-        if follow:
-            continue
-        J[:, :r, at] = -J[:, :r, r + f]
-        J[:, :r, at + 1 : at + m] = -(used[:, :, own] @ core)
-        J[:, r + f, theta] = -moments
-        held = share[:, own, None] * core
-        by_a, by_q = np.empty((count, m, r)), np.empty((count, m, m))
-        by_a[:, 0], by_q[:, 0] = J[:, r + f, :r], moments
-        by_a[:, 1:], by_q[:, 1:, 0] = held.transpose(0, 2, 1) @ a[own], moments[:, 1:]
-        by_q[:, 1:, 1:] = held.transpose(0, 2, 1) @ core
-        J[:, theta, :r] = -residual.hess @ by_a
-        J[:, theta, theta] += residual.hess @ by_q
-    return J, F
-
-
-def _damp(step: Array, cases: RealCases, r: int, fluids: int, state: _State) -> None:
+def _damp(step: Array, cases: RealCases, r: int, fluids: int, state: Unknowns) -> None:
     """Shorten steps (cases, unknowns) in place that leave the reach of their slopes."""
     nu = step[:, r : r + fluids]
     if fluids > 1:  # a phase that is not there would fall without end
@@ -336,7 +274,7 @@ def _damp(step: Array, cases: RealCases, r: int, fluids: int, state: _State) -> 
     step *= factor[:, None]
 
 
-def _apply(state: _State, move: Array, a: Array, cases: RealCases, fluids: int) -> Array:
+def _apply(state: Unknowns, move: Array, a: Array, cases: RealCases, fluids: int) -> Array:
     """Take a step; its size (cases,) in terms of ln of amounts."""
     r = state.log_a.shape[1]
     dtheta = move[:, r + fluids :].reshape(len(move), fluids, -1)

@@ -38,8 +38,9 @@ tests: $(VENV)/for-check ## the tests alone; one file: make tests TESTS=tests/gu
 bench: $(VENV)/for-check ## speed beside general-purpose solvers; writes tests/bench/notes.md
 	@$(OFFSCREEN) $(BIN)/python -m tests.bench
 
-fuzz: $(VENV)/for-check ## 20,000 random problems; fewer or others: make fuzz FUZZ="--count 500 --first 7"
+fuzz: $(VENV)/for-check ## 20,000 random problems and 1000 real mixtures; fewer or others: make fuzz FUZZ="--count 500 --first 7"
 	@$(OFFSCREEN) $(BIN)/python -m tests.fuzz $(FUZZ)
+	@$(OFFSCREEN) $(BIN)/python -m tests.fuzz.real 0 1000
 
 data: $(VENV)/for-data ## write the tables of species_db/data/ again from their sources
 	@$(BIN)/python -m species_db.build

@@ -107,7 +107,8 @@ def _density(fluid: Fluid, T: float, p: float, y: Array) -> tuple[str, ...]:
         if found:
             said.append(
                 f"Dense phase with {found}: a cubic equation of state does not describe hydrogen "
-                "bonds; its volume and fugacities may be off by tens of per cent."
+                "bonds; its volume and fugacities may be off by tens of "
+                "per cent, what gas dissolves in it by a factor of ten."
             )
     if density > COMPRESSED or p > HIGH_PRESSURE:
         said.append(

@@ -325,6 +325,7 @@ def _end_state(
         species=tuple(species),
         fixed=fixed,
         gas=gas.key,
+        model=gas,
         proof=proof,
         outside_range=tuple(mixture.species[i].key for i in np.flatnonzero(outside)),
     )

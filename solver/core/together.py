@@ -28,7 +28,7 @@ Indices = NDArray[np.intp]
 
 _MAX_ROUNDS, _RETRIES = 5, 2
 _LADDER = (500.0, 1100.0, 2400.0)  # K
-_PILOTS = 64
+_PILOTS = 32
 _WORTH = 3  # times as many cases as pilots are worth the detour
 _BEYOND = 0.15  # of ln T, how far a surmise may go beyond what the pilots reach
 

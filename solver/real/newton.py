@@ -34,6 +34,7 @@ Flags = NDArray[np.bool_]
 
 _EPS = float(np.finfo(float).eps)
 _MAX_ITERATIONS = 60
+_MET = 1e-12  # sum of squares of the residuals before the last step
 _CERTAIN = 3e-9  # a last step this small leaves an error of its square
 _STEP, _PHI_STEP, _SIZE_STEP = 300.0, 2.0, 4.0
 _MATTERS = 1e-4  # mole fraction from which a change of ln phi is kept small
@@ -233,7 +234,8 @@ def _iterate(
             step = np.where(back[:, None], 0.25 * step, newton)
             merit_last = np.where(back, merit_last, merit)
             size = _apply(state, move, a, cases, len(slots))
-            done = (size <= _CERTAIN) & ~back & (iteration >= calm)
+            # the shortest of many possible steps is no sign of an end, nor one of open balances
+            done = (size <= _CERTAIN) & ~back & ~off & (merit <= _MET) & (iteration >= calm)
             gone = state.nu - np.logaddexp.reduce(state.nu, axis=1)[:, None] < _GONE
             lost = ~np.isfinite(size) | (stale > _STALE + calm) | (gone.any(axis=1) & ~done)
             closed[index[done]] = True

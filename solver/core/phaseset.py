@@ -95,18 +95,21 @@ def solve_set(
     list of (positions in `which`, Solved)
     """
     b = component_amounts(cases.feed.amounts[which], cases.feed.vectors, basis)
-    patterns: dict[bytes, list[int]] = {}
-    zero = b == 0.0
-    if not zero.any():
-        groups = [np.arange(len(which))]
-    else:
-        for i, row in enumerate(zero):
-            patterns.setdefault(row.tobytes(), []).append(i)
-        groups = [np.array(rows, dtype=np.intp) for rows in patterns.values()]
     return [
         (rows, _solve(cases, which[rows], active, basis, b[rows], log_a[rows], nu[rows]))
-        for rows in groups
+        for rows in parted(b)
     ]
+
+
+def parted(b: Array) -> list[Indices]:
+    """Rows of component amounts b (cases, components), parted by which of them are zero."""
+    zero = b == 0.0
+    if not zero.any():
+        return [np.arange(len(b))]
+    patterns: dict[bytes, list[int]] = {}
+    for i, row in enumerate(zero):
+        patterns.setdefault(row.tobytes(), []).append(i)
+    return [np.array(rows, dtype=np.intp) for rows in patterns.values()]
 
 
 def _solve(

@@ -183,12 +183,8 @@ def _print_restrictions(out: Console, answer: CaseAnswer) -> None:
     for cost in costs:
         if math.isnan(cost.energy):
             price = "its cost could not be settled"
-        elif abs(cost.energy) <= rounding:
+        elif cost.energy <= rounding:
             price = "costs nothing" + (" while the others hold" if len(costs) > 1 else "")
-        elif cost.energy < 0:
-            # Beside a reaction held off its equilibrium another restriction may help.
-            size = units.quantity_text(-cost.energy / 1e3, unit)
-            price = f"saves {size} of {cost_is(answer)} while the others hold"
         else:
             price = f"costs {units.quantity_text(cost.energy / 1e3, unit)} of {cost_is(answer)}"
         out.print(f"  held    {typeset(one_line(cost.restriction))}; {price}")

@@ -23,7 +23,7 @@ from numpy.typing import NDArray
 from solver.core.basis import Basis, component_amounts
 from solver.core.extremes import newton_steps, shortest, wild
 from solver.core.forced import Sink, combined, one_sided
-from solver.core.phaseset import sink
+from solver.core.phaseset import parted, sink
 from solver.real.problem import RealCases
 from solver.real.slopes import EXP_LIMIT, Unknowns, slopes_of
 from solver.real.states import PhaseSet
@@ -74,17 +74,6 @@ class Solved:
     well_based: Flags
     vanishing: Indices
     dead: Flags
-
-
-def parted(b: Array) -> list[Indices]:
-    """Rows of component amounts b (cases, components), parted by which of them are zero."""
-    zero = b == 0.0
-    if not zero.any():
-        return [np.arange(len(b))]
-    patterns: dict[bytes, list[int]] = {}
-    for i, row in enumerate(zero):
-        patterns.setdefault(row.tobytes(), []).append(i)
-    return [np.array(rows, dtype=np.intp) for rows in patterns.values()]
 
 
 def solve_phases(

@@ -208,8 +208,8 @@ def _iterate(
     step = np.zeros((count, r + len(slots) * (1 + theta.shape[2])))
     with np.errstate(all="ignore"):
         for iteration in range(_MAX_ITERATIONS):
-            J, F = slopes_of(cases, slots, a, sides, b, state, iteration < calm)
-            merit = np.einsum("ij,ij->i", F, F)
+            J, F, weight = slopes_of(cases, slots, a, sides, b, state, iteration < calm)
+            merit = ((F * weight) ** 2).sum(axis=1)
             back = (merit > merit_last) & (merit > 1e-16) & (iteration > calm)
             stale = np.where(merit < 0.5 * best, 0, stale + 1)
             best = np.minimum(best, merit)
@@ -223,8 +223,9 @@ def _iterate(
             step = np.where(back[:, None], 0.25 * step, newton)
             merit_last = np.where(back, merit_last, merit)
             size = _apply(state, move, a, cases, len(slots))
-            # the shortest of many possible steps is no sign of an end, nor one of open balances
-            done = (size <= _CERTAIN) & ~back & ~off & (merit <= _MET) & (iteration >= calm)
+            # the shortest of many possible steps is no sign of an end while balances are open
+            done = (size <= _CERTAIN) & ~back & (merit <= _MET)
+            done &= iteration >= calm
             gone = state.nu - np.logaddexp.reduce(state.nu, axis=1)[:, None] < _GONE
             lost = ~np.isfinite(size) | (stale > _STALE + calm) | (gone.any(axis=1) & ~done)
             closed[index[done]] = True

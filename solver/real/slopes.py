@@ -34,8 +34,11 @@ def slopes_of(
     b: Array,
     state: Unknowns,
     follow: bool,
-) -> tuple[Array, Array]:
-    """Slopes J and residuals F of balances, sizes of the phases, and moments."""
+) -> tuple[Array, Array, Array]:
+    """Slopes J and residuals F of balances, sizes of the phases, and moments; weights of F.
+
+    A residual of theta weighs as much as the moment makes of it in ln phi.
+    """
     count, r = b.shape
     fluids, m = len(slots), state.theta.shape[2]
     unknowns = r + fluids * (1 + m)
@@ -46,6 +49,7 @@ def slopes_of(
     M = total @ sides[1] + np.maximum(b, 0.0)
     J, F = np.zeros((count, unknowns, unknowns)), np.empty((count, unknowns))
     F[:, :r] = np.log(P / M)
+    weight = np.ones(F.shape)
     weights = sides[0].T / P[:, :, None] - sides[1].T / M[:, :, None]  # (cases, rows, gases)
     faint = _faint(state.log_n, sides, b, np.minimum(P, M), F)
     for f, slot in enumerate(slots):
@@ -65,6 +69,7 @@ def slopes_of(
         moments = cases.moments(share)
         residual = cases.fluid.residual(moments, ROOTS[slot])
         F[:, theta] = state.theta[:, f] - residual.grad
+        weight[:, theta] = np.abs(moments)
         J[:, range(at, at + m), range(at, at + m)] = 1.0
         if follow:
             continue
@@ -78,7 +83,7 @@ def slopes_of(
         by_q[:, 1:, 1:] = held.transpose(0, 2, 1) @ core
         J[:, theta, :r] = -residual.hess @ by_a
         J[:, theta, theta] += residual.hess @ by_q
-    return J, F
+    return J, F, weight
 
 
 def _faint(

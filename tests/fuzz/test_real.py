@@ -7,7 +7,6 @@ import pytest
 from tests.fuzz.real import NAMED, judge_real, named_problem, real_problem
 
 BLOCKS, SIZE = 6, 20
-QUICK = [data for data in NAMED if not data.get("slow")]  # `make fuzz` has the others too
 
 
 @pytest.mark.parametrize("block", range(BLOCKS))
@@ -17,7 +16,7 @@ def test_random_real_mixtures_settle_and_are_found_again(block: int):
     assert not {seed: text for seed, text in verdicts.items() if text.startswith("failed")}
 
 
-@pytest.mark.parametrize("data", QUICK, ids=[data["why"] for data in QUICK])
+@pytest.mark.parametrize("data", NAMED, ids=[data["why"] for data in NAMED])
 def test_named_real_mixture(data: dict):
     verdict = judge_real(named_problem(data))
     assert not verdict.startswith(("failed", "refused")), verdict

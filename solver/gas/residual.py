@@ -11,7 +11,9 @@ derivatives are those at fixed Z. Nothing below divides by A or B: an ideal gas 
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -42,13 +44,19 @@ class Residual:
     F (cases,) in mol, grad (cases, m) without unit, hess (cases, m, m) in 1/mol, Z (cases,) the
     compressibility factor, two (cases,) whether the equation of state
     has three distinct real roots here. hess @ M = 0 and grad . M = F (F is homogeneous).
+    The second derivatives are worked out when first asked for.
     """
 
     F: Array
     grad: Array
-    hess: Array
     Z: Array
     two: Flags
+    second: Callable[[], Array]
+
+    @cached_property
+    def hess(self) -> Array:
+        """Second derivatives of F by the moments."""
+        return self.second()
 
 
 def residual_of(M: Array, weights: Array, equation: Equation, root: str) -> Residual:
@@ -134,25 +142,7 @@ def _derivatives(
     E2 = E**2
     L = 2.0 * E * a
     L_B = E2 * (-2.0 * d_sum * a + 8.0 * width2 * B * Z * E2 * a1)
-    L_BB = (
-        4.0 * d_sum**2 * E * E2 * a
-        + 8.0 * width2 * Z * E2**2 * (1.0 - 5.0 * d_sum * B * E) * a1
-        + 32.0 * (width2 * B * Z * E2) ** 2 * E2 * E * a2
-    )
     f_A, f_B = -L, 1.0 / x - A * L_B
-
-    # second derivatives at fixed Z, less what Z gives as it follows the root; the leading parts
-    # w = 1/x^2 cancel by algebra, not by subtraction
-    w = 1.0 / x**2
-    beta = A / (E * D**2)
-    alpha = A * (d_sum * Z + 2.0 * d_product * B) / D**2
-    gamma = A * L_BB
-    # zero where the phase is at its limit of stability: kept finite
-    stiff = np.maximum(w - beta, EPS * w)
-    f_BB = (gamma * beta - alpha**2 - w * (gamma + beta + 2.0 * alpha)) / stiff
-    f_AB = -L_B + (w + alpha) / (D * stiff)
-    f_AA = -1.0 / (D**2 * stiff)
-
     F_0 = -_log(x, u)
     cases, m = A.size, weights.size + 2
     grad = np.empty((cases, m))
@@ -160,16 +150,36 @@ def _derivatives(
     grad[:, 2:] = 2.0 * f_A[:, None] * weighted
     F = total * (F_0 + B * f_B + 2.0 * A * f_A)
 
-    per = np.where(empty, 0.0, 1.0 / total)
-    along = f_A + B * f_AB + 2.0 * A * f_AA
-    hess = np.empty((cases, m, m))
-    hess[:, 0, 0] = per * (B * (B * f_BB + 2.0 * A * f_AB) + 2.0 * A * along)
-    hess[:, 1, 1] = per * f_BB
-    hess[:, 0, 1] = hess[:, 1, 0] = -per * (B * f_BB + 2.0 * A * f_AB)
-    hess[:, 1, 2:] = hess[:, 2:, 1] = (2.0 * per * f_AB)[:, None] * weighted
-    hess[:, 0, 2:] = hess[:, 2:, 0] = (-2.0 * per * along)[:, None] * weighted
-    outer = weighted[:, :, None] * weighted[:, None, :]
-    hess[:, 2:, 2:] = (4.0 * per * f_AA)[:, None, None] * outer
-    diagonal = np.arange(2, m)
-    hess[:, diagonal, diagonal] += (2.0 * per * f_A)[:, None] * weights
-    return Residual(np.where(empty, 0.0, F), grad, hess, Z, two)
+    def second() -> Array:
+        L_BB = (
+            4.0 * d_sum**2 * E * E2 * a
+            + 8.0 * width2 * Z * E2**2 * (1.0 - 5.0 * d_sum * B * E) * a1
+            + 32.0 * (width2 * B * Z * E2) ** 2 * E2 * E * a2
+        )
+        # second derivatives at fixed Z, less what Z gives as it follows the root; the leading parts
+        # w = 1/x^2 cancel by algebra, not by subtraction
+        w = 1.0 / x**2
+        beta = A / (E * D**2)
+        alpha = A * (d_sum * Z + 2.0 * d_product * B) / D**2
+        gamma = A * L_BB
+        # zero where the phase is at its limit of stability: kept finite
+        stiff = np.maximum(w - beta, EPS * w)
+        f_BB = (gamma * beta - alpha**2 - w * (gamma + beta + 2.0 * alpha)) / stiff
+        f_AB = -L_B + (w + alpha) / (D * stiff)
+        f_AA = -1.0 / (D**2 * stiff)
+
+        per = np.where(empty, 0.0, 1.0 / total)
+        along = f_A + B * f_AB + 2.0 * A * f_AA
+        hess = np.empty((cases, m, m))
+        hess[:, 0, 0] = per * (B * (B * f_BB + 2.0 * A * f_AB) + 2.0 * A * along)
+        hess[:, 1, 1] = per * f_BB
+        hess[:, 0, 1] = hess[:, 1, 0] = -per * (B * f_BB + 2.0 * A * f_AB)
+        hess[:, 1, 2:] = hess[:, 2:, 1] = (2.0 * per * f_AB)[:, None] * weighted
+        hess[:, 0, 2:] = hess[:, 2:, 0] = (-2.0 * per * along)[:, None] * weighted
+        outer = weighted[:, :, None] * weighted[:, None, :]
+        hess[:, 2:, 2:] = (4.0 * per * f_AA)[:, None, None] * outer
+        diagonal = np.arange(2, m)
+        hess[:, diagonal, diagonal] += (2.0 * per * f_A)[:, None] * weights
+        return hess
+
+    return Residual(np.where(empty, 0.0, F), grad, Z, two, second)

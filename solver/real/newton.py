@@ -213,7 +213,10 @@ def _iterate(
             back = (merit > merit_last) & (merit > 1e-16) & (iteration > calm)
             stale = np.where(merit < 0.5 * best, 0, stale + 1)
             best = np.minimum(best, merit)
-            newton = np.ascontiguousarray(newton_steps(J.transpose(1, 2, 0), F.T).T)
+            # while the coefficients only follow, their steps stand by themselves
+            free = r + len(slots) if iteration < calm else J.shape[1]
+            newton = -F
+            newton[:, :free] = newton_steps(J[:, :free, :free].transpose(1, 2, 0), F[:, :free].T).T
             off = wild(newton.T)
             for case in np.flatnonzero(off):
                 finite = np.isfinite(J[case]).all() and np.isfinite(F[case]).all()

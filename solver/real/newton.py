@@ -25,7 +25,7 @@ from solver.core.extremes import newton_steps, shortest, wild
 from solver.core.forced import Sink, combined, one_sided
 from solver.core.phaseset import parted, sink
 from solver.real.problem import RealCases
-from solver.real.slopes import EXP_LIMIT, Unknowns, slopes_of
+from solver.real.slopes import EXP_LIMIT, Terms, Unknowns, slopes_of
 from solver.real.states import PhaseSet
 
 Array = NDArray[np.float64]
@@ -202,13 +202,13 @@ def _iterate(
     whole = Unknowns(state.log_a.copy(), state.nu.copy(), state.theta.copy(), log_n.copy())
     index = np.arange(count)
     closed, vanishing = np.zeros(count, dtype=bool), np.full(count, -1)
-    sides = (np.maximum(a, 0.0), np.maximum(-a, 0.0))
+    terms = Terms.of(a, cases.own)
     best, stale = np.full(count, np.inf), np.zeros(count, dtype=int)
     merit_last = np.full(count, np.inf)
     step = np.zeros((count, r + len(slots) * (1 + theta.shape[2])))
     with np.errstate(all="ignore"):
         for iteration in range(_MAX_ITERATIONS):
-            J, F, weight = slopes_of(cases, slots, a, sides, b, state, iteration < calm)
+            J, F, weight = slopes_of(cases, slots, terms, b, state, iteration < calm)
             merit = ((F * weight) ** 2).sum(axis=1)
             back = (merit > merit_last) & (merit > 1e-16) & (iteration > calm)
             stale = np.where(merit < 0.5 * best, 0, stale + 1)

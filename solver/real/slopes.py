@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 from solver.real.problem import ROOTS, RealCases
 
 Array = NDArray[np.float64]
+Indices = NDArray[np.intp]
 
 EXP_LIMIT = 690.0
 """ln of the largest amount that is taken as a number."""
@@ -26,11 +27,37 @@ class Unknowns:
     log_n: Array  # (cases, fluids, gases)
 
 
+@dataclass(frozen=True)
+class Terms:
+    """What the balances of one set of components are made of; the two sides apart.
+
+    Attributes
+    ----------
+    a : ndarray, shape (gas species, rows)
+    sides : two of ndarray, shape (gas species, rows)
+        Positive and negative terms.
+    pairs : two of ndarray, shape (gas species, rows * rows)
+        Terms times the components of each species, for slopes in one product.
+    own : two of ndarray, shape (rows, modelled species)
+    """
+
+    a: Array
+    sides: tuple[Array, Array]
+    pairs: tuple[Array, Array]
+    own: tuple[Array, Array]
+
+    @classmethod
+    def of(cls, a: Array, own: Indices) -> Terms:
+        """Of the components' numbers a in each gas species; `own` are the modelled species."""
+        up, down = np.maximum(a, 0.0), np.maximum(-a, 0.0)
+        pairs = [(side[:, :, None] * a[:, None, :]).reshape(len(a), -1) for side in (up, down)]
+        return cls(a, (up, down), (pairs[0], pairs[1]), (up[own].T.copy(), down[own].T.copy()))
+
+
 def slopes_of(
     cases: RealCases,
     slots: tuple[int, ...],
-    a: Array,
-    sides: tuple[Array, Array],
+    terms: Terms,
     b: Array,
     state: Unknowns,
     follow: bool,
@@ -43,6 +70,7 @@ def slopes_of(
     fluids, m = len(slots), state.theta.shape[2]
     unknowns = r + fluids * (1 + m)
     own, core = cases.own, cases.core
+    a, sides = terms.a, terms.sides
     n = np.exp(np.clip(state.log_n, None, EXP_LIMIT))
     total = n.sum(axis=1)
     P = total @ sides[0] + np.maximum(-b, 0.0)
@@ -50,19 +78,16 @@ def slopes_of(
     J, F = np.zeros((count, unknowns, unknowns)), np.empty((count, unknowns))
     F[:, :r] = np.log(P / M)
     weight = np.ones(F.shape)
-    weights = sides[0].T / P[:, :, None] - sides[1].T / M[:, :, None]  # (cases, rows, gases)
     faint = _faint(state.log_n, sides, b, np.minimum(P, M), F)
     for f, slot in enumerate(slots):
         amounts = n[:, f]
         N = amounts.sum(axis=1)
         at = r + fluids + f * m
         theta = slice(at, at + m)
-        used = weights * amounts[:, None, :]
-        for (case, row), shares in faint.items():
-            used[case, row] = shares[f]
         share = amounts / N[:, None]
-        J[:, :r, :r] += used @ a
-        J[:, :r, r + f] = used.sum(axis=2)
+        pairs = [(amounts @ pair).reshape(count, r, r) for pair in terms.pairs]
+        J[:, :r, :r] += pairs[0] / P[:, :, None] - pairs[1] / M[:, :, None]
+        J[:, :r, r + f] = (amounts @ sides[0]) / P - (amounts @ sides[1]) / M
         J[:, r + f, :r] = share @ a
         F[:, r + f] = np.log(N) - state.nu[:, f]
         # moments per mole of the phase: the gradient does not depend on its size
@@ -74,15 +99,25 @@ def slopes_of(
         if follow:
             continue
         J[:, :r, at] = -J[:, :r, r + f]
-        J[:, :r, at + 1 : at + m] = -(used[:, :, own] @ core)
+        held = amounts[:, own, None] * core
+        J[:, :r, at + 1 : at + m] = (
+            terms.own[1] @ held / M[:, :, None] - terms.own[0] @ held / P[:, :, None]
+        )
+        held /= N[:, None, None]
         J[:, r + f, theta] = -moments
-        held = share[:, own, None] * core
         by_a, by_q = np.empty((count, m, r)), np.empty((count, m, m))
         by_a[:, 0], by_q[:, 0] = J[:, r + f, :r], moments
         by_a[:, 1:], by_q[:, 1:, 0] = held.transpose(0, 2, 1) @ a[own], moments[:, 1:]
         by_q[:, 1:, 1:] = held.transpose(0, 2, 1) @ core
         J[:, theta, :r] = -residual.hess @ by_a
         J[:, theta, theta] += residual.hess @ by_q
+    for (case, row), shares in faint.items():
+        J[case, row, :r] = (shares @ a).sum(axis=0)
+        sizes = shares.sum(axis=1)
+        J[case, row, r : r + fluids] = sizes
+        if not follow:
+            by_theta = np.column_stack([sizes, shares[:, own] @ core[case]])
+            J[case, row, r + fluids :] = -by_theta.ravel()
     return J, F, weight
 
 

@@ -33,6 +33,7 @@ from solver.proof import (
     volume_residual,
 )
 from solver.restrictions import Restriction
+from solver.supercritical import above_critical
 
 if TYPE_CHECKING:
     from species_db import Species
@@ -313,6 +314,7 @@ def _end_state(
     named = n > PRESENT * n.sum()
     thermo = mixture.thermo
     outside = named & ((thermo.T_min > T) | (thermo.T_max < T))
+    present = [sp for sp, amount in zip(mixture.species, n, strict=True) if amount > 0.0]
     return EndState(
         T=T,
         p=p,
@@ -326,6 +328,7 @@ def _end_state(
         fixed=fixed,
         gas=gas.key,
         model=gas,
+        cautions=above_critical(present, species, T),
         proof=proof,
         outside_range=tuple(mixture.species[i].key for i in np.flatnonzero(outside)),
     )

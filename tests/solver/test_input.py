@@ -98,3 +98,20 @@ def test_species_outside_its_data_range_is_named():
 def test_feed_may_use_any_name_of_a_candidate():
     by_name = solver.settle(WATER, {"steam": 1.0} if "steam" in LIB else {"H2O": 1.0}, ROOM)
     assert by_name.amounts["H2O(l)"] == pytest.approx(1.0)
+
+
+def test_a_liquid_above_its_critical_point_is_cautioned():
+    """A closed bomb of methane and oxygen in which the record of water goes on to 2000 K."""
+    lib = species_db.load()
+    keys = "CH4 O2 N2 CO CO2 H2 H2O OH H O NO H2O(l)".split()
+    species = [lib[key] for key in keys]
+    feed = {lib["CH4"]: 1.0, lib["O2"]: 1.2, lib["N2"]: 1.0}
+    fed = solver.as_fed(feed, T=300.0, p=2e7)
+    held = solver.Fixed("U,V", U=fed.U, V=fed.V)
+    end = solver.settle(species, feed, held)
+    assert end.amounts["H2O(l)"] > 0.0
+    assert "647" in end.cautions[0]
+    assert "H2O(l)" in end.cautions[0]
+    dry = solver.settle(species[:-1], feed, held)
+    assert dry.cautions == ()
+    assert dry.T > end.T + 300.0

@@ -53,8 +53,8 @@ class Minima:
     found : ndarray of bool, shape (cases,)
     why : dict of int to Exception
     apart : dict of int to ndarray, shape (phases, gas species)
-        Compositions among which the phases of a case must be chosen afresh: one lay lower
-        than what is present, and there was no room for it beside that.
+        Compositions among which the phases of a case are chosen afresh where it is not found:
+        the trial that lay lowest, and those that were present.
     """
 
     sets: list[PhaseSet]
